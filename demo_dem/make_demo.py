@@ -181,14 +181,14 @@ def place(x: float, y: float) -> tuple[float, float]:
 
 
 def boundary() -> gpd.GeoDataFrame:
-    """The property's outline."""
+    """Outline the property."""
     corners = [(3300, 4300), (7600, 4500), (7700, 8300), (6100, 8900), (3500, 8500)]
     outline = Polygon([place(float(x), float(y)) for x, y in corners])
     return gpd.GeoDataFrame({"name": ["invented property"]}, geometry=[outline], crs=CRS)
 
 
 def road() -> gpd.GeoDataFrame:
-    """The road, to be kept clear of plots."""
+    """Draw the road that plots keep clear of."""
     line = LineString([place(*ROAD[0]), place(*ROAD[1])])
     return gpd.GeoDataFrame({"name": ["invented road"]}, geometry=[line], crs=CRS)
 
