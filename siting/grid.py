@@ -86,9 +86,7 @@ class Grid:
     def __eq__(self, other: object) -> bool:
         if not isinstance(other, Grid):
             return NotImplemented
-        return (
-            self.shape == other.shape and self.affine == other.affine and self.crs == other.crs
-        )
+        return self.shape == other.shape and self.affine == other.affine and self.crs == other.crs
 
     def __hash__(self) -> int:
         return hash((self.shape, self.affine, self.crs))

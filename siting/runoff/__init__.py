@@ -1,0 +1,38 @@
+"""From rain to the water that reaches a plot, by day and by year."""
+
+from siting.runoff.classes import RunoffClasses, class_runoff_mm, classify
+from siting.runoff.curve_number import (
+    aligned_curve_number_a,
+    composite_curve_number,
+    crusted_group,
+    dry_curve_number,
+    retention_for_ratio,
+    retention_mm,
+    slope_adjusted_curve_number,
+    wet_curve_number,
+)
+from siting.runoff.delivery import delivered_m3
+from siting.runoff.event import runoff_depth_mm
+from siting.runoff.rain import Rain
+from siting.runoff.years import Years, driest_month, hydrological_years, yearly_totals
+
+__all__ = [
+    "Rain",
+    "RunoffClasses",
+    "Years",
+    "aligned_curve_number_a",
+    "class_runoff_mm",
+    "classify",
+    "composite_curve_number",
+    "crusted_group",
+    "delivered_m3",
+    "driest_month",
+    "dry_curve_number",
+    "hydrological_years",
+    "retention_for_ratio",
+    "retention_mm",
+    "runoff_depth_mm",
+    "slope_adjusted_curve_number",
+    "wet_curve_number",
+    "yearly_totals",
+]

@@ -1,0 +1,87 @@
+"""Ground that runs off alike: runoff is computed by class, never from a mean curve number."""
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from siting.errors import CapacityError
+from siting.runoff.curve_number import retention_for_ratio
+from siting.runoff.event import runoff_depth_mm
+
+FloatArray = npt.NDArray[np.float64]
+
+NO_CLASS = 65535
+"""Class of cells whose curve number is unknown."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class RunoffClasses:
+    """
+    Classes of ground, and each cell's class.
+
+    `curve_number` and `runs_after_mm` have one value per class; the second, where it is not NaN, is
+    the rain after which this ground was seen to run, and wins.
+    """
+
+    class_of_cell: npt.NDArray[np.uint16]
+    curve_number: FloatArray
+    runs_after_mm: FloatArray
+
+    @property
+    def count(self) -> int:
+        """Return the number of classes."""
+        return int(self.curve_number.size)
+
+    def retention_mm(self, *, abstraction_ratio: float) -> FloatArray:
+        """Return S of each class: runs_after / l where observed, else from the curve number."""
+        by_table = retention_for_ratio(self.curve_number, abstraction_ratio=abstraction_ratio)
+        return np.where(np.isnan(self.runs_after_mm), by_table, self.runs_after_mm / abstraction_ratio)
+
+    def starts_at_mm(self, *, abstraction_ratio: float) -> FloatArray:
+        """Return the rain at which each class begins to run: the check that people can answer."""
+        return abstraction_ratio * self.retention_mm(abstraction_ratio=abstraction_ratio)
+
+
+def classify(
+    *,
+    curve_number: npt.NDArray[np.floating],
+    runs_after_mm: npt.NDArray[np.floating] | None,
+    valid: npt.NDArray[np.bool_],
+) -> RunoffClasses:
+    """
+    Sort cells into classes of equal curve number (to 0.1) and equal observed threshold (to 0.1 mm).
+
+    `curve_number` and `runs_after_mm` have the shape of `valid`; a cell without either, or not valid,
+    gets NO_CLASS. Classes come in rising order, so that the same ground gives the same numbers.
+    """
+    number = np.nan_to_num(np.round(curve_number * 10.0), nan=0.0).astype(np.int64)
+    threshold = np.full(valid.shape, -1, dtype=np.int64)
+    if runs_after_mm is not None:
+        seen = np.round(runs_after_mm * 10.0)
+        threshold = np.where(np.isnan(seen), -1, np.nan_to_num(seen)).astype(np.int64)
+    # an observed threshold needs no curve number: it decides alone
+    number = np.where(threshold >= 0, 0, number)
+    known = valid & ((number > 0) | (threshold >= 0))
+    key = number * 100_000 + (threshold + 1)
+    found = np.unique(key[known])
+    if found.size >= NO_CLASS:
+        msg = f"{found.size} classes of runoff: at most {NO_CLASS - 1}; round the curve numbers"
+        raise CapacityError(msg)
+    classes = np.full(valid.shape, NO_CLASS, dtype=np.uint16)
+    classes[known] = np.searchsorted(found, key[known]).astype(np.uint16)
+    numbers, thresholds = found // 100_000 / 10.0, found % 100_000 - 1
+    return RunoffClasses(
+        classes,
+        np.where(numbers > 0, numbers, np.nan),
+        np.where(thresholds >= 0, thresholds / 10.0, np.nan),
+    )
+
+
+def class_runoff_mm(
+    rain_mm: npt.ArrayLike, classes: RunoffClasses, *, abstraction_ratio: float
+) -> FloatArray:
+    """Return the runoff of every class on every day, mm: shape (classes, days)."""
+    retention = classes.retention_mm(abstraction_ratio=abstraction_ratio)
+    rain = np.asarray(rain_mm, dtype=np.float64)
+    return runoff_depth_mm(rain[None, :], retention[:, None], abstraction_ratio=abstraction_ratio)

@@ -1,0 +1,123 @@
+"""Hydrological years: which there are, which are complete, and sums over them."""
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from siting.errors import InputError
+from siting.notes import Notes
+from siting.runoff.rain import Days, Rain
+
+FloatArray = npt.NDArray[np.float64]
+
+SHORT_RECORD_YEARS = 10
+"""With fewer complete years a record is called short (common practice)."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Years:
+    """Kept years: the calendar year in which each begins, its first day and the day after its last."""
+
+    labels: npt.NDArray[np.int64]
+    first_day: Days
+    end_day: Days
+    starts_month: int
+    dropped: tuple[int, ...]
+
+
+def driest_month(rain: Rain) -> int:
+    """Return the month (1 to 12) with the least mean daily rain; the first of equals."""
+    month = _month(rain.days)
+    known = ~np.isnan(rain.rain_mm)
+    means = np.full(12, np.inf)
+    for place in range(12):
+        here = known & (month == place + 1)
+        if here.any():
+            means[place] = rain.rain_mm[here].mean()
+    return int(np.argmin(means)) + 1
+
+
+def _month(days: Days) -> npt.NDArray[np.int64]:
+    return days.astype("datetime64[M]").astype(np.int64) % 12 + 1
+
+
+def hydrological_years(rain: Rain, *, starts_month: int | None, max_missing: float, notes: Notes) -> Years:
+    """
+    Divide a record into complete hydrological years.
+
+    Parameters
+    ----------
+    starts_month
+        Month whose first day begins a year; None for the driest month, which is then noted.
+    max_missing
+        Share of days, 0 to 1, beyond which a year is dropped (and said to be).
+
+    Raises
+    ------
+    InputError
+        Where no complete year is left.
+    """
+    month = driest_month(rain) if starts_month is None else starts_month
+    if starts_month is None:
+        notes.assume("rain.year_starts", f"month {month}", "", "driest month of the record", "yearly volumes")
+    begin, end = rain.days[0], rain.days[-1] + 1
+    first_year = int(begin.astype("datetime64[Y]").astype(int)) + 1970
+    last_year = int(end.astype("datetime64[Y]").astype(int)) + 1970
+    kept: list[int] = []
+    dropped: list[int] = []
+    missing_kept = 0
+    for year in range(first_year, last_year + 1):
+        start, stop = _bounds(year, month)
+        if start < begin or stop > end:
+            continue
+        part = rain.rain_mm[int((start - begin).astype(int)) : int((stop - begin).astype(int))]
+        missing = int(np.isnan(part).sum())
+        if missing > max_missing * part.size:
+            dropped.append(year)
+        else:
+            kept.append(year)
+            missing_kept += missing
+    if not kept:
+        msg = (
+            f"the rain record from {begin} to {rain.days[-1]} holds no complete year that begins in "
+            f"month {month}; give a longer record, or another rain.year_starts"
+        )
+        raise InputError(msg)
+    _tell(kept, dropped, missing_kept, notes)
+    bounds = [_bounds(year, month) for year in kept]
+    return Years(
+        np.array(kept, dtype=np.int64),
+        np.array([start for start, _ in bounds]),
+        np.array([stop for _, stop in bounds]),
+        month,
+        tuple(dropped),
+    )
+
+
+def _bounds(year: int, month: int) -> tuple[np.datetime64, np.datetime64]:
+    first = np.datetime64(f"{year:04d}-{month:02d}-01", "D")
+    after = np.datetime64(f"{year + 1:04d}-{month:02d}-01", "D")
+    return first, after
+
+
+def _tell(kept: list[int], dropped: list[int], missing: int, notes: Notes) -> None:
+    if dropped:
+        years = ", ".join(str(year) for year in dropped)
+        notes.warn("years_dropped", f"Years left out because too many days are missing: {years}.")
+    if missing:
+        notes.assume("rain.missing_days", str(missing), "days", "missing days in kept years", "count as dry")
+    if len(kept) < SHORT_RECORD_YEARS:
+        notes.warn(
+            "short_record",
+            f"The rain record holds {len(kept)} complete years; dry and wet years are uncertain "
+            f"under {SHORT_RECORD_YEARS}.",
+        )
+
+
+def yearly_totals(values: FloatArray, days: Days, years: Years) -> FloatArray:
+    """Sum daily values (..., days) over each kept year: (..., years)."""
+    before = np.concatenate([np.zeros((*values.shape[:-1], 1)), np.cumsum(values, axis=-1)], axis=-1)
+    start = (years.first_day - days[0]).astype(np.int64)
+    stop = (years.end_day - days[0]).astype(np.int64)
+    return np.asarray(before[..., stop] - before[..., start])

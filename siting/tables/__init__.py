@@ -1,0 +1,32 @@
+"""Published values as tables with their sources, and typed look-ups."""
+
+from siting.tables.covers import CurveNumber, arc_rows, covers, curve_number
+from siting.tables.crops import Crop, crop, crops
+from siting.tables.soils import (
+    TEXTURES,
+    Soil,
+    SoilWater,
+    soil,
+    soil_group,
+    soil_water,
+    soils,
+    texture_class,
+)
+
+__all__ = [
+    "TEXTURES",
+    "Crop",
+    "CurveNumber",
+    "Soil",
+    "SoilWater",
+    "arc_rows",
+    "covers",
+    "crop",
+    "crops",
+    "curve_number",
+    "soil",
+    "soil_group",
+    "soil_water",
+    "soils",
+    "texture_class",
+]
