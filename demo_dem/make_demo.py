@@ -80,9 +80,7 @@ def elevation() -> Array:
     # side wadis: a comb of valleys across the hills, bent by the noise
     comb = np.abs(np.sin(np.pi * (y + 260.0 * gentle) / 1150.0))
     side = 48.0 * comb * (1.0 - np.exp(-((hill / 900.0) ** 2)))
-    gorge = (
-        70.0 * np.exp(-(((y - GORGE_Y_M) / 420.0) ** 2)) * (1.0 - np.exp(-((beyond / 110.0) ** 2)))
-    )
+    gorge = 70.0 * np.exp(-(((y - GORGE_Y_M) / 420.0) ** 2)) * (1.0 - np.exp(-((beyond / 110.0) ** 2)))
     share = np.clip(hill / 900.0, 0.0, 1.0)
     z = bed + terrace + rise + side + gorge + rough * (0.12 + 2.6 * share) + 3.0 * gentle * share
     for pan in PANS:
@@ -90,9 +88,7 @@ def elevation() -> Array:
     return np.round(with_road(z, x, y), 2)
 
 
-def with_pan(
-    z: Array, x: Array, y: Array, east: float, north: float, radius: float, depth: float
-) -> Array:
+def with_pan(z: Array, x: Array, y: Array, east: float, north: float, radius: float, depth: float) -> Array:
     """Sink a closed bowl into flattened ground."""
     distance = np.hypot(x - east, y - north)
     rim = float(z[np.abs(distance - 1.5 * radius) < 1.5 * CELL_M].min())
@@ -127,9 +123,7 @@ def weather() -> pd.DataFrame:
     start = np.array([0, 0.15, 0.14, 0.12, 0.05, 0.015, 0, 0, 0, 0.004, 0.04, 0.10, 0.14])[month]
     mean = np.array([0, 9.5, 9.0, 8.0, 6.0, 4.0, 1, 1, 1, 4.0, 8.5, 10.0, 10.0])[month]
     season = (days.year + (month >= 9)).to_numpy()
-    wetness = dict(
-        zip(np.unique(season), rng.lognormal(-0.52, 0.34, np.unique(season).size), strict=True)
-    )
+    wetness = dict(zip(np.unique(season), rng.lognormal(-0.52, 0.34, np.unique(season).size), strict=True))
     draws, amounts = rng.random(days.size), rng.gamma(0.75, 1.0, days.size) / 0.75
     rain = np.zeros(days.size)
     wet = False
@@ -210,9 +204,7 @@ def villages() -> pd.DataFrame:
     )
 
 
-def write_raster(
-    path: Path, values: npt.NDArray[np.generic], cell_m: float, **profile: object
-) -> None:
+def write_raster(path: Path, values: npt.NDArray[np.generic], cell_m: float, **profile: object) -> None:
     """Write one band as a compressed GeoTIFF."""
     with rasterio.open(
         path,

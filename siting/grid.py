@@ -121,8 +121,5 @@ class Raster:
 
     def __post_init__(self) -> None:
         if self.values.shape != self.grid.shape:
-            msg = (
-                f"values have shape {self.values.shape}, their grid has {self.grid.shape}: "
-                "both must be the same"
-            )
+            msg = f"values have shape {self.values.shape}, their grid has {self.grid.shape}: both must be the same"
             raise GridError(msg)

@@ -78,9 +78,7 @@ def classify(
     )
 
 
-def class_runoff_mm(
-    rain_mm: npt.ArrayLike, classes: RunoffClasses, *, abstraction_ratio: float
-) -> FloatArray:
+def class_runoff_mm(rain_mm: npt.ArrayLike, classes: RunoffClasses, *, abstraction_ratio: float) -> FloatArray:
     """Return the runoff of every class on every day, mm: shape (classes, days)."""
     retention = classes.retention_mm(abstraction_ratio=abstraction_ratio)
     rain = np.asarray(rain_mm, dtype=np.float64)

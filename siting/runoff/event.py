@@ -8,9 +8,7 @@ from siting.errors import ConfigError
 FloatArray = npt.NDArray[np.float64]
 
 
-def runoff_depth_mm(
-    rain_mm: npt.ArrayLike, retention_mm: npt.ArrayLike, *, abstraction_ratio: float
-) -> FloatArray:
+def runoff_depth_mm(rain_mm: npt.ArrayLike, retention_mm: npt.ArrayLike, *, abstraction_ratio: float) -> FloatArray:
     """
     Runoff depth of one event: Q = (P - l S)^2 / (P - l S + S) where P exceeds l S, else 0.
 

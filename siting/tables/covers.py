@@ -95,9 +95,7 @@ def _of_cover(cover: str) -> list[CurveNumber]:
     return [row for row in covers() if row.cover == chosen[0]]
 
 
-def _narrow(
-    matching: list[CurveNumber], cover: str, condition: str | None, treatment: str | None
-) -> list[CurveNumber]:
+def _narrow(matching: list[CurveNumber], cover: str, condition: str | None, treatment: str | None) -> list[CurveNumber]:
     for name, wanted in (("treatment", treatment), ("condition", condition)):
         values = list(dict.fromkeys(getattr(row, name) for row in matching))
         if wanted is None and len(values) > 1:

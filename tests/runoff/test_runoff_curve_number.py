@@ -54,12 +54,8 @@ def test_season_of_storms_sums_its_events() -> None:
 def test_antecedent_conditions_are_those_of_the_handbook() -> None:
     # NEH-630 ch. 10 Table 10-1
     middle = np.array([95, 90, 80, 70, 60, 50, 40, 30, 85, 75, 65, 55.0])
-    np.testing.assert_array_equal(
-        runoff.dry_curve_number(middle), [87, 78, 63, 51, 40, 31, 22, 15, 70, 57, 45, 35]
-    )
-    np.testing.assert_array_equal(
-        runoff.wet_curve_number(middle), [98, 96, 91, 85, 78, 70, 60, 50, 94, 88, 82, 74]
-    )
+    np.testing.assert_array_equal(runoff.dry_curve_number(middle), [87, 78, 63, 51, 40, 31, 22, 15, 70, 57, 45, 35])
+    np.testing.assert_array_equal(runoff.wet_curve_number(middle), [98, 96, 91, 85, 78, 70, 60, 50, 94, 88, 82, 74])
 
 
 def test_smaller_abstraction_ratio_by_the_published_conversion() -> None:

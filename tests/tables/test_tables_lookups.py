@@ -38,19 +38,14 @@ def test_every_row_of_every_table_names_its_source(name: str) -> None:
         ("pinyon-juniper", "good", {"B": 41, "C": 61, "D": 71}),
     ],
 )
-def test_range_curve_numbers_are_those_in_print(
-    cover: str, condition: str, numbers: dict[str, float]
-) -> None:
+def test_range_curve_numbers_are_those_in_print(cover: str, condition: str, numbers: dict[str, float]) -> None:
     for group, expected in numbers.items():
         assert tables.curve_number(cover, condition=condition, soil_group=group).curve_number == expected
 
 
 def test_bare_fallow_is_as_printed() -> None:
     # TR-55 (1986) Table 2-2b
-    got = [
-        tables.curve_number("fallow", treatment="bare soil", soil_group=group).curve_number
-        for group in "ABCD"
-    ]
+    got = [tables.curve_number("fallow", treatment="bare soil", soil_group=group).curve_number for group in "ABCD"]
     assert got == [77, 86, 91, 94]
 
 
@@ -169,9 +164,7 @@ def test_fao_water_is_the_middle_of_the_printed_range() -> None:
         (150, 80, 20, "B"),
     ],
 )
-def test_soil_groups_follow_conductivity_and_depth(
-    layer: float, water: float, ksat: float, group: str
-) -> None:
+def test_soil_groups_follow_conductivity_and_depth(layer: float, water: float, ksat: float, group: str) -> None:
     assert tables.soil_group(layer_depth_cm=layer, water_table_cm=water, ksat_um_s=ksat) == group
 
 

@@ -1,0 +1,1 @@
+"""From heights to drainage: fill, flow direction, contributing area, slope, wetness."""

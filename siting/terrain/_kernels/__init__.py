@@ -1,0 +1,1 @@
+"""Loops over cells: arrays in, arrays out; the callers have checked everything."""

@@ -1,0 +1,169 @@
+"""The conditioned surface: filled without epsilon, every cell with a direction, whatever the blocks."""
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from siting.parallel import run_all
+from siting.terrain._kernels.direction import (
+    direct_flats,
+    flat_seeds,
+    spread_steps,
+    steepest,
+)
+from siting.terrain._kernels.watersheds import fill_block, flood_levels, raise_block, seam_passes
+
+FloatArray = npt.NDArray[np.float64]
+Heights = npt.NDArray[np.float32]
+Directions = npt.NDArray[np.uint8]
+Mask = npt.NDArray[np.bool_]
+Block = tuple[int, int, int, int]
+
+LARGEST_BLOCK = 16_000
+"""A block's border parts are numbered in 16 bits."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Conditioned:
+    """
+    Filled heights (m, NaN void) and directions of every cell.
+
+    Directions: 1 to 8 for E SE S SW W NW N NE, 9 where flow leaves the data, 10 at the end of a pan, 255 void.
+    `flat_cells` counts the cells whose direction had to be invented.
+    """
+
+    filled: Heights
+    direction: Directions
+    flat_cells: int
+
+
+def condition(
+    elevation: npt.NDArray[np.floating],
+    *,
+    cell_width_m: FloatArray,
+    cell_height_m: FloatArray,
+    sinks: Mask | None,
+    threads: int,
+    block: int = 256,
+) -> Conditioned:
+    """
+    Fill depressions and direct every cell.
+
+    Parameters
+    ----------
+    elevation
+        Heights in m (rows, columns); NaN and infinite cells are voids, over which water may leave.
+    cell_width_m, cell_height_m
+        Ground size of a cell for each row, m.
+    sinks
+        Cells at which flow ends (the bottoms of kept pans), or None.
+    threads, block
+        How to compute; they cannot change the result.
+
+    References
+    ----------
+    Filled surface: Barnes, Lehman & Mulla (2014). Steepest descent: O'Callaghan & Mark (1984). Flats after
+    Garbrecht & Martz (1997): twice the steps to the way out, less the steps from higher ground.
+    """
+    heights = np.ascontiguousarray(elevation, dtype=np.float32)
+    ends = np.zeros(heights.shape, dtype=np.bool_) if sinks is None else np.ascontiguousarray(sinks)
+    side = min(max(1, block), LARGEST_BLOCK)
+    padded = fill(heights, ends, threads=threads, block=side)
+    direction = np.empty(heights.shape, dtype=np.uint8)
+    bands = row_bands(heights.shape[0], 64)
+    inverse = inverse_distances(cell_width_m, cell_height_m)
+    run_all(lambda r0, r1: steepest(padded, ends, inverse, direction, r0, r1), bands, threads)
+    flat_cells = _across_flats(padded, direction, bands, threads)
+    return Conditioned(padded[1:-1, 1:-1], direction, flat_cells)
+
+
+def row_bands(rows: int, height: int) -> list[tuple[int, int]]:
+    """Divide rows into bands for threads."""
+    return [(first, min(rows, first + height)) for first in range(0, rows, height)]
+
+
+def blocks_of(shape: tuple[int, int], side: int) -> list[Block]:
+    """Divide a raster into blocks, row by row: (first row, row after, first column, column after)."""
+    rows, cols = shape
+    return [
+        (row, min(rows, row + side), col, min(cols, col + side))
+        for row in range(0, rows, side)
+        for col in range(0, cols, side)
+    ]
+
+
+def inverse_distances(cell_width_m: FloatArray, cell_height_m: FloatArray) -> npt.NDArray[np.float32]:
+    """Return one over the distance to a neighbour along the row, diagonal and across rows, for each row."""
+    slant = np.hypot(cell_width_m, cell_height_m)
+    return (1.0 / np.column_stack([cell_width_m, slant, cell_height_m])).astype(np.float32)
+
+
+def fill(heights: Heights, ends: Mask, *, threads: int, block: int) -> Heights:
+    """Return the filled surface, padded by a ring of NaN; `ends` are cells at which flow ends."""
+    rows, cols = heights.shape
+    padded = np.full((rows + 2, cols + 2), np.nan, dtype=np.float32)
+    name = np.empty((rows, cols), dtype=np.uint16)
+    blocks = blocks_of((rows, cols), block)
+    parts = run_all(lambda *where: fill_block(heights, ends, *where, padded, name), blocks, threads)
+    counts = np.array([part[0] for part in parts], dtype=np.int64)
+    base = np.concatenate([np.zeros(1, dtype=np.int64), np.cumsum(counts)])
+    level = _levels(padded, name, parts, base, block)
+    run_all(
+        lambda number, where: raise_block(padded, name, base[number], level, *where),
+        list(enumerate(blocks)),
+        threads,
+    )
+    return padded
+
+
+def _levels(
+    padded: Heights,
+    name: npt.NDArray[np.uint16],
+    parts: list[tuple[int, npt.NDArray[np.int64], npt.NDArray[np.int64], Heights]],
+    base: npt.NDArray[np.int64],
+    block: int,
+) -> Heights:
+    """Solve the graph of all blocks: the level to which each named part is raised."""
+    rows, cols = name.shape
+    most = 3 * (rows * (cols // block + 1) + cols * (rows // block + 1)) + 1
+    first, second = np.empty(most, dtype=np.int64), np.empty(most, dtype=np.int64)
+    height = np.empty(most, dtype=np.float32)
+    count = 0
+    for step in ((0, 1), (1, 0), (1, 1), (1, -1)):
+        count += seam_passes(padded, name, base, block, *step, first[count:], second[count:], height[count:])
+    all_first, all_second, all_height = [first[:count]], [second[:count]], [height[:count]]
+    for number, (_, one, two, passes) in enumerate(parts):
+        all_first.append(np.where(one > 0, one + base[number], 0))
+        all_second.append(np.where(two > 0, two + base[number], 0))
+        all_height.append(passes)
+    nodes = int(base[-1]) + 1
+    marked = np.zeros(nodes, dtype=np.bool_)
+    marked[0] = True
+    nothing = np.empty(1, dtype=np.int64)
+    level, _ = flood_levels(
+        np.concatenate(all_first),
+        np.concatenate(all_second),
+        np.concatenate(all_height),
+        marked,
+        np.zeros(nodes, dtype=np.int64),
+        nothing,
+        nothing.copy(),
+        np.empty(1, dtype=np.float32),
+    )
+    solved: Heights = level
+    return solved
+
+
+def _across_flats(padded: Heights, direction: Directions, bands: list[tuple[int, int]], threads: int) -> int:
+    """Direct the cells that have no lower neighbour; return how many there are."""
+    flat_cells = int(np.count_nonzero(direction == 0))
+    if flat_cells == 0:
+        return 0
+    toward = np.zeros(direction.shape, dtype=np.int32)
+    away = np.zeros(direction.shape, dtype=np.int32)
+    queue = np.empty((2, flat_cells), dtype=np.int64)
+    outs, highs = flat_seeds(padded, direction, toward, away, queue)
+    run_all(spread_steps, [(toward, queue[0], outs), (away, queue[1], highs)], threads)
+    run_all(lambda r0, r1: direct_flats(padded, toward, away, direction, r0, r1), bands, threads)
+    return flat_cells
