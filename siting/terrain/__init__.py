@@ -1,1 +1,30 @@
-"""From heights to drainage: fill, flow direction, contributing area, slope, wetness."""
+"""From heights to drainage: fill, flow direction, contributing area, slope, wetness, position, pans."""
+
+from siting.terrain.analyse import Terrain, analyse
+from siting.terrain.area import accumulate, multiple_flow_area
+from siting.terrain.channels import height_above_channel_m, landscape_position
+from siting.terrain.condition import Conditioned, condition
+from siting.terrain.downstream import any_above, first_below, flow_path, highest_above, open_catchments
+from siting.terrain.pans import Pans, find_pans
+from siting.terrain.surface import profile_curvature, slope, wetness_index
+
+__all__ = [
+    "Conditioned",
+    "Pans",
+    "Terrain",
+    "accumulate",
+    "analyse",
+    "any_above",
+    "condition",
+    "find_pans",
+    "first_below",
+    "flow_path",
+    "height_above_channel_m",
+    "highest_above",
+    "landscape_position",
+    "multiple_flow_area",
+    "open_catchments",
+    "profile_curvature",
+    "slope",
+    "wetness_index",
+]

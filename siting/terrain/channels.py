@@ -1,0 +1,75 @@
+"""Drainage lines, the height above them, and positions in the landscape."""
+
+import numpy as np
+import numpy.typing as npt
+
+from siting.terrain.condition import Directions, FloatArray, Heights, Mask
+from siting.terrain.downstream import first_below
+
+SUMMIT, SHOULDER, BACKSLOPE, FOOTSLOPE, TOESLOPE = 1, 2, 3, 4, 5
+UNKNOWN_POSITION, NO_POSITION = 0, 255
+GENTLE_SLOPE = 0.05
+
+
+def height_above_channel_m(
+    filled: Heights,
+    direction: Directions,
+    channel: Mask,
+    *,
+    cell_width_m: FloatArray,
+    cell_height_m: FloatArray,
+) -> Heights:
+    """
+    Height of each cell over the first channel cell on its flow path, m; NaN where it meets none.
+
+    Measured on the filled surface, so it is never negative; 0 at channel cells.
+
+    References
+    ----------
+    Nobre et al. (2011), Journal of Hydrology 404.
+    """
+    target, _ = first_below(
+        direction, channel, cell_width_m=cell_width_m, cell_height_m=cell_height_m, include_self=True
+    )
+    met = target >= 0
+    base = filled[np.where(met, target, 0) // filled.shape[1], np.where(met, target, 0) % filled.shape[1]]
+    return np.where(met, filled - base, np.nan).astype(np.float32)
+
+
+def landscape_position(
+    *,
+    height_above_channel_m: Heights,
+    drop_from_above_m: Heights,
+    slope: Heights,
+    profile_curvature: Heights,
+    vertical_error_m: float,
+) -> npt.NDArray[np.uint8]:
+    """
+    Place each cell on the slope: 1 summit, 2 shoulder, 3 backslope, 4 footslope, 5 toeslope.
+
+    With h the height above the channel, u the drop from the highest cell upstream, r = h / (h + u): toeslope
+    r <= 0.1 and slope <= 5 %; footslope r <= 0.35 and not convex; summit r >= 0.9 and slope <= 5 %; shoulder
+    r >= 0.65 and not concave; else backslope (our thresholds). 0 (unknown) where h is unknown or
+    h + u < 2 vertical_error_m; 255 void.
+
+    Parameters
+    ----------
+    profile_curvature
+        Above zero where the ground is convex downslope, 1/m.
+
+    References
+    ----------
+    Terms: Schoeneberger et al., Field book for describing and sampling soils.
+    """
+    relief = height_above_channel_m + drop_from_above_m
+    with np.errstate(invalid="ignore", divide="ignore"):
+        share = height_above_channel_m / relief
+    gentle = slope <= GENTLE_SLOPE
+    position = np.full(slope.shape, BACKSLOPE, dtype=np.uint8)
+    position[(share >= 0.65) & (profile_curvature >= 0)] = SHOULDER
+    position[(share >= 0.9) & gentle] = SUMMIT
+    position[(share <= 0.35) & (profile_curvature <= 0)] = FOOTSLOPE
+    position[(share <= 0.1) & gentle] = TOESLOPE
+    position[~(relief >= 2.0 * vertical_error_m)] = UNKNOWN_POSITION
+    position[np.isnan(slope)] = NO_POSITION
+    return position
