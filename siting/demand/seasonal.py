@@ -18,8 +18,8 @@ class SeasonTable:
     Every plot (first axis) in every season (second axis); depths over the plot in mm.
 
     `demand_mm`, `rain_mm` and `rain_only_ratio` hold for all plots alike. `runon_mm` is all that arrives from one
-    harvest to the next, usable or not. `needed_ratio` is the catchment area over the cropped area that would suffice, NaN where
-    the season brought no run-on.
+    harvest to the next, usable or not. `needed_ratio` is the catchment area over the cropped area that would
+    suffice, NaN where the season brought no run-on.
     """
 
     demand_mm: FloatArray

@@ -68,7 +68,7 @@ def analyse(
     filled, direction = np.ascontiguousarray(conditioned.filled), conditioned.direction
     area = accumulate(direction, grid.cell_area_m2, threads=threads)
     shared = multiple_flow_area(filled, direction, cell_area_m2=grid.cell_area_m2, **size)
-    tangent = slope(elevation, **size)
+    tangent = slope(elevation, threads=threads, **size)
     with np.errstate(invalid="ignore"):
         channel = np.asarray(area >= channel_area_m2)
     height = height_above_channel_m(filled, direction, channel, **size)
@@ -87,7 +87,7 @@ def analyse(
         area,
         shared,
         tangent,
-        wetness_index(shared, tangent, **size),
+        wetness_index(shared, tangent, threads=threads, **size),
         channel,
         height,
         position,

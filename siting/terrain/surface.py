@@ -3,17 +3,24 @@
 import numpy as np
 import numpy.typing as npt
 
-FloatArray = npt.NDArray[np.float64]
-Heights = npt.NDArray[np.float32]
+from siting.parallel import run_all
+from siting.terrain._kernels.stencil import horn, wetness
+from siting.terrain.condition import FloatArray, Heights, row_bands
 
 LEAST_SLOPE = 0.001
 """Floor of tan b in the wetness index, so that level ground gets a number and not infinity."""
 
-BAND_ROWS = 256
+BAND_ROWS = 64
 """Rows worked on together: their temporary arrays stay small beside the raster."""
 
 
-def slope(elevation: npt.NDArray[np.floating], *, cell_width_m: FloatArray, cell_height_m: FloatArray) -> Heights:
+def slope(
+    elevation: npt.NDArray[np.floating],
+    *,
+    cell_width_m: FloatArray,
+    cell_height_m: FloatArray,
+    threads: int = 1,
+) -> Heights:
     """
     Slope of every cell as a tangent (0.05 is 5 %), from its eight neighbours.
 
@@ -35,47 +42,18 @@ def slope(elevation: npt.NDArray[np.floating], *, cell_width_m: FloatArray, cell
     ----------
     Horn (1981), Proceedings of the IEEE 69(1).
     """
-    rows = elevation.shape[0]
-    found = np.empty(elevation.shape, dtype=np.float32)
-    for first in range(0, rows, BAND_ROWS):
-        last = min(rows, first + BAND_ROWS)
-        found[first:last] = _band(elevation, first, last, cell_width_m, cell_height_m)
-    return found
-
-
-def _band(
-    elevation: npt.NDArray[np.floating], first: int, last: int, width_m: FloatArray, height_m: FloatArray
-) -> Heights:
     rows, cols = elevation.shape
-    window = np.full((last - first + 2, cols + 2), np.nan)
-    above, below = max(0, first - 1), min(rows, last + 1)
-    window[above - first + 1 : below - first + 1, 1:-1] = elevation[above:below]
-    window[np.isinf(window)] = np.nan
-    centre = window[1:-1, 1:-1]
+    found = np.empty(elevation.shape, dtype=np.float32)
 
-    def difference(row: int, col: int) -> FloatArray:
-        # heights relative to the centre: small numbers keep their digits
-        near = window[1 + row : window.shape[0] - 1 + row, 1 + col : window.shape[1] - 1 + col] - centre
-        far = window[1 - row : window.shape[0] - 1 - row, 1 - col : window.shape[1] - 1 - col] - centre
-        return np.where(np.isnan(near), -far, near)
+    def work(first: int, last: int) -> None:
+        window = np.full((last - first + 2, cols + 2), np.nan, dtype=np.float32)
+        above, below = max(0, first - 1), min(rows, last + 1)
+        window[above - first + 1 : below - first + 1, 1:-1] = elevation[above:below]
+        window[np.isinf(window)] = np.nan
+        horn(window, cell_width_m[first:last], cell_height_m[first:last], found[first:last])
 
-    def side(row: int, col: int) -> FloatArray:
-        return np.nan_to_num(difference(row, col))
-
-    def corner(row: int, col: int) -> FloatArray:
-        # where neither it nor its opposite is there: a plane through the two sides
-        found = difference(row, col)
-        return np.where(np.isnan(found), side(row, 0) + side(0, col), found)
-
-    north, south, west, east = side(-1, 0), side(1, 0), side(0, -1), side(0, 1)
-    north_west, north_east = corner(-1, -1), corner(-1, 1)
-    south_west, south_east = corner(1, -1), corner(1, 1)
-    dz_dx = (north_east + 2 * east + south_east - north_west - 2 * west - south_west) / (8 * width_m[first:last, None])
-    dz_dy = (north_west + 2 * north + north_east - south_west - 2 * south - south_east) / (
-        8 * height_m[first:last, None]
-    )
-    tangent = np.hypot(dz_dx, dz_dy)
-    return np.where(np.isnan(centre), np.nan, tangent).astype(np.float32)
+    run_all(work, row_bands(rows, BAND_ROWS), threads)
+    return found
 
 
 def wetness_index(
@@ -84,6 +62,7 @@ def wetness_index(
     *,
     cell_width_m: FloatArray,
     cell_height_m: FloatArray,
+    threads: int = 1,
 ) -> Heights:
     """
     Topographic wetness index ln(a / tan b).
@@ -97,10 +76,12 @@ def wetness_index(
     """
     contour_m = 0.5 * (cell_width_m + cell_height_m)
     found = np.empty(slope.shape, dtype=np.float32)
-    for first in range(0, slope.shape[0], BAND_ROWS):
-        part = slice(first, first + BAND_ROWS)
-        area_m = multiple_flow_area_m2[part] / contour_m[part, None]
-        found[part] = np.log(area_m / np.maximum(slope[part], LEAST_SLOPE))
+
+    def work(first: int, last: int) -> None:
+        part = slice(first, last)
+        wetness(multiple_flow_area_m2[part], slope[part], contour_m[part], LEAST_SLOPE, found[part])
+
+    run_all(work, row_bands(slope.shape[0], BAND_ROWS), threads)
     return found
 
 
