@@ -31,9 +31,7 @@ def depletion_fraction(table_fraction: npt.ArrayLike, *, crop_et_mm: npt.ArrayLi
     return np.asarray(np.clip(adjusted, 0.1, 0.8))
 
 
-def stress_coefficient(
-    *, available_mm: npt.ArrayLike, depletion_mm: npt.ArrayLike, fraction: npt.ArrayLike
-) -> FloatArray:
+def stress_coefficient(*, available_mm: npt.ArrayLike, depletion_mm: npt.ArrayLike, fraction: npt.ArrayLike) -> FloatArray:
     """
     Water stress coefficient Ks, 0 to 1; FAO-56 eq. 84.
 

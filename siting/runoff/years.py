@@ -110,8 +110,7 @@ def _tell(kept: list[int], dropped: list[int], missing: int, notes: Notes) -> No
     if len(kept) < SHORT_RECORD_YEARS:
         notes.warn(
             "short_record",
-            f"The rain record holds {len(kept)} complete years; dry and wet years are uncertain "
-            f"under {SHORT_RECORD_YEARS}.",
+            f"The rain record holds {len(kept)} complete years; dry and wet years are uncertain under {SHORT_RECORD_YEARS}.",
         )
 
 

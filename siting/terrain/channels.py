@@ -28,9 +28,7 @@ def height_above_channel_m(
     ----------
     Nobre et al. (2011), Journal of Hydrology 404.
     """
-    target, _ = first_below(
-        direction, channel, cell_width_m=cell_width_m, cell_height_m=cell_height_m, include_self=True
-    )
+    target, _ = first_below(direction, channel, cell_width_m=cell_width_m, cell_height_m=cell_height_m, include_self=True)
     met = target >= 0
     base = filled[np.where(met, target, 0) // filled.shape[1], np.where(met, target, 0) % filled.shape[1]]
     return np.where(met, filled - base, np.nan).astype(np.float32)

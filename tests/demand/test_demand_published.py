@@ -36,9 +36,7 @@ def test_solar_radiation_from_temperature() -> None:
 def test_penman_monteith_month_of_bangkok() -> None:
     # FAO-56 example 17: 13 44 N, 2 m, April; soil heat 0.14; 5.72 mm/d
     outer = 38.06
-    solar = et.solar_radiation_mj(
-        sunshine_h=8.5, possible_h=et.daylight_h(13 + 44 / 60, 105), extraterrestrial_mj=outer
-    )
+    solar = et.solar_radiation_mj(sunshine_h=8.5, possible_h=et.daylight_h(13 + 44 / 60, 105), extraterrestrial_mj=outer)
     assert float(solar) == pytest.approx(22.65, abs=0.05)
     net = et.net_radiation_mj(
         tmin_c=25.6, tmax_c=34.8, vapour_pressure_kpa=2.85, solar_mj=solar, extraterrestrial_mj=outer, altitude_m=2
@@ -122,9 +120,7 @@ def test_adjusted_coefficient_follows_wind_and_humidity() -> None:
 
 def test_available_water_of_three_soils() -> None:
     # FAO-56 example 36: tomato, 0.8 m
-    got = demand.available_water_mm(
-        field_capacity=[0.15, 0.32, 0.35], wilting_point=[0.06, 0.15, 0.23], root_depth_m=0.8
-    )
+    got = demand.available_water_mm(field_capacity=[0.15, 0.32, 0.35], wilting_point=[0.06, 0.15, 0.23], root_depth_m=0.8)
     np.testing.assert_allclose(got, [72, 136, 96], atol=0.5)
 
 

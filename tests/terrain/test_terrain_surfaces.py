@@ -201,8 +201,7 @@ def test_a_pan_of_half_the_depth_is_doubtful() -> None:
 
 def test_raising_all_ground_changes_nothing() -> None:
     low, high = (
-        terrain_of(bowl(3.0).round() + lift, 20.0, vertical_error_m=1.0, pan_min_area_m2=10_000.0)
-        for lift in (0.0, 1.0)
+        terrain_of(bowl(3.0).round() + lift, 20.0, vertical_error_m=1.0, pan_min_area_m2=10_000.0) for lift in (0.0, 1.0)
     )
     np.testing.assert_array_equal(low.direction, high.direction)
     np.testing.assert_array_equal(low.contributing_area_m2, high.contributing_area_m2)

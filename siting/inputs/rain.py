@@ -1,0 +1,167 @@
+"""A daily rain record from a CSV, understood or refused."""
+
+from pathlib import Path
+
+import numpy as np
+import pandas as pd
+
+from siting.errors import InputError
+from siting.notes import Notes
+from siting.runoff.rain import Rain
+
+DATE_NAMES = ("date", "day", "time", "datum", "fecha", "data", "jour", "tarih", "tarikh")
+RAIN_NAMES = (
+    *("rain", "rainfall", "precip", "precipitation", "prcp", "pr", "pluie", "lluvia", "chuva", "niederschlag"),
+    *("precipitacion", "precipitacao", "precipitations", "yagis", "mvua"),
+)
+UNIT_ENDINGS = {"mm": "mm", "in": "inch", "inch": "inch", "inches": "inch"}
+MOST_IN_A_DAY_MM = 2000.0
+"""More than any day on record (about 1 825 mm, La Reunion 1966; from memory)."""
+LEAST_YEAR_MM = 15.0
+"""A mean year below this looks like inches or metres (common practice)."""
+
+
+def read_rain(path: Path, *, unit: str | None = None, notes: Notes) -> Rain:
+    """
+    Read a daily rain record.
+
+    Parameters
+    ----------
+    path
+        CSV with a date and a rain column in any order; comma, semicolon or tab; decimal point or comma.
+    unit
+        "mm" or "inch"; None takes it from the column's name, else assumes mm and notes it.
+
+    Returns
+    -------
+    Rain
+        Consecutive days, mm, NaN where missing.
+
+    Raises
+    ------
+    InputError
+        Monthly totals, repeated days, depths below zero or beyond any record, days that cannot be told.
+    """
+    table = _table(path)
+    dates = _dates(path, table[_column(path, table, DATE_NAMES, "date")])
+    name = _column(path, table, RAIN_NAMES, "rain")
+    depth = _numbers(path, table[name])
+    depth = depth * _millimetres(name, unit, notes)
+    _check(path, dates, depth)
+    series = pd.Series(depth.to_numpy(), index=dates).sort_index()
+    whole = series.reindex(pd.date_range(series.index[0], series.index[-1], freq="D"))
+    _note_gaps(whole, notes)
+    return Rain(whole.index.to_numpy().astype("datetime64[D]"), np.asarray(whole, dtype=np.float64))
+
+
+def _table(path: Path) -> pd.DataFrame:
+    if not path.exists():
+        msg = f"the rain file {path.name} does not exist; give the path of a CSV in rain.daily"
+        raise InputError(msg)
+    try:
+        head = path.read_text(encoding="utf-8-sig", errors="strict")[:20_000].splitlines()
+        separator = max(";\t,", key=head[0].count) if head else ","
+        table = pd.read_csv(path, sep=separator, dtype=str, encoding="utf-8-sig", skipinitialspace=True)
+    except (UnicodeDecodeError, ValueError) as error:
+        msg = f"the rain file {path.name} cannot be read as a table; save it as CSV (UTF-8) with a date and a rain column"
+        raise InputError(msg) from error
+    if table.shape[0] == 0 or table.shape[1] < 2:
+        msg = f"the rain file {path.name} has {table.shape[0]} rows and {table.shape[1]} columns; it needs dates and rain"
+        raise InputError(msg)
+    return table
+
+
+def _plain(name: str) -> str:
+    return name.strip().lower().replace(" ", "_").replace("(", "_").replace(")", "").replace("__", "_")
+
+
+def _column(path: Path, table: pd.DataFrame, names: tuple[str, ...], what: str) -> str:
+    found = [str(column) for column in table.columns if _plain(str(column)).split("_")[0] in names]
+    if len(found) == 1:
+        return found[0]
+    columns = ", ".join(repr(str(column)) for column in table.columns)
+    why = "no" if not found else "more than one"
+    msg = f"the rain file {path.name} has {why} {what} column among {columns}; name it '{names[0]}'"
+    raise InputError(msg)
+
+
+def _dates(path: Path, text: "pd.Series[str]") -> pd.DatetimeIndex:
+    """Read dates; refuse those that could be read in two ways."""
+    for pattern in ("%Y-%m-%d", "%Y/%m/%d", "%Y%m%d", "%Y-%m-%d %H:%M:%S", "%d.%m.%Y"):
+        dates = pd.to_datetime(text.str.strip(), format=pattern, errors="coerce")
+        if dates.notna().all():
+            return pd.DatetimeIndex(dates).normalize()
+    readings = {
+        pattern: pd.to_datetime(text.str.strip(), format=pattern, errors="coerce")
+        for pattern in ("%d/%m/%Y", "%m/%d/%Y", "%d-%m-%Y", "%m-%d-%Y")
+    }
+    whole = [dates for dates in readings.values() if dates.notna().all()]
+    if len(whole) == 1:
+        return pd.DatetimeIndex(whole[0])
+    example = text.iloc[0]
+    why = "could be day or month first" if whole else "cannot be read"
+    msg = f"dates in the rain file {path.name} such as {example!r} {why}; write them as 2001-12-31"
+    raise InputError(msg)
+
+
+def _numbers(path: Path, text: "pd.Series[str]") -> "pd.Series[float]":
+    plain = text.str.strip().str.replace(",", ".", regex=False)
+    missing = plain.isna() | plain.str.lower().isin(["", "na", "nan", "-", "-99", "-999", "-9999", "-99.9", "m"])
+    depth = pd.to_numeric(plain.where(~missing), errors="coerce")
+    strange = depth.isna() & ~missing
+    if strange.any():
+        msg = f"the rain file {path.name} has {text[strange].iloc[0]!r} for a depth; leave missing days empty"
+        raise InputError(msg)
+    return depth.astype(float)
+
+
+def _millimetres(name: str, unit: str | None, notes: Notes) -> float:
+    ending = _plain(name).rsplit("_", maxsplit=1)[-1]
+    known = unit or UNIT_ENDINGS.get(ending)
+    if known is None:
+        notes.assume("rain.unit", "mm", "", "the file names no unit", "all water")
+        known = "mm"
+    if known not in ("mm", "inch"):
+        msg = f"rain.unit is {known!r}; it must be 'mm' or 'inch'"
+        raise InputError(msg)
+    return 25.4 if known == "inch" else 1.0
+
+
+def _check(path: Path, dates: pd.DatetimeIndex, depth: "pd.Series[float]") -> None:
+    if dates.has_duplicates:
+        day = dates[dates.duplicated()][0].date()
+        msg = f"the rain file {path.name} has {day} more than once; keep one row a day"
+        raise InputError(msg)
+    if depth.notna().sum() == 0:
+        msg = f"the rain file {path.name} holds no depth at all; give a file with readings"
+        raise InputError(msg)
+    if depth.min() < 0:
+        msg = f"the rain file {path.name} has a depth of {depth.min():g} mm; leave missing days empty"
+        raise InputError(msg)
+    if depth.max() > MOST_IN_A_DAY_MM:
+        msg = f"the rain file {path.name} has {depth.max():g} mm in one day, beyond any record; is rain.unit right?"
+        raise InputError(msg)
+    steps = np.diff(np.sort(dates.to_numpy()).astype("datetime64[D]").astype(np.int64))
+    if steps.size and np.median(steps) >= 27:
+        msg = (
+            f"the rain file {path.name} has one row in {np.median(steps):g} days: totals; runoff comes from single "
+            "events, so give daily rain"
+        )
+        raise InputError(msg)
+    if depth.mean() * 365.25 < LEAST_YEAR_MM and depth.size > 365:
+        msg = (
+            f"the rain file {path.name} sums to {depth.mean() * 365.25:.1f} mm in a mean year; if it is in inches, say "
+            "rain.unit = 'inch', or name its column rain_mm and set rain.unit = 'mm' if it is right"
+        )
+        raise InputError(msg)
+
+
+def _note_gaps(series: "pd.Series[float]", notes: Notes) -> None:
+    missing = series.isna().to_numpy()
+    if not missing.any():
+        return
+    after = int(np.count_nonzero(missing[:-1] & ~missing[1:] & (series.to_numpy()[1:] > 0)))
+    notes.warn(
+        "rain_gaps",
+        f"The rain record lacks {int(missing.sum())} days; {after} readings right after a gap may be sums of several days.",
+    )
