@@ -233,3 +233,26 @@ def test_gaps_are_missing_and_said(tmp_path: Path) -> None:
 def test_rain_that_cannot_be_right_is_refused(tmp_path: Path, text: str, message: str) -> None:
     with pytest.raises(InputError, match=message):
         read_rain(rain_file(tmp_path, text), notes=Notes())
+
+
+def test_a_degree_grid_is_analysed_on_its_own_cells(package_file: Find, tmp_path: Path) -> None:
+    # humid hills at 3 arc-seconds, whole metres: the contrast case. Its corner values are south-up in name only
+    data = np.load(package_file("matplotlib", "mpl-data/sample_data/jacksboro_fault_dem.npz"))
+    heights = data["elevation"]
+    step = float(data["dx"])
+    frame = Affine(step, 0, float(data["xmin"]), 0, -step, float(data["ymin"]))
+    dem = read_dem(write(tmp_path / "hills.tif", heights, crs="EPSG:4326", transform=frame), notes=Notes())
+    assert (dem.values.min(), dem.values.max()) == (236.0, 1076.0)
+    done = condition(
+        dem.values, sinks=None, threads=2, cell_width_m=dem.grid.cell_width_m, cell_height_m=dem.grid.cell_height_m
+    )
+    area = accumulate(done.direction, dem.grid.cell_area_m2, threads=2)
+    geod = Geod(ellps="WGS84")
+    west, north = float(data["xmin"]), float(data["ymin"])
+    east, south = west + step * 403, north - step * 344
+    lon = np.concatenate([np.linspace(west, east, 404), np.linspace(east, west, 404)])
+    lat = np.concatenate([np.full(404, south), np.full(404, north)])
+    whole, _ = geod.polygon_area_perimeter(lon, lat)
+    # all water leaves at the edge, and it is the water of the true area
+    assert area[done.direction == 9].sum() == dem.grid.cell_area_m2.sum() * 403
+    assert area[done.direction == 9].sum() == pytest.approx(abs(whole), rel=0.001)
