@@ -64,13 +64,17 @@ def read_dem(
         In one sentence: what is wrong, its value, and the way out.
     """
     found = _read(path, band)
-    system = _crs_of(path, found.crs, crs)
+    system = _crs_of(path, found.crs, crs, notes)
     values, valid, transform = _north_up(path, found, notes)
     if found.point:
         notes.assume("dem.pixel_is_point", "yes", "", "declared in the file", "half a cell; the reader has moved the grid")
     unit = _unit(found, system, elevation_unit, notes)
     heights = np.where(valid, values * metres_per_unit(unit), np.nan)
     _check_heights(path, heights, values, valid)
+    if np.nanmin(heights) == np.nanmax(heights):
+        notes.warn(
+            "flat_dem", f"The DEM {path.name} is level, {np.nanmin(heights):g} m everywhere: no flow can be told from it."
+        )
     width, height = row_metrics(transform, values.shape, system)
     grid = Grid(
         values.shape[0],
@@ -113,13 +117,18 @@ def _first_line(error: Exception) -> str:
     return Path(text[0]).name if text else type(error).__name__
 
 
-def _crs_of(path: Path, found: CRS | None, given: str | None) -> CRS:
+def _crs_of(path: Path, found: CRS | None, given: str | None, notes: Notes) -> CRS:
     if given is not None:
         try:
-            return CRS.from_user_input(given)
+            chosen = CRS.from_user_input(given)
         except Exception as error:  # pyproj raises several kinds
             msg = f"place.crs is {given!r}, which is no known CRS; write it as EPSG:32636, for example"
             raise InputError(msg) from error
+        if found is not None and not chosen.equals(found, ignore_axis_order=True):
+            notes.warn(
+                "crs_overridden", f"The DEM {path.name} declares {found.name}; place.crs puts {chosen.name} in its place."
+            )
+        return chosen
     if found is None:
         msg = f"the DEM {path.name} declares no CRS; give it in place.crs, for example EPSG:32636"
         raise InputError(msg)

@@ -47,7 +47,7 @@ def read_rain(path: Path, *, unit: str | None = None, notes: Notes) -> Rain:
     name = _column(path, table, RAIN_NAMES, "rain")
     depth = _numbers(path, table[name])
     depth = depth * _millimetres(name, unit, notes)
-    _check(path, dates, depth)
+    _check(path, dates, depth, unit_given=unit is not None)
     series = pd.Series(depth.to_numpy(), index=dates).sort_index()
     whole = series.reindex(pd.date_range(series.index[0], series.index[-1], freq="D"))
     _note_gaps(whole, notes)
@@ -105,6 +105,11 @@ def _dates(path: Path, text: "pd.Series[str]") -> pd.DatetimeIndex:
 
 
 def _numbers(path: Path, text: "pd.Series[str]") -> "pd.Series[float]":
+    grouped = text.str.strip().str.fullmatch(r"\d{1,3}(,\d{3})+(\.\d+)?").fillna(False).astype(bool)
+    if grouped.any():
+        example = text[grouped].iloc[0]
+        msg = f"the rain file {path.name} has {example!r}, a decimal or a thousands comma; write depths with a point"
+        raise InputError(msg)
     plain = text.str.strip().str.replace(",", ".", regex=False)
     missing = plain.isna() | plain.str.lower().isin(["", "na", "nan", "-", "-99", "-999", "-9999", "-99.9", "m"])
     depth = pd.to_numeric(plain.where(~missing), errors="coerce")
@@ -127,7 +132,7 @@ def _millimetres(name: str, unit: str | None, notes: Notes) -> float:
     return 25.4 if known == "inch" else 1.0
 
 
-def _check(path: Path, dates: pd.DatetimeIndex, depth: "pd.Series[float]") -> None:
+def _check(path: Path, dates: pd.DatetimeIndex, depth: "pd.Series[float]", *, unit_given: bool) -> None:
     if dates.has_duplicates:
         day = dates[dates.duplicated()][0].date()
         msg = f"the rain file {path.name} has {day} more than once; keep one row a day"
@@ -142,16 +147,16 @@ def _check(path: Path, dates: pd.DatetimeIndex, depth: "pd.Series[float]") -> No
         msg = f"the rain file {path.name} has {depth.max():g} mm in one day, beyond any record; is rain.unit right?"
         raise InputError(msg)
     steps = np.diff(np.sort(dates.to_numpy()).astype("datetime64[D]").astype(np.int64))
-    if steps.size and np.median(steps) >= 27:
+    if steps.size and np.median(steps) >= 5:
         msg = (
             f"the rain file {path.name} has one row in {np.median(steps):g} days: totals; runoff comes from single "
             "events, so give daily rain"
         )
         raise InputError(msg)
-    if depth.mean() * 365.25 < LEAST_YEAR_MM and depth.size > 365:
+    if not unit_given and depth.mean() * 365.25 < LEAST_YEAR_MM and depth.size > 365:
         msg = (
             f"the rain file {path.name} sums to {depth.mean() * 365.25:.1f} mm in a mean year; if it is in inches, say "
-            "rain.unit = 'inch', or name its column rain_mm and set rain.unit = 'mm' if it is right"
+            "rain.unit = 'inch', and if it is right, say rain.unit = 'mm'"
         )
         raise InputError(msg)
 

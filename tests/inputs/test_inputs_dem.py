@@ -256,3 +256,19 @@ def test_a_degree_grid_is_analysed_on_its_own_cells(package_file: Find, tmp_path
     # all water leaves at the edge, and it is the water of the true area
     assert area[done.direction == 9].sum() == dem.grid.cell_area_m2.sum() * 403
     assert area[done.direction == 9].sum() == pytest.approx(abs(whole), rel=0.001)
+
+
+def test_another_crs_than_the_declared_one_and_a_level_dem_are_said(tmp_path: Path) -> None:
+    notes = Notes()
+    read_dem(write(tmp_path / "level.tif", np.full((9, 9), 5.0, dtype=np.float32)), crs="EPSG:32637", notes=notes)
+    assert [warned.code for warned in notes.warnings] == ["crs_overridden", "flat_dem"]
+
+
+def test_a_comma_that_may_group_thousands_is_refused(tmp_path: Path) -> None:
+    with pytest.raises(InputError, match="a decimal or a thousands comma"):
+        read_rain(rain_file(tmp_path, "date;rain_mm\n2001-01-01;1,234\n2001-01-02;0"), notes=Notes())
+
+
+def test_a_very_dry_record_is_taken_when_its_unit_is_stated(tmp_path: Path) -> None:
+    path = rain_file(tmp_path, "date,rain\n" + "\n".join(days(800, "0.01")))
+    assert read_rain(path, unit="mm", notes=Notes()).rain_mm.sum() == pytest.approx(8.0)
