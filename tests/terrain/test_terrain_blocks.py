@@ -10,6 +10,7 @@ from hypothesis import strategies as st
 from hypothesis.extra import numpy as hnp
 from plain_reference import Plain
 
+from siting.errors import GridError
 from siting.terrain.area import accumulate, multiple_flow_area
 from siting.terrain.condition import Conditioned, condition
 
@@ -147,3 +148,30 @@ def test_multiple_flow_on_a_plane_grows_by_a_row_each_row() -> None:
     size = np.full(30, 10.0)
     area = multiple_flow_area(got.filled, got.direction, cell_area_m2=size * 10, cell_width_m=size, cell_height_m=size)
     np.testing.assert_allclose(area[:, 30], 100.0 * np.arange(1, 31))
+
+
+def test_directions_against_the_fall_lose_no_water_in_multiple_flow() -> None:
+    # a user's own direction to an equal neighbour although a lower one is there
+    z = np.array([[3, 3, 3, 3, 3], [3, 2, 2, 2, 3], [3, 2, 2, 1.5, 3], [3, 3, 3, 0, 3]], dtype=np.float32)
+    got = conditioned(z)
+    direction = got.direction.copy()
+    direction[1, 2] = 3
+    size = np.full(4, 10.0)
+    area = multiple_flow_area(got.filled, direction, cell_area_m2=size * 10, cell_width_m=size, cell_height_m=size)
+    assert area[direction == 9].sum() == pytest.approx(100.0 * z.size)
+
+
+@pytest.mark.parametrize("codes", [[1, 0, 9], [1, 1, 1], [1, 11, 9], [1, 255, 9], [7, 1, 9]])
+def test_directions_that_lead_nowhere_are_refused(codes: list[int]) -> None:
+    with pytest.raises(GridError, match="no code or lead off"):
+        accumulate(np.array([codes], dtype=np.uint8), np.ones(1), threads=1)
+
+
+def test_a_circle_of_flow_is_refused_not_summed() -> None:
+    circle = np.array([[1, 1, 5, 9]], dtype=np.uint8)
+    with pytest.raises(GridError, match="through or above 2 cells"):
+        accumulate(circle, np.ones(1), threads=1)
+    level = np.ones((1, 4), dtype=np.float32)
+    one = np.ones(1)
+    with pytest.raises(GridError, match="circle"):
+        multiple_flow_area(level, circle, cell_area_m2=one, cell_width_m=one, cell_height_m=one)

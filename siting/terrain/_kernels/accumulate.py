@@ -5,6 +5,25 @@ from siting.terrain._kernels.jit import kernel
 
 
 @kernel
+def count_astray(direction, row0, row1):
+    """Count in rows `row0` to `row1` the codes that are no direction, or lead off the raster or into a void."""
+    rows, cols = direction.shape
+    astray = 0
+    for row in range(row0, row1):
+        for col in range(cols):
+            code = direction[row, col]
+            if 9 <= code <= 10 or code == 255:
+                continue
+            if code == 0 or code > 10:
+                astray += 1
+                continue
+            to_row, to_col = row + STEP_ROW[code], col + STEP_COL[code]
+            inside = 0 <= to_row < rows and 0 <= to_col < cols
+            astray += 0 if inside and direction[to_row, to_col] != 255 else 1
+    return astray
+
+
+@kernel
 def count_inflows(direction, inflows, row0, row1):
     """Count for rows `row0` to `row1` the neighbours that drain into each cell."""
     rows, cols = direction.shape
@@ -88,14 +107,27 @@ def share_down(filled, direction, weights, total, inflows, stack):
 
 
 @kernel
+def _falls(filled, row, col):
+    """Tell whether a cell has a lower neighbour."""
+    here = filled[row + 1, col + 1]
+    lower = False
+    for code in range(1, 9):
+        lower |= filled[row + 1 + STEP_ROW[code], col + 1 + STEP_COL[code]] < here
+    return lower
+
+
+@kernel
 def _contributors(filled, direction, row, col):
+    rows, cols = direction.shape
     here = filled[row + 1, col + 1]
     count = 0
     for code in range(1, 9):
         from_row, from_col = row - STEP_ROW[code], col - STEP_COL[code]
+        if not (0 <= from_row < rows and 0 <= from_col < cols):
+            continue
         there = filled[from_row + 1, from_col + 1]
         if (there > here and direction[from_row, from_col] <= 8) or (
-            there == here and direction[from_row, from_col] == code
+            direction[from_row, from_col] == code and not _falls(filled, from_row, from_col)
         ):
             count += 1
     return count
