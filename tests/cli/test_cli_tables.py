@@ -34,7 +34,7 @@ def test_an_unknown_command_is_a_usage_error() -> None:
 
 @pytest.mark.parametrize(
     ("error", "code"),
-    [(InputError("x"), 3), (ConfigError("x"), 3), (CapacityError("x"), 5), (OutputError("x"), 1)],
+    [(ValueError("x"), 1), (InputError("x"), 3), (ConfigError("x"), 3), (CapacityError("x"), 5), (OutputError("x"), 3)],
 )
 def test_errors_have_their_exit_codes(error: Exception, code: int) -> None:
     assert exit_code(error) == code
@@ -43,7 +43,8 @@ def test_errors_have_their_exit_codes(error: Exception, code: int) -> None:
 def test_help_imports_no_heavy_library() -> None:
     code = (
         "import sys; from siting_cli.main import group; group(['--help'], standalone_mode=False); "
-        "heavy = {'numpy', 'numba', 'pandas', 'rasterio'} & set(sys.modules); sys.exit(repr(heavy) if heavy else 0)"
+        "heavy = {'numpy', 'numba', 'pandas', 'pydantic', 'rasterio', 'rich'} & set(sys.modules); "
+        "sys.exit(repr(heavy) if heavy else 0)"
     )
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=False)
     assert done.returncode == 0, done.stderr

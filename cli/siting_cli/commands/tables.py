@@ -3,8 +3,7 @@
 import click
 
 from siting_cli.console import show
-
-json_option = click.option("--json", "as_json", is_flag=True, help="Print JSON with every column.")
+from siting_cli.options import json_option
 
 
 @click.command()
