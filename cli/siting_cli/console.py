@@ -5,7 +5,7 @@ import json
 import math
 import os
 import sys
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Collection, Iterator, Mapping, Sequence
 from contextlib import contextmanager
 from typing import TYPE_CHECKING, Any
 
@@ -35,20 +35,46 @@ def exit_code(error: BaseException) -> int:
     return next((code for kind, code in EXIT_CODES.items() if isinstance(error, kind)), OUR_BUG)
 
 
-def show(rows: Sequence[Mapping[str, object]], *, as_json: bool = False) -> None:
-    """Print rows to stdout: JSON with every key, or a table whose columns are the keys."""
+def show(rows: Sequence[Mapping[str, object]], *, as_json: bool = False, footnotes: Collection[str] = ()) -> None:
+    """
+    Print rows to stdout: JSON with every key, or a table whose columns are the keys.
+
+    In a table the columns named in `footnotes` hold numbers, and their texts follow below, each once.
+    """
     if as_json:
         show_json(list(rows))
-    elif rows and sys.stdout.isatty():
+        return
+    if not rows:
+        return
+    numbered, notes = _numbered(rows, footnotes)
+    if sys.stdout.isatty():
         from rich.console import Console
 
-        rich_table(rows, Console())
-    elif rows:
-        names = list(rows[0])
-        texts = [names, *([text(row[name]) for name in names] for row in rows)]
-        widths = [max(len(line[place]) for line in texts) for place in range(len(names))]
-        for line in texts:
-            click.echo("  ".join(cell.ljust(width) for cell, width in zip(line, widths, strict=True)).rstrip())
+        rich_table(numbered, Console())
+    else:
+        _plain_table(numbered)
+    for number, note in enumerate(notes, start=1):
+        click.echo(f"{'' if number > 1 else chr(10)}[{number}] {note}")
+
+
+def _numbered(rows: Sequence[Mapping[str, object]], columns: Collection[str]) -> tuple[list[dict[str, object]], list[str]]:
+    """Put a number in place of each text of `columns`; return the rows and the texts in the order of their numbers."""
+    places: dict[str, int] = {}
+    numbered = []
+    for row in rows:
+        new = dict(row)
+        for column in columns:
+            new[column] = f"[{places.setdefault(text(row[column]), len(places) + 1)}]"
+        numbered.append(new)
+    return numbered, list(places)
+
+
+def _plain_table(rows: Sequence[Mapping[str, object]]) -> None:
+    names = list(rows[0])
+    texts = [names, *([text(row[name]) for name in names] for row in rows)]
+    widths = [max(len(line[place]) for line in texts) for place in range(len(names))]
+    for line in texts:
+        click.echo("  ".join(cell.ljust(width) for cell, width in zip(line, widths, strict=True)).rstrip())
 
 
 def rich_table(rows: Sequence[Mapping[str, object]], console: "Console") -> None:
@@ -59,7 +85,7 @@ def rich_table(rows: Sequence[Mapping[str, object]], console: "Console") -> None
     table = Table(box=None, pad_edge=False)
     for name, value in rows[0].items():
         is_number = isinstance(value, int | float) and not isinstance(value, bool)
-        table.add_column(name, justify="right" if is_number else "left", overflow="fold")
+        table.add_column(name.replace("_", " "), justify="right" if is_number else "left", overflow="fold")
     for row in rows:
         table.add_row(*(Text(text(value)) for value in row.values()))  # as Text, so that [brackets] stay
     console.print(table)

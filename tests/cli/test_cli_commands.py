@@ -15,7 +15,7 @@ from siting.errors import CapacityError
 from siting_cli.commands.check import show_report
 from siting_cli.commands.demo import write_demo
 from siting_cli.commands.run import share, show_results
-from siting_cli.console import Bar, plain, rich_table, text
+from siting_cli.console import Bar, plain, rich_table, show, text
 from siting_cli.main import Commands, group
 from siting_cli.options import FLAG_KEYS
 
@@ -251,6 +251,14 @@ def test_a_table_on_a_terminal_keeps_brackets_and_every_cell() -> None:
     rich_table(rows, Console(file=page, force_terminal=True, width=80, no_color=True))
     assert "[red] valley" in page.getvalue()
     assert "12.5" in page.getvalue()
+
+
+def test_long_texts_stand_once_below_a_table(capsys: pytest.CaptureFixture[str]) -> None:
+    rows = [{"name": name, "source": source} for name, source in (("a", "long"), ("b", "longer"), ("c", "long"))]
+    show(rows, footnotes=("source",))
+    assert capsys.readouterr().out == "name  source\na     [1]\nb     [2]\nc     [1]\n\n[1] long\n[2] longer\n"
+    show(rows, as_json=True, footnotes=("source",))
+    assert json.loads(capsys.readouterr().out) == rows
 
 
 def test_the_bar_shows_each_stage_with_its_percent() -> None:

@@ -105,7 +105,7 @@ def _plot_row(row: Mapping[str, Any]) -> dict[str, object]:
         "supply_dry": row["supply_ratio_dry"],
         "supply_median": row["supply_ratio_median"],
         "rain_alone_dry": row["rain_only_ratio_dry"],
-        "cautions": row["cautions"] or None,
+        "cautions": (row["cautions"] or "").replace(";", "; ") or None,
     }
 
 

@@ -27,6 +27,7 @@ def crops(as_json: bool) -> None:
             for row in all_crops()
         ],
         as_json=as_json,
+        footnotes=("ky_source", "source"),
     )
 
 
@@ -42,7 +43,7 @@ def covers(as_json: bool) -> None:
         new: dict[str, object] = {"cover": row.cover, "treatment": row.treatment or None, "condition": row.condition or None}
         entry = rows.setdefault(key, new | dict.fromkeys("ABCD") | {"source": row.source})
         entry[row.soil_group] = row.curve_number
-    show(list(rows.values()), as_json=as_json)
+    show(list(rows.values()), as_json=as_json, footnotes=("source",))
 
 
 @click.command()
@@ -66,4 +67,5 @@ def soils(as_json: bool) -> None:
             for row in all_soils()
         ],
         as_json=as_json,
+        footnotes=("water_source", "infiltration_source"),
     )
