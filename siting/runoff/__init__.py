@@ -1,6 +1,7 @@
 """From rain to the water that reaches a plot, by day and by year."""
 
 from siting.runoff.classes import RunoffClasses, class_runoff_mm, classify
+from siting.runoff.cover import CoverClass, curve_numbers
 from siting.runoff.curve_number import (
     aligned_curve_number_a,
     composite_curve_number,
@@ -17,6 +18,7 @@ from siting.runoff.rain import Rain
 from siting.runoff.years import Years, driest_month, hydrological_years, yearly_totals
 
 __all__ = [
+    "CoverClass",
     "Rain",
     "RunoffClasses",
     "Years",
@@ -25,6 +27,7 @@ __all__ = [
     "classify",
     "composite_curve_number",
     "crusted_group",
+    "curve_numbers",
     "delivered_m3",
     "driest_month",
     "dry_curve_number",

@@ -5,8 +5,8 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from siting.errors import CapacityError
-from siting.runoff.curve_number import retention_for_ratio
+from siting.errors import CapacityError, ConfigError
+from siting.runoff.curve_number import checked, retention_for_ratio
 from siting.runoff.event import runoff_depth_mm
 
 FloatArray = npt.NDArray[np.float64]
@@ -33,6 +33,12 @@ class RunoffClasses:
         """Return the number of classes."""
         return int(self.curve_number.size)
 
+    @property
+    def label(self) -> list[str]:
+        """Return the name of each class, as "CN 85" or "runs after 12 mm"."""
+        pairs = zip(self.curve_number, self.runs_after_mm, strict=True)
+        return [f"CN {number:g}" if np.isnan(seen) else f"runs after {seen:g} mm" for number, seen in pairs]
+
     def retention_mm(self, *, abstraction_ratio: float) -> FloatArray:
         """Return S of each class: runs_after / l where observed, else from the curve number."""
         by_table = retention_for_ratio(self.curve_number, abstraction_ratio=abstraction_ratio)
@@ -46,36 +52,54 @@ class RunoffClasses:
 def classify(
     *,
     curve_number: npt.NDArray[np.floating],
-    runs_after_mm: npt.NDArray[np.floating] | None,
+    runs_after_mm: npt.NDArray[np.floating] | float | None,
     valid: npt.NDArray[np.bool_],
 ) -> RunoffClasses:
     """
     Sort cells into classes of equal curve number (to 0.1) and equal observed threshold (to 0.1 mm).
 
-    `curve_number` and `runs_after_mm` have the shape of `valid`; a cell without either, or not valid,
-    gets NO_CLASS. Classes come in rising order, so that the same ground gives the same numbers.
+    `curve_number` has the shape of `valid`, and so has `runs_after_mm` unless it is one value for all
+    ground; a cell without either (NaN), or not valid, gets NO_CLASS. Classes come in rising order, so
+    that the same ground gives the same numbers.
+
+    Raises
+    ------
+    ConfigError
+        Where a valid cell has a curve number outside 0 to 100 (0 excluded), or a threshold that is
+        not between 0.1 and 1000 mm: unknown is NaN, never 0.
+    CapacityError
+        Where there are more classes than codes for them.
     """
-    number = np.nan_to_num(np.round(curve_number * 10.0), nan=0.0).astype(np.int64)
-    threshold = np.full(valid.shape, -1, dtype=np.int64)
+    number = _tenths(checked(np.where(valid, curve_number, np.nan)))
+    threshold = np.zeros(valid.shape, dtype=np.int64)
     if runs_after_mm is not None:
-        seen = np.round(runs_after_mm * 10.0)
-        threshold = np.where(np.isnan(seen), -1, np.nan_to_num(seen)).astype(np.int64)
+        seen = np.where(valid, np.asarray(runs_after_mm, dtype=np.float64), np.nan)
+        wrong = seen[(seen < 0.1) | (seen > 1000.0)]
+        if wrong.size:
+            msg = f"cover.runs_after_mm of {wrong[0]:g} mm is outside 0.1 to 1000 mm; leave it out where unknown"
+            raise ConfigError(msg)
+        threshold = _tenths(seen)
     # an observed threshold needs no curve number: it decides alone
-    number = np.where(threshold >= 0, 0, number)
-    known = valid & ((number > 0) | (threshold >= 0))
-    key = number * 100_000 + (threshold + 1)
+    number = np.where(threshold > 0, 0, number)
+    known = valid & ((number > 0) | (threshold > 0))
+    key = number * 100_000 + threshold
     found = np.unique(key[known])
     if found.size >= NO_CLASS:
         msg = f"{found.size} classes of runoff: at most {NO_CLASS - 1}; round the curve numbers"
         raise CapacityError(msg)
     classes = np.full(valid.shape, NO_CLASS, dtype=np.uint16)
     classes[known] = np.searchsorted(found, key[known]).astype(np.uint16)
-    numbers, thresholds = found // 100_000 / 10.0, found % 100_000 - 1
+    numbers, thresholds = found // 100_000 / 10.0, found % 100_000
     return RunoffClasses(
         classes,
         np.where(numbers > 0, numbers, np.nan),
-        np.where(thresholds >= 0, thresholds / 10.0, np.nan),
+        np.where(thresholds > 0, thresholds / 10.0, np.nan),
     )
+
+
+def _tenths(values: FloatArray) -> npt.NDArray[np.int64]:
+    """Return values in whole tenths, at least 1; 0 where NaN."""
+    return np.nan_to_num(np.maximum(np.round(values * 10.0), 1.0), nan=0.0).astype(np.int64)
 
 
 def class_runoff_mm(rain_mm: npt.ArrayLike, classes: RunoffClasses, *, abstraction_ratio: float) -> FloatArray:

@@ -6,6 +6,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
+from siting.errors import ConfigError
 from siting.notes import Notes
 from siting.runoff.curve_number import crusted_group
 from siting.tables import curve_number
@@ -54,10 +55,18 @@ def curve_numbers(
     curve_number, runs_after_mm
         NaN where cover or group is unknown, and where no threshold was observed.
 
+    Raises
+    ------
+    ConfigError
+        Where a soil group code is above 4, or the table does not hold a cover.
+
     References
     ----------
     TR-55 (1986) tables 2-2; NEH-630 chapter 9.
     """
+    if soil_group.size and soil_group.max() > len(GROUPS):
+        msg = f"soil group code {soil_group.max()} is unknown; the codes are 0 to {len(GROUPS)}"
+        raise ConfigError(msg)
     number = np.full((len(covers) + 1, 5), np.nan, dtype=np.float32)
     threshold = np.full(len(covers) + 1, np.nan, dtype=np.float32)
     present = set(np.unique(soil_group).tolist()) - {0}

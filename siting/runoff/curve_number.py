@@ -84,18 +84,43 @@ def slope_adjusted_curve_number(cn: ArrayLike, cn_wet: ArrayLike, slope: ArrayLi
 
 
 def composite_curve_number(pervious: ArrayLike, impervious_pct: ArrayLike) -> FloatArray:
-    """Composite for connected impervious ground (CN 98), its share in %; TR-55 figure 2-3."""
+    """
+    Composite for connected impervious ground (CN 98), its share in %; TR-55 figure 2-3.
+
+    Arguments broadcast; NaN stays NaN; a share outside 0 to 100 is refused with ConfigError.
+    """
     base = checked(pervious)
-    return base + np.asarray(impervious_pct, dtype=np.float64) / 100.0 * (98.0 - base)
+    share = np.asarray(impervious_pct, dtype=np.float64)
+    wrong = share[(share < 0) | (share > 100)]
+    if wrong.size:
+        msg = f"impervious share {wrong.flat[0]:g} % is outside 0 to 100"
+        raise ConfigError(msg)
+    return base + share / 100.0 * (98.0 - base)
 
 
 def aligned_curve_number_a(cn_b: ArrayLike) -> FloatArray:
-    """Curve number of group A from that of group B; Woodward et al. (2002)."""
-    return -60.8 + 1.6083 * checked(cn_b)
+    """
+    Curve number of group A from that of group B: -60.8 + 1.6083 CN_B; Woodward et al. (2002).
+
+    Any shape; NaN stays NaN. Below CN_B 37.8 the line falls under 0: ConfigError.
+    """
+    aligned = -60.8 + 1.6083 * checked(cn_b)
+    if np.any(aligned <= 0):
+        msg = f"curve number {np.nanmin(np.asarray(cn_b, dtype=np.float64)):g} of group B has no group A by the aligner; "
+        msg += "give a curve number of your own"
+        raise ConfigError(msg)
+    return np.minimum(aligned, 100.0)
 
 
 def crusted_group(code: Any) -> Any:
-    """Move a soil group (1 to 4 for A to D, 0 unknown) two letters towards D; our assumption."""
+    """
+    Move a soil group (1 to 4 for A to D, 0 unknown) two letters towards D; our assumption.
+
+    One code or an array of them; any other code is refused with ConfigError.
+    """
     groups = np.asarray(code)
+    if np.any((groups < 0) | (groups > 4)):
+        msg = f"soil group code {groups[(groups < 0) | (groups > 4)].flat[0]} is unknown; the codes are 0 to 4"
+        raise ConfigError(msg)
     moved = np.where(groups == 0, 0, np.minimum(groups + 2, 4)).astype(groups.dtype)
     return moved if groups.ndim else int(moved)

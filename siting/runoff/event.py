@@ -27,7 +27,7 @@ def runoff_depth_mm(rain_mm: npt.ArrayLike, retention_mm: npt.ArrayLike, *, abst
     Raises
     ------
     ConfigError
-        Where the ratio is outside its range, or a rain or retention is below zero.
+        Where the ratio is outside its range, or a rain or retention is below zero or infinite.
 
     References
     ----------
@@ -39,11 +39,13 @@ def runoff_depth_mm(rain_mm: npt.ArrayLike, retention_mm: npt.ArrayLike, *, abst
     rain = np.asarray(rain_mm, dtype=np.float64)
     retention = np.asarray(retention_mm, dtype=np.float64)
     for name, values in (("rain", rain), ("retention", retention)):
-        if np.any(values < 0):
-            msg = f"{name} of {np.nanmin(values):g} mm is below zero"
+        if np.any(values < 0) or np.any(np.isinf(values)):
+            wrong = np.nanmin(values) if np.any(values < 0) else np.inf
+            msg = f"{name} of {wrong:g} mm is below zero or has no end"
             raise ConfigError(msg)
     excess = rain - abstraction_ratio * retention
     effective = np.maximum(excess, 0.0)
     # with S = 0 and no rain the quotient is 0/0: nothing runs off
     below = np.where(effective > 0, effective + retention, 1.0)
-    return np.asarray(np.where(np.isnan(excess), np.nan, effective * effective / below))
+    # a share of at most 1 times the excess: rounding cannot lift it above the rain
+    return np.asarray(np.where(np.isnan(excess), np.nan, effective * (effective / below)))

@@ -24,8 +24,10 @@ class Rain:
         if np.any(np.diff(self.days.astype("datetime64[D]").astype(np.int64)) != 1):
             msg = "the days of the rain record are not consecutive; missing days must be NaN"
             raise InputError(msg)
-        if np.any(self.rain_mm < 0):
-            msg = f"rain of {np.nanmin(self.rain_mm)} mm: a depth cannot be below zero"
+        wrong = (self.rain_mm < 0) | np.isinf(self.rain_mm)
+        if np.any(wrong):
+            first = int(np.argmax(wrong))
+            msg = f"rain of {self.rain_mm[first]:g} mm on {self.days[first]}: a depth is finite and not below zero"
             raise InputError(msg)
 
     @property

@@ -5,7 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from siting.errors import InputError
+from siting.errors import ConfigError, InputError
 from siting.notes import Notes
 from siting.runoff.rain import Days, Rain
 
@@ -27,7 +27,7 @@ class Years:
 
 
 def driest_month(rain: Rain) -> int:
-    """Return the month (1 to 12) with the least mean daily rain; the first of equals."""
+    """Return the month (1 to 12) with the least mean daily rain; the first of equals, without months never read."""
     month = _month(rain.days)
     known = ~np.isnan(rain.rain_mm)
     means = np.full(12, np.inf)
@@ -57,7 +57,15 @@ def hydrological_years(rain: Rain, *, starts_month: int | None, max_missing: flo
     ------
     InputError
         Where no complete year is left.
+    ConfigError
+        Where the month is not 1 to 12, or the share not 0 to 1.
     """
+    if starts_month is not None and not 1 <= starts_month <= 12:
+        msg = f"rain.year_starts is month {starts_month}; the months are 1 to 12"
+        raise ConfigError(msg)
+    if not 0 <= max_missing <= 1:
+        msg = f"the share of missing days that a year may have is {max_missing:g}; it lies between 0 and 1"
+        raise ConfigError(msg)
     month = driest_month(rain) if starts_month is None else starts_month
     if starts_month is None:
         notes.assume("rain.year_starts", f"month {month}", "", "driest month of the record", "yearly volumes")
@@ -83,6 +91,9 @@ def hydrological_years(rain: Rain, *, starts_month: int | None, max_missing: flo
             f"the rain record from {begin} to {rain.days[-1]} holds no complete year that begins in "
             f"month {month}; give a longer record, or another rain.year_starts"
         )
+        if dropped:
+            years = ", ".join(str(year) for year in dropped)
+            msg += f"; more than {100 * max_missing:g} % of the days are missing in {years}"
         raise InputError(msg)
     _tell(kept, dropped, missing_kept, notes)
     bounds = [_bounds(year, month) for year in kept]
@@ -115,8 +126,16 @@ def _tell(kept: list[int], dropped: list[int], missing: int, notes: Notes) -> No
 
 
 def yearly_totals(values: FloatArray, days: Days, years: Years) -> FloatArray:
-    """Sum daily values (..., days) over each kept year: (..., years)."""
-    before = np.concatenate([np.zeros((*values.shape[:-1], 1)), np.cumsum(values, axis=-1)], axis=-1)
+    """
+    Sum daily values (..., days) over each kept year: (..., years).
+
+    `days` are consecutive, one for each value. NaN makes its own year NaN and no other.
+    """
     start = (years.first_day - days[0]).astype(np.int64)
     stop = (years.end_day - days[0]).astype(np.int64)
-    return np.asarray(before[..., stop] - before[..., start])
+    if values.shape[-1] != days.size or np.any(start < 0) or np.any(stop > days.size):
+        msg = f"{values.shape[-1]} values on {days.size} days from {days[0]} do not cover the years {years.labels}"
+        raise InputError(msg)
+    # each year by itself: a running sum would carry one year's rounding and NaN into the next
+    sums = [values[..., first:after].sum(axis=-1) for first, after in zip(start, stop, strict=True)]
+    return np.stack(sums, axis=-1).astype(np.float64)

@@ -80,7 +80,7 @@ def curve_number(
     for row in matching:
         if row.soil_group == letter:
             return row
-    return _aligned(matching, cover)
+    return _aligned(matching, cover, letter)
 
 
 def _of_cover(cover: str) -> list[CurveNumber]:
@@ -114,16 +114,16 @@ def _narrow(matching: list[CurveNumber], cover: str, condition: str | None, trea
     return matching
 
 
-def _aligned(matching: list[CurveNumber], cover: str) -> CurveNumber:
-    """Stand in for a missing group A by the published aligner."""
+def _aligned(matching: list[CurveNumber], cover: str, letter: str) -> CurveNumber:
+    """Stand in for a missing group A by the published aligner; no other group has a stand-in."""
     for row in matching:
-        if row.soil_group == "B":
+        if letter == "A" and row.soil_group == "B":
             value = -60.8 + 1.6083 * row.curve_number
             source = ALIGNER_SOURCE
             if value < LEAST_CURVE_NUMBER:
                 value, source = LEAST_CURVE_NUMBER, f"{ALIGNER_SOURCE}; below 30, so 30 is used"
             return CurveNumber(row.cover, row.treatment, row.condition, "A", value, source, "computed")
-    msg = f"cover {cover!r} has no curve number in print for this soil group; give cover.curve_number"
+    msg = f"cover {cover!r} has no curve number in print for soil group {letter}; give cover.curve_number"
     raise ConfigError(msg)
 
 

@@ -71,15 +71,19 @@ def crop(name: str) -> Crop:
     Raises
     ------
     ConfigError
-        Where no crop of the table begins so.
+        Where no crop of the table begins so, or several do and none of them is the grain crop.
     """
     wanted = name.strip().lower()
     for row in crops():
         if row.name.lower() == wanted:
             return row
-    for row in crops():
-        if wanted and row.name.lower().startswith(wanted):
-            return row
+    begin = [row for row in crops() if wanted and row.name.lower().startswith(wanted)]
+    grain = [row for row in begin if row.name.lower() == f"{wanted}, grain"]
+    if len(begin) == 1 or grain:
+        return (grain or begin)[0]
+    if begin:
+        msg = f"crop {name!r} is in the table more than once: {', '.join(repr(row.name) for row in begin)}; name one"
+        raise ConfigError(msg)
     known = [row.name for row in crops()]
     msg = f"crop {name!r} is not in the table; did you mean {nearest(name, known)}? "
     msg += "`siting crops` lists all, and [crop] takes values of your own"

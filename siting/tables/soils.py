@@ -100,12 +100,16 @@ def texture_class(sand_pct: float, silt_pct: float, clay_pct: float) -> str:
     """
     Name the texture class of a soil from its particle sizes, % by weight.
 
+    Sizes that sum to 99.5 to 100.5 are scaled to 100; others, and NaN, are refused with ConfigError.
+
     References
     ----------
     USDA Soil Survey Manual, chapter 3; Benham et al. (2009).
     """
     _check_fractions(sand_pct, silt_pct, clay_pct)
-    sand, silt, clay = sand_pct, silt_pct, clay_pct
+    # the classes leave no gap only where the three sum to 100
+    total = sand_pct + silt_pct + clay_pct
+    sand, silt, clay = (100.0 * part / total for part in (sand_pct, silt_pct, clay_pct))
     tests = (
         ("sand", silt + 1.5 * clay < 15),
         ("loamy sand", silt + 2 * clay < 30),

@@ -1,6 +1,8 @@
 """Published values come back as printed, and unknown names are refused with a way out."""
 
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
 
 from siting import tables
 from siting.errors import ConfigError
@@ -87,6 +89,13 @@ def test_a_crop_without_stages_or_yield_response_in_print_says_so() -> None:
     assert "assumed" in chickpea.ky_source
 
 
+def test_a_crop_of_several_kinds_asks_which_unless_one_is_the_grain() -> None:
+    with pytest.raises(ConfigError, match=r"'wheat, spring', 'wheat, winter .*; name one"):
+        tables.crop("wheat")
+    assert tables.crop("wheat, winter").name == "wheat, winter (non-frozen soil)"
+    assert tables.crop("sorghum").name == "sorghum, grain"
+
+
 def test_an_unknown_crop_is_refused() -> None:
     with pytest.raises(ConfigError, match="crop 'sorgum' is not in the table; did you mean 'sorghum"):
         tables.crop("sorgum")
@@ -108,6 +117,25 @@ def test_an_unknown_crop_is_refused() -> None:
 )
 def test_texture_points_fall_in_their_class(point: tuple[float, float, float], name: str) -> None:
     assert tables.texture_class(*point) == name
+
+
+# the same source: the one class that the rules reach last is bounded too
+@given(st.integers(0, 1000), st.integers(0, 1000), st.floats(-0.4, 0.4))
+def test_clay_is_only_what_the_rules_call_clay(one: int, other: int, slack: float) -> None:
+    low, high = sorted((one / 10, other / 10))
+    sand, silt, clay = low, high - low, 100 - high
+    # laboratory figures seldom sum to exactly 100
+    silt = max(0.0, silt + slack)
+    total = sand + silt + clay
+    if tables.texture_class(sand, silt, clay) == "clay":
+        assert 100 * clay / total > 39.999
+        assert 100 * sand / total < 45.001
+        assert 100 * silt / total < 40.001
+
+
+def test_sizes_a_little_short_of_a_hundred_do_not_fall_between_the_classes() -> None:
+    # scaled to 100 these are 45.2, 27.8, 27.0: sandy clay loam, and far from clay
+    assert tables.texture_class(45.0, 27.7, 26.9) == "sandy clay loam"
 
 
 def test_sizes_that_do_not_sum_to_a_hundred_are_refused() -> None:
