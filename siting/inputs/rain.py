@@ -42,10 +42,10 @@ def read_rain(path: Path, *, unit: str | None = None, notes: Notes) -> Rain:
     InputError
         Monthly totals, repeated days, depths below zero or beyond any record, days that cannot be told.
     """
-    table = _table(path)
-    dates = _dates(path, table[_column(path, table, DATE_NAMES, "date")])
-    name = _column(path, table, RAIN_NAMES, "rain")
-    depth = _numbers(path, table[name])
+    table = read_table(path, setting="rain.daily")
+    dates = read_dates(path, table, setting="rain.daily")
+    name = _column(path, table, RAIN_NAMES, "rain", "rain.daily")
+    depth = read_numbers(path, table[name], setting="rain.daily")
     depth = depth * _millimetres(name, unit, notes)
     _check(path, dates, depth, unit_given=unit is not None)
     series = pd.Series(depth.to_numpy(), index=dates).sort_index()
@@ -54,19 +54,20 @@ def read_rain(path: Path, *, unit: str | None = None, notes: Notes) -> Rain:
     return Rain(whole.index.to_numpy().astype("datetime64[D]"), np.asarray(whole, dtype=np.float64))
 
 
-def _table(path: Path) -> pd.DataFrame:
+def read_table(path: Path, *, setting: str) -> pd.DataFrame:
+    """Read a daily table as text, whatever its separator."""
     if not path.exists():
-        msg = f"the rain file {path.name} does not exist; give the path of a CSV in rain.daily"
+        msg = f"{setting} {path.name} does not exist; give the path of a CSV"
         raise InputError(msg)
     try:
         head = path.read_text(encoding="utf-8-sig", errors="strict")[:20_000].splitlines()
         separator = max(";\t,", key=head[0].count) if head else ","
         table = pd.read_csv(path, sep=separator, dtype=str, encoding="utf-8-sig", skipinitialspace=True)
     except (UnicodeDecodeError, ValueError) as error:
-        msg = f"the rain file {path.name} cannot be read as a table; save it as CSV (UTF-8) with a date and a rain column"
+        msg = f"{setting} {path.name} cannot be read as a table; save it as CSV (UTF-8) with a date column"
         raise InputError(msg) from error
     if table.shape[0] == 0 or table.shape[1] < 2:
-        msg = f"the rain file {path.name} has {table.shape[0]} rows and {table.shape[1]} columns; it needs dates and rain"
+        msg = f"{setting} {path.name} has {table.shape[0]} rows and {table.shape[1]} columns; it needs dates and values"
         raise InputError(msg)
     return table
 
@@ -75,18 +76,19 @@ def _plain(name: str) -> str:
     return name.strip().lower().replace(" ", "_").replace("(", "_").replace(")", "").replace("__", "_")
 
 
-def _column(path: Path, table: pd.DataFrame, names: tuple[str, ...], what: str) -> str:
+def _column(path: Path, table: pd.DataFrame, names: tuple[str, ...], what: str, setting: str) -> str:
     found = [str(column) for column in table.columns if _plain(str(column)).split("_")[0] in names]
     if len(found) == 1:
         return found[0]
     columns = ", ".join(repr(str(column)) for column in table.columns)
     why = "no" if not found else "more than one"
-    msg = f"the rain file {path.name} has {why} {what} column among {columns}; name it '{names[0]}'"
+    msg = f"{setting} {path.name} has {why} {what} column among {columns}; name it '{names[0]}'"
     raise InputError(msg)
 
 
-def _dates(path: Path, text: "pd.Series[str]") -> pd.DatetimeIndex:
-    """Read dates; refuse those that could be read in two ways."""
+def read_dates(path: Path, table: pd.DataFrame, *, setting: str) -> pd.DatetimeIndex:
+    """Read the date column; refuse dates that could be read in two ways."""
+    text = table[_column(path, table, DATE_NAMES, "date", setting)]
     for pattern in ("%Y-%m-%d", "%Y/%m/%d", "%Y%m%d", "%Y-%m-%d %H:%M:%S", "%d.%m.%Y"):
         dates = pd.to_datetime(text.str.strip(), format=pattern, errors="coerce")
         if dates.notna().all():
@@ -100,22 +102,23 @@ def _dates(path: Path, text: "pd.Series[str]") -> pd.DatetimeIndex:
         return pd.DatetimeIndex(whole[0])
     example = text.iloc[0]
     why = "could be day or month first" if whole else "cannot be read"
-    msg = f"dates in the rain file {path.name} such as {example!r} {why}; write them as 2001-12-31"
+    msg = f"dates in {setting} {path.name} such as {example!r} {why}; write them as 2001-12-31"
     raise InputError(msg)
 
 
-def _numbers(path: Path, text: "pd.Series[str]") -> "pd.Series[float]":
+def read_numbers(path: Path, text: "pd.Series[str]", *, setting: str) -> "pd.Series[float]":
+    """Read a column of numbers with decimal points or commas; empty cells and the usual marks are missing."""
     grouped = text.str.strip().str.fullmatch(r"\d{1,3}(,\d{3})+(\.\d+)?").fillna(False).astype(bool)
     if grouped.any():
         example = text[grouped].iloc[0]
-        msg = f"the rain file {path.name} has {example!r}, a decimal or a thousands comma; write depths with a point"
+        msg = f"{setting} {path.name} has {example!r}, a decimal or a thousands comma; write numbers with a point"
         raise InputError(msg)
     plain = text.str.strip().str.replace(",", ".", regex=False)
     missing = plain.isna() | plain.str.lower().isin(["", "na", "nan", "-", "-99", "-999", "-9999", "-99.9", "m"])
     depth = pd.to_numeric(plain.where(~missing), errors="coerce")
     strange = depth.isna() & ~missing
     if strange.any():
-        msg = f"the rain file {path.name} has {text[strange].iloc[0]!r} for a depth; leave missing days empty"
+        msg = f"{setting} {path.name} has {text[strange].iloc[0]!r} for a number; leave missing days empty"
         raise InputError(msg)
     return depth.astype(float)
 
@@ -135,27 +138,27 @@ def _millimetres(name: str, unit: str | None, notes: Notes) -> float:
 def _check(path: Path, dates: pd.DatetimeIndex, depth: "pd.Series[float]", *, unit_given: bool) -> None:
     if dates.has_duplicates:
         day = dates[dates.duplicated()][0].date()
-        msg = f"the rain file {path.name} has {day} more than once; keep one row a day"
+        msg = f"rain.daily {path.name} has {day} more than once; keep one row a day"
         raise InputError(msg)
     if depth.notna().sum() == 0:
-        msg = f"the rain file {path.name} holds no depth at all; give a file with readings"
+        msg = f"rain.daily {path.name} holds no depth at all; give a file with readings"
         raise InputError(msg)
     if depth.min() < 0:
-        msg = f"the rain file {path.name} has a depth of {depth.min():g} mm; leave missing days empty"
+        msg = f"rain.daily {path.name} has a depth of {depth.min():g} mm; leave missing days empty"
         raise InputError(msg)
     if depth.max() > MOST_IN_A_DAY_MM:
-        msg = f"the rain file {path.name} has {depth.max():g} mm in one day, beyond any record; is rain.unit right?"
+        msg = f"rain.daily {path.name} has {depth.max():g} mm in one day, beyond any record; is rain.unit right?"
         raise InputError(msg)
     steps = np.diff(np.sort(dates.to_numpy()).astype("datetime64[D]").astype(np.int64))
     if steps.size and np.median(steps) >= 5:
         msg = (
-            f"the rain file {path.name} has one row in {np.median(steps):g} days: totals; runoff comes from single "
+            f"rain.daily {path.name} has one row in {np.median(steps):g} days: totals; runoff comes from single "
             "events, so give daily rain"
         )
         raise InputError(msg)
     if not unit_given and depth.mean() * 365.25 < LEAST_YEAR_MM and depth.size > 365:
         msg = (
-            f"the rain file {path.name} sums to {depth.mean() * 365.25:.1f} mm in a mean year; if it is in inches, say "
+            f"rain.daily {path.name} sums to {depth.mean() * 365.25:.1f} mm in a mean year; if it is in inches, say "
             "rain.unit = 'inch', and if it is right, say rain.unit = 'mm'"
         )
         raise InputError(msg)

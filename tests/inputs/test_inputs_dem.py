@@ -222,12 +222,12 @@ def test_gaps_are_missing_and_said(tmp_path: Path) -> None:
         ),
         ("date,rain_mm\n2001-01-01,1\n2001-01-01,2", "more than once"),
         ("date,rain_mm\n2001-01-01,-3\n2001-01-02,0", "leave missing days empty"),
-        ("date,rain_mm\n2001-01-01,wet\n2001-01-02,0", "'wet' for a depth"),
+        ("date,rain_mm\n2001-01-01,wet\n2001-01-02,0", "'wet' for a number"),
         ("date,rain_mm\n02/03/2001,1\n03/03/2001,2", "could be day or month first"),
         ("date,rain\n" + "\n".join(days(800, "0.01")), r"if it is in inches, say rain\.unit = 'inch'"),
         ("date,rain_mm\n2001-01-01,5000\n2001-01-02,0", "beyond any record"),
         ("when,what\n2001-01-01,5\n2001-01-02,0", "no date column among 'when', 'what'"),
-        ("", "rain file rain.csv"),
+        ("", "rain.daily rain.csv"),
     ],
 )
 def test_rain_that_cannot_be_right_is_refused(tmp_path: Path, text: str, message: str) -> None:

@@ -1,0 +1,149 @@
+"""Maps of soil or cover, laid on the DEM's grid: the value under each cell's centre."""
+
+from dataclasses import dataclass
+from pathlib import Path
+
+import numpy as np
+import numpy.typing as npt
+import pandas as pd
+import rasterio
+from affine import Affine
+from rasterio.errors import RasterioError
+from rasterio.vrt import WarpedVRT
+from rasterio.warp import Resampling
+
+from siting.errors import InputError
+from siting.grid import Grid
+from siting.inputs.vectors import NO_VALUE, burn, read_vector
+from siting.notes import Notes
+
+RASTER_ENDINGS = (".tif", ".tiff", ".vrt", ".img", ".asc", ".bil", ".hgt")
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class CodeMap:
+    """A map of classes on a grid: for each cell the place of its value in `values`, -1 where unknown."""
+
+    code: npt.NDArray[np.int32]
+    values: tuple[str, ...]
+
+
+def is_raster(path: Path) -> bool:
+    """Tell from its ending whether a file is a raster."""
+    return path.suffix.lower() in RASTER_ENDINGS
+
+
+def read_map(path: Path, grid: Grid, *, column: str | None, setting: str, notes: Notes) -> CodeMap:
+    """
+    Read a map of classes: a raster, or polygons with a column of text or numbers.
+
+    Parameters
+    ----------
+    column
+        Column of a map in polygons; not used with a raster.
+    setting
+        Name of the setting that names the file, for messages.
+
+    Raises
+    ------
+    InputError
+        Where the file cannot be read, has no CRS, or does not meet the DEM.
+    """
+    if is_raster(path):
+        found = _codes_of_raster(read_raster_on_grid(path, grid, setting=setting))
+    else:
+        found = _codes_of_polygons(path, grid, column, setting)
+    covered = float(np.mean(found.code >= 0))
+    if covered == 0.0:
+        msg = f"{setting} {path.name} does not meet the DEM; check the CRS of both, or give a map of the same place"
+        raise InputError(msg)
+    if covered < 1.0:
+        notes.warn(
+            f"{setting}_partial",
+            f"{setting} {path.name} leaves {100 * (1 - covered):.1f} % of the DEM's cells without a value: unknown.",
+        )
+    return found
+
+
+def read_raster_on_grid(path: Path, grid: Grid, *, setting: str) -> npt.NDArray[np.float64]:
+    """Read a raster's first band on a grid by nearest neighbour; NaN where it has no value."""
+    a, _, c, _, e, f = grid.affine
+    try:
+        with rasterio.open(path) as file:
+            if file.crs is None:
+                msg = f"{setting} {path.name} declares no CRS; give it one with `gdal_edit.py -a_srs EPSG:… {path.name}`"
+                raise InputError(msg)
+            with WarpedVRT(
+                file,
+                crs=grid.crs,
+                transform=Affine(a, 0, c, 0, e, f),
+                width=grid.cols,
+                height=grid.rows,
+                resampling=Resampling.nearest,
+                add_alpha=file.nodata is None,
+            ) as warped:
+                values = warped.read(1).astype(np.float64)
+                valid = warped.read_masks(1) > 0
+                values = values * float(file.scales[0]) + float(file.offsets[0])
+    except RasterioError as error:
+        msg = f"{setting} {path.name} cannot be read as a raster; check that it exists and is whole"
+        raise InputError(msg) from error
+    return np.where(valid & np.isfinite(values), values, np.nan)
+
+
+def _codes_of_raster(values: npt.NDArray[np.float64]) -> CodeMap:
+    known = ~np.isnan(values)
+    found, place = np.unique(values[known], return_inverse=True)
+    code = np.full(values.shape, NO_VALUE, dtype=np.int32)
+    code[known] = place
+    return CodeMap(code, tuple(f"{value:g}" for value in found))
+
+
+def _codes_of_polygons(path: Path, grid: Grid, column: str | None, setting: str) -> CodeMap:
+    frame = read_vector(path, grid, setting=setting)
+    names = ", ".join(repr(str(name)) for name in frame.columns if name != frame.geometry.name)
+    if column is None or column not in frame.columns:
+        msg = f"{setting} {path.name} needs the name of a column, not {column!r}; it has {names}"
+        raise InputError(msg)
+    text = frame[column].map(plain_text)
+    values = tuple(sorted(set(text) - {""}))
+    shapes = [
+        (shape, values.index(value))
+        for shape, value in zip(frame.geometry, text, strict=True)
+        if value and shape is not None and not shape.is_empty
+    ]
+    return CodeMap(burn(shapes, grid), values)
+
+
+def plain_text(value: object) -> str:
+    """Return a cell of a table as text: whole numbers without a point, missing as empty."""
+    if value is None or (isinstance(value, float) and np.isnan(value)):
+        return ""
+    if isinstance(value, float) and value.is_integer():
+        return str(int(value))
+    return str(value).strip()
+
+
+def read_meanings(path: Path, *, needed: tuple[str, ...], setting: str) -> dict[str, dict[str, str]]:
+    """
+    Read a CSV that says what map values mean: rows by `map_value`, as text; empty cells are empty.
+
+    Raises InputError where the file or a column is missing or a value stands twice.
+    """
+    try:
+        table = pd.read_csv(path, dtype=str, keep_default_na=False, encoding="utf-8-sig", skipinitialspace=True)
+    except (OSError, UnicodeDecodeError, ValueError) as error:
+        msg = f"{setting} {path.name} cannot be read as a table; give a CSV with the columns map_value, {', '.join(needed)}"
+        raise InputError(msg) from error
+    missing = [name for name in ("map_value", *needed) if name not in table.columns]
+    if missing:
+        msg = f"{setting} {path.name} lacks the column {missing[0]!r}; it has {', '.join(map(repr, table.columns))}"
+        raise InputError(msg)
+    found: dict[str, dict[str, str]] = {}
+    for row in table.to_dict("records"):
+        value = str(row["map_value"]).strip()
+        if value in found:
+            msg = f"{setting} {path.name} says twice what {value!r} means; keep one row"
+            raise InputError(msg)
+        found[value] = {str(name): str(cell).strip() for name, cell in row.items()}
+    return found

@@ -1,0 +1,194 @@
+"""Outlines on the DEM: boundary, exclusions, plots of the user's own, pans, villages."""
+
+from pathlib import Path
+from typing import Any
+
+import geopandas as gpd
+import numpy as np
+import numpy.typing as npt
+import pandas as pd
+import shapely
+from affine import Affine
+from pyproj import CRS
+from rasterio.features import rasterize
+
+from siting.errors import InputError
+from siting.grid import Grid
+from siting.notes import Notes
+
+Mask = npt.NDArray[np.bool_]
+
+NO_VALUE = -1
+"""Code of a cell that a map says nothing of."""
+
+
+def read_vector(path: Path, grid: Grid, *, setting: str) -> gpd.GeoDataFrame:
+    """Read a vector file into the grid's CRS, its geometry repaired; refuse one without features or CRS."""
+    if not path.exists():
+        msg = f"{setting} {path.name} does not exist; correct the path"
+        raise InputError(msg)
+    try:
+        frame = gpd.read_file(path)
+    except Exception as error:  # pyogrio and the drivers below it raise many kinds
+        msg = f"{setting} {path.name} cannot be read as a vector file; convert it to GeoPackage"
+        raise InputError(msg) from error
+    if not isinstance(frame, gpd.GeoDataFrame) or frame.empty:
+        msg = f"{setting} {path.name} holds no feature with a shape; give another file"
+        raise InputError(msg)
+    if frame.crs is None:
+        msg = f"{setting} {path.name} declares no CRS; save it with one"
+        raise InputError(msg)
+    frame = frame.to_crs(grid.crs)
+    frame.geometry = shapely.make_valid(frame.geometry.to_numpy())
+    return frame
+
+
+def burn(shapes: list[tuple[Any, int]], grid: Grid, *, fill: int = NO_VALUE) -> npt.NDArray[np.int32]:
+    """Give each cell the value of the last shape that covers its centre."""
+    if not shapes:
+        return np.full(grid.shape, fill, dtype=np.int32)
+    a, _, c, _, e, f = grid.affine
+    burnt: npt.NDArray[np.int32] = rasterize(
+        shapes, out_shape=grid.shape, transform=Affine(a, 0, c, 0, e, f), fill=fill, dtype="int32"
+    )
+    return burnt
+
+
+def _burnt(shapes: list[object], grid: Grid) -> Mask:
+    return np.asarray(burn([(shape, 1) for shape in shapes], grid, fill=0) == 1)
+
+
+def read_boundary(path: Path, grid: Grid, *, notes: Notes) -> Mask:
+    """Mark the cells whose centre lies inside the boundary; refuse one that meets no cell of the DEM."""
+    frame = read_vector(path, grid, setting="place.boundary")
+    areas = frame[frame.geometry.geom_type.isin(["Polygon", "MultiPolygon", "GeometryCollection"])]
+    if areas.empty:
+        msg = f"place.boundary {path.name} holds no polygon; draw the outline as one"
+        raise InputError(msg)
+    inside = _burnt(list(areas.geometry), grid)
+    if not inside.any():
+        msg = f"place.boundary {path.name} does not meet the DEM; check the CRS of both"
+        raise InputError(msg)
+    outline = shapely.box(*_extent(grid))
+    beyond = 1.0 - shapely.union_all(areas.geometry.to_numpy()).intersection(outline).area / max(areas.area.sum(), 1e-12)
+    if beyond > 0.001:
+        notes.warn("boundary_beyond_dem", f"{100 * beyond:.1f} % of the boundary lies beyond the DEM and is not searched.")
+    return inside
+
+
+def _extent(grid: Grid) -> tuple[float, float, float, float]:
+    a, _, west, _, e, north = grid.affine
+    return (west, north + e * grid.rows, west + a * grid.cols, north)
+
+
+def read_exclusions(paths: tuple[Path, ...], grid: Grid, *, setback_m: float, notes: Notes) -> Mask:
+    """
+    Mark the cells in or within `setback_m` (ground metres) of any exclusion.
+
+    Points and lines without a set-back exclude the cells that they touch.
+    """
+    excluded = np.zeros(grid.shape, dtype=np.bool_)
+    for path in paths:
+        frame = read_vector(path, grid, setting="place.exclude")
+        shapes = _set_back(frame, grid, setback_m)
+        marked = _burnt(list(shapes), grid)
+        if not marked.any():
+            notes.warn("exclusion_elsewhere", f"The exclusion {path.name} touches no cell of the DEM.")
+        excluded |= marked
+    return excluded
+
+
+def _set_back(frame: gpd.GeoDataFrame, grid: Grid, setback_m: float) -> gpd.GeoSeries:
+    """Buffer in ground metres: in a local equal-distance projection around the DEM's middle."""
+    reach = max(setback_m, 0.5 * float(max(grid.cell_width_m.max(), grid.cell_height_m.max())))
+    x, y = grid.xy((grid.rows - 1) / 2, (grid.cols - 1) / 2)
+    middle = gpd.GeoSeries.from_xy([x], [y], crs=grid.crs).to_crs("EPSG:4326")
+    local = CRS.from_proj4(f"+proj=aeqd +lat_0={middle.y[0]} +lon_0={middle.x[0]} +datum=WGS84 +units=m")
+    there = frame.geometry.to_crs(local)
+    solid = there.geom_type.isin(["Polygon", "MultiPolygon"]).to_numpy()
+    distance = np.where(solid, setback_m, reach)
+    return gpd.GeoSeries(shapely.buffer(there.to_numpy(), distance), crs=local).to_crs(grid.crs)
+
+
+def read_given_plots(path: Path, grid: Grid) -> tuple[npt.NDArray[np.int32], list[str]]:
+    """
+    Read plots of the user's own: a label for each cell (1, 2, … in file order, else 0) and their names.
+
+    A cell belongs to the plot that covers its centre. Refused: plots that overlap, and plots that cover no cell's centre.
+    """
+    frame = read_vector(path, grid, setting="plots.given")
+    wanted = frame.geometry.geom_type.isin(["Polygon", "MultiPolygon"])
+    if not wanted.all():
+        msg = f"plots.given {path.name} holds {frame.geometry.geom_type[~wanted].iloc[0]} shapes; draw plots as polygons"
+        raise InputError(msg)
+    names = _names(frame)
+    label = burn([(shape, place + 1) for place, shape in enumerate(frame.geometry)], grid, fill=0)
+    for place, shape in enumerate(frame.geometry):
+        cells = burn([(shape, 1)], grid, fill=0) == 1
+        if not cells.any():
+            msg = f"the given plot {names[place]!r} covers no cell's centre of the DEM; draw it larger or give a finer DEM"
+            raise InputError(msg)
+        other = label[cells & (label != place + 1)]
+        if other.size:
+            msg = f"the given plots {names[place]!r} and {names[int(other[0]) - 1]!r} overlap; draw them apart or as one"
+            raise InputError(msg)
+    return label, names
+
+
+def _names(frame: gpd.GeoDataFrame) -> list[str]:
+    lower = {str(column).lower(): column for column in frame.columns}
+    column = next((lower[name] for name in ("given_name", "name", "plot", "id") if name in lower), None)
+    texts = [""] * len(frame) if column is None else ["" if pd.isna(value) else str(value) for value in frame[column]]
+    return [text or f"given {place + 1}" for place, text in enumerate(texts)]
+
+
+def read_pan_layer(path: Path, grid: Grid) -> npt.NDArray[np.int8]:
+    """Read known pans: 1 where a polygon says keep, -1 where it says it is none, 0 elsewhere."""
+    frame = read_vector(path, grid, setting="terrain.pans")
+    if "keep" not in frame.columns:
+        msg = f"terrain.pans {path.name} lacks the column 'keep' (true or false); add it"
+        raise InputError(msg)
+    words = {"true": 1, "1": 1, "1.0": 1, "yes": 1, "false": -1, "0": -1, "0.0": -1, "no": -1}
+    said = [words.get(str(value).strip().lower()) for value in frame["keep"]]
+    if None in said:
+        msg = f"terrain.pans {path.name} has keep = {frame['keep'].iloc[said.index(None)]!r}; write true or false"
+        raise InputError(msg)
+    shapes = [(shape, int(value or 0)) for shape, value in zip(frame.geometry, said, strict=True)]
+    return burn(shapes, grid, fill=0).astype(np.int8)
+
+
+def read_villages(path: Path, grid: Grid, *, name: str, people: str | None) -> gpd.GeoDataFrame:
+    """
+    Read villages: any vector file, or a CSV with the columns lon and lat in degrees. All their columns are kept as they are.
+
+    The columns `name` and `people` must exist where they are named; a number of people that is none stays unknown.
+    """
+    if path.suffix.lower() == ".csv":
+        frame = _villages_of_csv(path, grid)
+    else:
+        frame = read_vector(path, grid, setting="villages.file")
+    for column in (name, people):
+        if column is not None and column not in frame.columns:
+            known = ", ".join(repr(str(one)) for one in frame.columns if one != frame.geometry.name)
+            msg = f"villages.file {path.name} has no column {column!r}; it has {known}"
+            raise InputError(msg)
+    return frame
+
+
+def _villages_of_csv(path: Path, grid: Grid) -> gpd.GeoDataFrame:
+    try:
+        table = pd.read_csv(path, encoding="utf-8-sig", skipinitialspace=True)
+    except (OSError, UnicodeDecodeError, ValueError) as error:
+        msg = f"villages.file {path.name} cannot be read as a table; save it as CSV (UTF-8) with lon and lat"
+        raise InputError(msg) from error
+    if not {"lon", "lat"} <= set(table.columns):
+        msg = f"villages.file {path.name} lacks lon and lat (degrees); it has {', '.join(map(repr, table.columns))}"
+        raise InputError(msg)
+    lon, lat = (pd.to_numeric(table[axis], errors="coerce") for axis in ("lon", "lat"))
+    wrong = ~((lon.abs() <= 180) & (lat.abs() <= 90))
+    if wrong.any():
+        row = int(np.flatnonzero(wrong.to_numpy())[0])
+        msg = f"villages.file {path.name} row {row + 2} has lon {table['lon'][row]!r}, lat {table['lat'][row]!r}: no degrees"
+        raise InputError(msg)
+    points = gpd.points_from_xy(lon, lat)
+    return gpd.GeoDataFrame(table, geometry=points, crs="EPSG:4326").to_crs(grid.crs)

@@ -1,0 +1,209 @@
+"""Maps and outlines on the DEM: laid right, counted where they do not reach, refused where they cannot be used."""
+
+import warnings
+from collections.abc import Callable
+from pathlib import Path
+from typing import Any
+
+import geopandas as gpd
+import numpy as np
+import pandas as pd
+import pytest
+import rasterio
+from affine import Affine
+from shapely.geometry import LineString, Point, Polygon, box
+
+from siting import inputs
+from siting.errors import InputError
+from siting.grid import Grid, metric_grid
+from siting.notes import Notes
+
+WEST, NORTH = 700_000.0, 3_400_000.0
+NASTY = ("=cmd|'/c'!A1", "<script>alert(1)</script>", 'Œuf, "Qesh"; ok')
+
+
+@pytest.fixture
+def grid() -> Grid:
+    return metric_grid(20, 30, 10.0, west=WEST, north=NORTH)
+
+
+def square(left: float, top: float, width: float, height: float) -> Polygon:
+    return box(WEST + left, NORTH - top - height, WEST + left + width, NORTH - top)
+
+
+def save(path: Path, shapes: list[Any], crs: str | None = "EPSG:32636", **columns: list[Any]) -> Path:
+    frame = gpd.GeoDataFrame(columns, geometry=shapes, crs="EPSG:32636")
+    if crs is None:
+        frame = frame.set_crs(None, allow_override=True)
+    elif crs != "EPSG:32636":
+        frame = frame.to_crs(crs)
+    with warnings.catch_warnings():
+        warnings.filterwarnings("ignore", "'crs' was not provided")
+        frame.to_file(path, driver="GPKG")
+    return path
+
+
+def refused(work: Callable[[], object]) -> str:
+    with pytest.raises(InputError) as caught:
+        work()
+    return str(caught.value)
+
+
+def test_polygons_give_each_cell_the_value_over_its_centre(grid: Grid, tmp_path: Path) -> None:
+    shapes = [square(0, 0, 100, 200), square(100, 0, 200, 200)]
+    for crs in ("EPSG:32636", "EPSG:4326"):
+        path = save(tmp_path / f"soil{crs[-4:]}.gpkg", shapes, crs, texture=["loam", "sand"])
+        got = inputs.read_map(path, grid, column="texture", setting="soil.map", notes=Notes())
+        assert got.values == ("loam", "sand")
+        expected = np.where(np.arange(30) < 10, 0, 1)
+        np.testing.assert_array_equal(got.code, np.tile(expected, (20, 1)))
+
+
+def test_a_raster_of_another_cell_size_and_crs_is_read_by_its_nearest_cell(grid: Grid, tmp_path: Path) -> None:
+    path = tmp_path / "cover.tif"
+    values = np.array([[1, 2, 2], [1, 2, 7]], dtype=np.uint8)
+    with rasterio.open(
+        path,
+        "w",
+        driver="GTiff",
+        count=1,
+        height=2,
+        width=3,
+        dtype="uint8",
+        nodata=7,
+        crs="EPSG:32636",
+        transform=Affine(100, 0, WEST, 0, -100, NORTH),
+    ) as file:
+        file.write(values, 1)
+    notes = Notes()
+    got = inputs.read_map(path, grid, column=None, setting="cover.map", notes=notes)
+    assert got.values == ("1", "2")
+    assert got.code[0, 0] == 0 and got.code[0, 29] == 1 and got.code[19, 29] == -1
+    assert "leaves 16.7 % of the DEM's cells" in notes.warnings[0].text
+
+
+def test_a_map_of_another_place_or_without_its_column_is_refused(grid: Grid, tmp_path: Path) -> None:
+    away = save(tmp_path / "away.gpkg", [square(90_000, 0, 100, 100)], texture=["loam"])
+    text = refused(lambda: inputs.read_map(away, grid, column="texture", setting="soil.map", notes=Notes()))
+    assert "does not meet the DEM" in text
+    text = refused(lambda: inputs.read_map(away, grid, column="soil", setting="soil.map", notes=Notes()))
+    assert "needs the name of a column, not 'soil'; it has 'texture'" in text
+
+
+def test_files_that_are_no_map_are_refused(grid: Grid, tmp_path: Path) -> None:
+    words = tmp_path / "words.gpkg"
+    words.write_text("no map", encoding="utf-8")
+    assert "cannot be read as a vector file" in refused(lambda: inputs.read_boundary(words, grid, notes=Notes()))
+    absent = tmp_path / "none.gpkg"
+    assert "does not exist" in refused(lambda: inputs.read_boundary(absent, grid, notes=Notes()))
+    bare = save(tmp_path / "bare.gpkg", [square(0, 0, 50, 50)], None)
+    assert "declares no CRS" in refused(lambda: inputs.read_boundary(bare, grid, notes=Notes()))
+
+
+def test_the_boundary_marks_its_cells_and_says_what_lies_beyond(grid: Grid, tmp_path: Path) -> None:
+    notes = Notes()
+    inside = inputs.read_boundary(save(tmp_path / "b.gpkg", [square(200, 100, 200, 200)]), grid, notes=notes)
+    assert inside.sum() == 10 * 10
+    assert "75.0 % of the boundary lies beyond the DEM" in notes.warnings[0].text
+
+
+def test_a_boundary_that_crosses_itself_is_mended(grid: Grid, tmp_path: Path) -> None:
+    knot = Polygon([(WEST, NORTH), (WEST + 200, NORTH - 200), (WEST + 200, NORTH), (WEST, NORTH - 200)])
+    inside = inputs.read_boundary(save(tmp_path / "knot.gpkg", [knot]), grid, notes=Notes())
+    assert 180 <= inside.sum() <= 220  # the two triangles hold half of 400 cells
+
+
+def test_a_set_back_is_in_ground_metres(grid: Grid, tmp_path: Path) -> None:
+    # a road along the middle between two rows; 25 m on each side takes the two nearest rows (centres at 5 and 15 m)
+    # and the third (25 m) only just
+    line = LineString([(WEST - 10, NORTH - 100), (WEST + 310, NORTH - 100)])
+    path = save(tmp_path / "road.gpkg", [line])
+    rows = inputs.read_exclusions((path,), grid, setback_m=24.0, notes=Notes()).any(axis=1)
+    assert np.flatnonzero(rows).tolist() == [8, 9, 10, 11]
+
+
+def test_a_well_without_a_set_back_excludes_the_cell_it_stands_in(grid: Grid, tmp_path: Path) -> None:
+    path = save(tmp_path / "well.gpkg", [Point(WEST + 15, NORTH - 25)])
+    got = inputs.read_exclusions((path,), grid, setback_m=0.0, notes=Notes())
+    assert np.argwhere(got).tolist() == [[2, 1]]
+
+
+def test_given_plots_keep_their_names_and_may_not_overlap(grid: Grid, tmp_path: Path) -> None:
+    path = save(tmp_path / "g.gpkg", [square(0, 0, 30, 30), square(100, 100, 20, 20)], name=[NASTY[0], NASTY[1]])
+    label, names = inputs.read_given_plots(path, grid)
+    assert names == [NASTY[0], NASTY[1]]
+    assert np.bincount(label.ravel()).tolist() == [600 - 13, 9, 4]
+    path = save(tmp_path / "o.gpkg", [square(0, 0, 30, 30), square(20, 20, 30, 30)], name=["low", "high"])
+    assert "'low' and 'high' overlap" in refused(lambda: inputs.read_given_plots(path, grid))
+    path = save(tmp_path / "s.gpkg", [square(1, 1, 2, 2)], name=["speck"])
+    assert "'speck' covers no cell's centre" in refused(lambda: inputs.read_given_plots(path, grid))
+
+
+def test_known_pans_say_keep_or_not(grid: Grid, tmp_path: Path) -> None:
+    path = save(tmp_path / "p.gpkg", [square(0, 0, 20, 20), square(100, 0, 20, 20)], keep=[True, False])
+    got = inputs.read_pan_layer(path, grid)
+    assert (got[0, 0], got[0, 10], got[10, 10]) == (1, -1, 0)
+    path = save(tmp_path / "q.gpkg", [square(0, 0, 20, 20)], keep=["maybe"])
+    assert "keep = 'maybe'; write true or false" in refused(lambda: inputs.read_pan_layer(path, grid))
+
+
+def test_villages_of_a_table_keep_their_text_untouched(grid: Grid, tmp_path: Path) -> None:
+    path = tmp_path / "villages.csv"
+    pd.DataFrame({"name": NASTY, "people": [10, None, 30], "lon": [35.1, 35.2, 35.3], "lat": [30.7, 30.7, 30.7]}).to_csv(
+        path, index=False
+    )
+    got = inputs.read_villages(path, grid, name="name", people="people")
+    assert tuple(got["name"]) == NASTY
+    assert np.isnan(got["people"][1])  # unknown stays unknown
+    text = refused(lambda: inputs.read_villages(path, grid, name="village", people=None))
+    assert "has no column 'village'; it has 'name', 'people'" in text
+
+
+def test_meanings_of_map_values(tmp_path: Path) -> None:
+    path = tmp_path / "table.csv"
+    path.write_text("map_value,cover\n1,desert shrub\n2,fallow\n", encoding="utf-8")
+    got = inputs.read_meanings(path, needed=("cover",), setting="cover.table")
+    assert got["2"]["cover"] == "fallow"
+    path.write_text("map_value,cover\n1,a\n1,b\n", encoding="utf-8")
+    text = refused(lambda: inputs.read_meanings(path, needed=("cover",), setting="cover.table"))
+    assert "says twice what '1' means" in text
+    text = refused(lambda: inputs.read_meanings(path, needed=("texture",), setting="soil.table"))
+    assert "lacks the column 'texture'" in text
+
+
+DAYS = np.arange(np.datetime64("2001-01-01"), np.datetime64("2001-01-11"))
+
+
+def weather(path: Path, header: str, row: str) -> Path:
+    lines = [f"{day},{row}" for day in DAYS]
+    path.write_text("\n".join([header, *lines]), encoding="utf-8")
+    return path
+
+
+def test_weather_comes_on_the_days_of_the_rain(tmp_path: Path) -> None:
+    path = weather(tmp_path / "c.csv", "date,tmin_c,tmax_c,comment", "5,20,x")
+    later = DAYS + 8
+    got = inputs.read_climate(path, later)
+    assert set(got) == {"tmin_c", "tmax_c"}
+    assert got["tmax_c"][:2].tolist() == [20.0, 20.0] and np.isnan(got["tmax_c"][2:]).all()
+
+
+def test_weather_that_cannot_be_right_is_refused(tmp_path: Path) -> None:
+    cases = {
+        "not in -50 to 60": ("date,tmax_c", "95"),
+        "tmin_c above tmax_c on 2001-01-01": ("date,tmin_c,tmax_c", "20,5"),
+        "has none of the columns tmin_c": ("date,temperature", "20"),
+    }
+    for message, (header, row) in cases.items():
+        path = weather(tmp_path / "c.csv", header, row)
+        with pytest.raises(InputError, match=message):
+            inputs.read_climate(path, DAYS)
+    path = weather(tmp_path / "c.csv", "date,tmin_c", "5")
+    assert "shares no day with the rain record" in refused(lambda: inputs.read_climate(path, DAYS + 400))
+
+
+def test_a_checksum_is_that_of_the_bytes(tmp_path: Path) -> None:
+    # FIPS 180-4: SHA-256 of "abc"
+    path = tmp_path / "abc"
+    path.write_bytes(b"abc")
+    assert inputs.sha256_of(path).startswith("ba7816bf8f01cfea414140de5dae2223")
