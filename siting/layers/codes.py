@@ -95,8 +95,8 @@ CHANNEL_SIZES = Classes(
 OPEN_CATCHMENT = Classes(
     "open_catchment",
     (
-        Class("0", "closed catchment", "#dfd6c4", "all that drains here lies within the data"),
-        Class("1", "open catchment: at least this area", "#b08347", "the catchment goes on beyond the data", hatch=True),
+        Class("false", "closed catchment", "#dfd6c4", "all that drains here lies within the data"),
+        Class("true", "open catchment: at least this area", "#b08347", "the catchment goes on beyond the data", hatch=True),
     ),
     unknown=UNKNOWN,
 )

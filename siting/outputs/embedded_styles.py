@@ -62,7 +62,9 @@ def _filter(layer: Layer, style: Classes, place: int) -> str:
     if style.by_size:
         upper = f" AND {column} < {style.items[place + 1].value}" if place + 1 < len(style.items) else ""
         return f"{column} >= {value}{upper}"
-    return f"{column} = {value}" if layer[layer.styled_by].kind != "text" else f"{column} = '{value}'"
+    if layer[layer.styled_by].kind == "bool":  # these viewers hold true equal to neither 1 nor 'true'
+        return column if value == "true" else f"NOT {column}"
+    return f"{column} = '{value}'"
 
 
 def _symbol(symbols: ET.Element, kind: str, item: Class, place: int) -> None:

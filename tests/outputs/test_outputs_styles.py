@@ -7,7 +7,7 @@ import pytest
 
 from siting.layers.model import Class, Classes, Column, Layer
 from siting.layers.rasters import RASTERS
-from siting.layers.vectors import LAYERS
+from siting.layers.vectors import LAYERS, layer
 from siting.outputs.embedded_styles import viewer_style
 from siting.outputs.geopackage import write_geopackage
 from siting.outputs.styles import sld_text, vector_sld, write_styles
@@ -106,3 +106,11 @@ def test_embedded_rules_point_to_symbols_that_exist(styles: list[tuple[str, str,
         titles = [rule.findtext(f"{SLD}Title") for rule in ET.fromstring(sld.encode()).iter(f"{SLD}Rule")]
         assert [rule.get("label") for rule in rules] == titles
         assert len({rule.get("key") for rule in rules}) == len(rules)
+
+
+def test_a_column_of_true_and_false_is_drawn_by_its_truth() -> None:
+    # compared with 1, such a column matched no rule in a desktop viewer that was tried
+    item = layer("catchments")
+    filters = [rule.get("filter") for rule in ET.fromstring(viewer_style(item, "fill")).iter("rule")]
+    assert filters == ['NOT "open_catchment"', '"open_catchment"', '"open_catchment" IS NULL']
+    assert [literal.text for literal in vector_sld(item).iter(f"{OGC}Literal")] == ["false", "true"]
