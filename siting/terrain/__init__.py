@@ -2,9 +2,11 @@
 
 from siting.terrain.analyse import Terrain, analyse
 from siting.terrain.area import accumulate, multiple_flow_area
-from siting.terrain.channels import height_above_channel_m, landscape_position
+from siting.terrain.channels import channel_cells, height_above_channel_m, landscape_position
 from siting.terrain.condition import Conditioned, condition
-from siting.terrain.downstream import any_above, first_below, flow_path, highest_above, open_catchments
+from siting.terrain.downstream import any_above, first_below, flow_path, highest_above
+from siting.terrain.edges import enclosed_voids, open_sides, sides_feeding
+from siting.terrain.given import follow
 from siting.terrain.pans import Pans, find_pans
 from siting.terrain.surface import profile_curvature, slope, wetness_index
 
@@ -15,16 +17,20 @@ __all__ = [
     "accumulate",
     "analyse",
     "any_above",
+    "channel_cells",
     "condition",
+    "enclosed_voids",
     "find_pans",
     "first_below",
     "flow_path",
+    "follow",
     "height_above_channel_m",
     "highest_above",
     "landscape_position",
     "multiple_flow_area",
-    "open_catchments",
+    "open_sides",
     "profile_curvature",
+    "sides_feeding",
     "slope",
     "wetness_index",
 ]

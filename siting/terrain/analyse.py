@@ -1,23 +1,37 @@
 """The whole terrain of a place in one call."""
 
-from dataclasses import dataclass
+from collections.abc import Callable
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 
+from siting.errors import ConfigError
 from siting.grid import Grid, Raster
+from siting.parallel import run_all
 from siting.terrain.area import accumulate, multiple_flow_area
-from siting.terrain.channels import height_above_channel_m, landscape_position
-from siting.terrain.condition import Conditioned, Directions, FloatArray, Heights, Mask, condition
-from siting.terrain.downstream import highest_above, open_catchments
-from siting.terrain.pans import Pans, find_pans
-from siting.terrain.surface import profile_curvature, slope, wetness_index
+from siting.terrain.channels import channel_cells, height_above_channel_m, landscape_position
+from siting.terrain.condition import Conditioned, Directions, FloatArray, Heights, Mask, condition, row_bands
+from siting.terrain.downstream import highest_above
+from siting.terrain.edges import Sides, enclosed_voids, open_sides
+from siting.terrain.given import follow, inner_ends
+from siting.terrain.pans import DOUBTFUL, KEPT, Pans, find_pans
+from siting.terrain.surface import BAND_ROWS, profile_curvature, slope, wetness_index
+
+STAGES = ("drainage", "areas", "slope and wetness", "channels and position", "open catchments")
+"""What a listener hears of, in this order."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Terrain:
-    """Ground on a grid: heights in m, areas in m2, slope as a tangent, codes as in siting.terrain."""
+    """
+    Ground on a grid: heights in m, areas in m2, slope as a tangent, codes as in siting.terrain.
+
+    `open_sides` tells from which sides each catchment may go on beyond the data, see `siting.terrain.edges`.
+    `flat_share` is the share of cells whose direction had to be invented on level ground, `enclosed_voids` the
+    number of holes in the data. Missing is NaN, code 255 or False.
+    """
 
     grid: Grid
     elevation: Heights
@@ -30,10 +44,16 @@ class Terrain:
     channel: Mask
     height_above_channel_m: Heights
     position: npt.NDArray[np.uint8]
-    open_catchment: Mask
+    open_sides: Sides
     pans: Pans
     flat_share: float
+    enclosed_voids: int
     vertical_error_m: float
+
+    @property
+    def open_catchment(self) -> Mask:
+        """Whether each cell's catchment may go on beyond the data: its area is then a lower bound."""
+        return np.asarray(self.open_sides != 0)
 
 
 def analyse(
@@ -44,6 +64,8 @@ def analyse(
     pan_min_area_m2: float,
     pan_layer: npt.NDArray[np.int8] | None,
     threads: int,
+    flow_direction: Directions | None = None,
+    progress: Callable[[str, int, int], None] | None = None,
 ) -> Terrain:
     """
     Condition the ground, keep its pans, and derive all that later rooms need.
@@ -51,34 +73,52 @@ def analyse(
     Parameters
     ----------
     dem
-        Heights in m, NaN void.
+        Heights in m; NaN or infinite is void.
     vertical_error_m
-        Standard deviation of the local error of the heights, m.
+        Standard deviation of the local error of the heights, m, above 0.
     channel_area_m2
-        Contributing area from which a cell counts as channel.
+        Contributing area from which a cell counts as channel, above 0.
     pan_min_area_m2, pan_layer
         See `find_pans`.
     threads
         How to compute; cannot change the result.
+    flow_direction
+        The user's own directions, see `follow`. They say where flow ends: a depression in which it ends is given, one
+        they lead through is doubtful at most. Not together with `pan_layer`.
+    progress
+        Hears (stage, done, total) as each of STAGES is finished.
+
+    Raises
+    ------
+    ConfigError
+        A setting outside its range, or both `flow_direction` and `pan_layer`.
     """
+    _check(vertical_error_m, channel_area_m2, pan_min_area_m2)
     grid = dem.grid
     size: dict[str, Any] = {"cell_width_m": grid.cell_width_m, "cell_height_m": grid.cell_height_m}
-    elevation = np.where(np.isfinite(dem.values), dem.values, np.nan).astype(np.float32)
-    conditioned, pans = _conditioned(elevation, grid, vertical_error_m, pan_min_area_m2, pan_layer, threads)
-    filled, direction = np.ascontiguousarray(conditioned.filled), conditioned.direction
+    heard = _Heard(progress)
+    elevation = np.array(dem.values, dtype=np.float32)
+    elevation[np.isinf(elevation)] = np.nan
+    pan_rule: dict[str, Any] = {
+        "cell_area_m2": grid.cell_area_m2,
+        "vertical_error_m": vertical_error_m,
+        "pan_min_area_m2": pan_min_area_m2,
+    }
+    filled, direction, flat_cells, pans = _drainage(elevation, size, pan_rule, pan_layer, flow_direction, threads)
+    heard.next()
     area = accumulate(direction, grid.cell_area_m2, threads=threads)
     shared = multiple_flow_area(filled, direction, cell_area_m2=grid.cell_area_m2, **size)
+    heard.next()
     tangent = slope(elevation, threads=threads, **size)
-    with np.errstate(invalid="ignore"):
-        channel = np.asarray(area >= channel_area_m2)
-    height = height_above_channel_m(filled, direction, channel, **size)
-    position = landscape_position(
-        height_above_channel_m=height,
-        drop_from_above_m=highest_above(direction, filled) - filled,
-        slope=tangent,
-        profile_curvature=profile_curvature(elevation, **size),
-        vertical_error_m=vertical_error_m,
-    )
+    wetness = wetness_index(shared, tangent, threads=threads, **size)
+    heard.next()
+    channel = channel_cells(area, channel_area_m2=channel_area_m2)
+    height = height_above_channel_m(filled, direction, channel)
+    position = _positions(elevation, filled, direction, height, tangent, size, vertical_error_m, threads)
+    heard.next()
+    enclosed, voids = enclosed_voids(~np.isnan(elevation))
+    sides = open_sides(direction, enclosed)
+    heard.next()
     return Terrain(
         grid,
         elevation,
@@ -87,39 +127,109 @@ def analyse(
         area,
         shared,
         tangent,
-        wetness_index(shared, tangent, threads=threads, **size),
+        wetness,
         channel,
         height,
         position,
-        open_catchments(direction, threads=threads),
+        sides,
         pans,
-        conditioned.flat_cells / max(1, int(np.count_nonzero(direction != 255))),
+        flat_cells / max(1, int(np.count_nonzero(direction != 255))),
+        voids,
         vertical_error_m,
     )
 
 
+def _check(vertical_error_m: float, channel_area_m2: float, pan_min_area_m2: float) -> None:
+    for name, value, least in (
+        ("vertical_error_m", vertical_error_m, np.nextafter(0, 1)),
+        ("channel_area_m2", channel_area_m2, np.nextafter(0, 1)),
+        ("pan_min_area_m2", pan_min_area_m2, 0.0),
+    ):
+        if not least <= value < np.inf:
+            msg = f"{name} = {value}: it must be {'above' if least else 'at least'} 0 and finite"
+            raise ConfigError(msg)
+
+
+class _Heard:
+    """Tell a listener, if there is one, of each finished stage."""
+
+    def __init__(self, progress: Callable[[str, int, int], None] | None) -> None:
+        self.progress = progress
+        self.done = 0
+
+    def next(self) -> None:
+        self.done += 1
+        if self.progress is not None:
+            self.progress(STAGES[self.done - 1], self.done, len(STAGES))
+
+
+def _drainage(
+    elevation: Heights,
+    size: dict[str, Any],
+    pan_rule: dict[str, Any],
+    pan_layer: npt.NDArray[np.int8] | None,
+    flow_direction: Directions | None,
+    threads: int,
+) -> tuple[Heights, Directions, int, Pans]:
+    """Return filled heights, directions, the number of cells directed on level ground, and the pans."""
+    if flow_direction is None:
+        conditioned, pans = _conditioned(elevation, size, pan_rule, pan_layer, threads)
+    elif pan_layer is not None:
+        msg = "flow_direction and pan_layer both say where flow ends: give one of them"
+        raise ConfigError(msg)
+    else:
+        conditioned = follow(elevation, flow_direction)
+        plain = condition(elevation, sinks=None, threads=threads, **size)
+        pans = find_pans(plain, elevation, pan_layer=inner_ends(conditioned.direction), **pan_rule)
+        pans = replace(pans, status=tuple(DOUBTFUL if one == KEPT else one for one in pans.status))
+    return np.ascontiguousarray(conditioned.filled), conditioned.direction, conditioned.flat_cells, pans
+
+
 def _conditioned(
     elevation: Heights,
-    grid: Grid,
-    vertical_error_m: float,
-    pan_min_area_m2: float,
+    size: dict[str, Any],
+    pan_rule: dict[str, Any],
     pan_layer: npt.NDArray[np.int8] | None,
     threads: int,
 ) -> tuple[Conditioned, Pans]:
-    """Fill once to find the pans; where any is kept, fill again with their bottoms as ends of flow."""
-    size: dict[str, Any] = {"cell_width_m": grid.cell_width_m, "cell_height_m": grid.cell_height_m}
+    """Fill once to find the pans; where any is kept, fill again with their lowest cells as ends of flow."""
     plain = condition(elevation, sinks=None, threads=threads, **size)
-    pans = find_pans(
-        plain,
-        elevation,
-        cell_area_m2=grid.cell_area_m2,
-        vertical_error_m=vertical_error_m,
-        pan_min_area_m2=pan_min_area_m2,
-        pan_layer=pan_layer,
-    )
-    kept = np.array([status != "doubtful" for status in pans.status], dtype=np.bool_)
+    pans = find_pans(plain, elevation, pan_layer=pan_layer, **pan_rule)
+    kept = np.array([status != DOUBTFUL for status in pans.status], dtype=np.bool_)
     if not kept.any():
         return plain, pans
+    del plain
     sinks = np.zeros(elevation.shape, dtype=np.bool_)
     sinks.ravel()[pans.bottom_cell[kept]] = True
     return condition(elevation, sinks=sinks, threads=threads, **size), pans
+
+
+def _positions(
+    elevation: Heights,
+    filled: Heights,
+    direction: Directions,
+    height: Heights,
+    tangent: Heights,
+    size: dict[str, Any],
+    vertical_error_m: float,
+    threads: int,
+) -> npt.NDArray[np.uint8]:
+    """Place each cell in the landscape, band by band: the temporary arrays stay small beside the raster."""
+    rows = direction.shape[0]
+    highest = highest_above(direction, filled)
+    position = np.empty(direction.shape, dtype=np.uint8)
+
+    def work(first: int, last: int) -> None:
+        above, below = max(0, first - 1), min(rows, last + 1)
+        metres = {name: metres[above:below] for name, metres in size.items()}
+        bend = profile_curvature(elevation[above:below], **metres)[first - above : last - above]
+        position[first:last] = landscape_position(
+            height_above_channel_m=height[first:last],
+            drop_from_above_m=highest[first:last] - filled[first:last],
+            slope=tangent[first:last],
+            profile_curvature=bend,
+            vertical_error_m=vertical_error_m,
+        )
+
+    run_all(work, row_bands(rows, BAND_ROWS), threads)
+    return position

@@ -3,22 +3,21 @@
 import numpy as np
 import numpy.typing as npt
 
+from siting.terrain._kernels.walk import height_of_target
 from siting.terrain.condition import Directions, FloatArray, Heights, Mask
-from siting.terrain.downstream import first_below
 
 SUMMIT, SHOULDER, BACKSLOPE, FOOTSLOPE, TOESLOPE = 1, 2, 3, 4, 5
 UNKNOWN_POSITION, NO_POSITION = 0, 255
 GENTLE_SLOPE = 0.05
 
 
-def height_above_channel_m(
-    filled: Heights,
-    direction: Directions,
-    channel: Mask,
-    *,
-    cell_width_m: FloatArray,
-    cell_height_m: FloatArray,
-) -> Heights:
+def channel_cells(contributing_area_m2: FloatArray, *, channel_area_m2: float) -> Mask:
+    """Mark the cells whose contributing area in m2 reaches `channel_area_m2`; False at voids."""
+    with np.errstate(invalid="ignore"):
+        return np.asarray(contributing_area_m2 >= channel_area_m2)
+
+
+def height_above_channel_m(filled: Heights, direction: Directions, channel: Mask) -> Heights:
     """
     Height of each cell over the first channel cell on its flow path, m; NaN where it meets none.
 
@@ -28,10 +27,10 @@ def height_above_channel_m(
     ----------
     Nobre et al. (2011), Journal of Hydrology 404.
     """
-    target, _ = first_below(direction, channel, cell_width_m=cell_width_m, cell_height_m=cell_height_m, include_self=True)
-    met = target >= 0
-    base = filled[np.where(met, target, 0) // filled.shape[1], np.where(met, target, 0) % filled.shape[1]]
-    return np.where(met, filled - base, np.nan).astype(np.float32)
+    height = np.empty(direction.shape, dtype=np.float32)
+    height_of_target(direction, channel, filled, height)
+    np.subtract(filled, height, out=height)
+    return height
 
 
 def landscape_position(

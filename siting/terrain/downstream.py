@@ -5,8 +5,7 @@ import numpy.typing as npt
 
 from siting.terrain._kernels.accumulate import count_inflows
 from siting.terrain._kernels.direction import STEP_COL, STEP_ROW
-from siting.terrain._kernels.walk import first_target, highest_upstream
-from siting.terrain.area import accumulate
+from siting.terrain._kernels.walk import carry_bits, first_target, highest_upstream
 from siting.terrain.condition import Directions, FloatArray, Mask
 
 Indices = npt.NDArray[np.int64]
@@ -42,19 +41,26 @@ def first_below(
     return target.reshape(direction.shape), distance.reshape(direction.shape)
 
 
-def highest_above(direction: Directions, elevation: npt.NDArray[np.floating]) -> npt.NDArray[np.float32]:
-    """Return the greatest height among each cell and all cells upstream of it, m; NaN at voids."""
+def inflow_counts(direction: Directions) -> npt.NDArray[np.uint8]:
+    """Count the neighbours that drain into each cell."""
     inflows = np.empty(direction.shape, dtype=np.uint8)
     count_inflows(direction, inflows, 0, direction.shape[0])
+    return inflows
+
+
+def highest_above(direction: Directions, elevation: npt.NDArray[np.floating]) -> npt.NDArray[np.float32]:
+    """Return the greatest height among each cell and all cells upstream of it, m; NaN at voids."""
+    inflows = inflow_counts(direction)
     highest = np.array(elevation, dtype=np.float32)
     highest_upstream(direction, inflows, highest)
     return highest
 
 
-def any_above(direction: Directions, mark: Mask, *, threads: int) -> Mask:
-    """Tell of each cell whether it, or any cell upstream of it, is marked."""
-    counted = accumulate(direction, mark.astype(np.float64), threads=threads)
-    return np.asarray(np.nan_to_num(counted) > 0)
+def any_above(direction: Directions, mark: Mask) -> Mask:
+    """Tell of each cell whether it, or any cell upstream of it, is marked; voids tell nothing (False)."""
+    bits = np.where(direction == 255, False, mark).astype(np.uint8)
+    carry_bits(direction, inflow_counts(direction), bits)
+    return bits.view(np.bool_)
 
 
 def flow_path(direction: Directions, start: int) -> Indices:
@@ -64,24 +70,3 @@ def flow_path(direction: Directions, start: int) -> Indices:
     while (code := int(direction[path[-1] // cols, path[-1] % cols])) <= 8:
         path.append(path[-1] + int(STEP_ROW[code]) * cols + int(STEP_COL[code]))
     return np.array(path, dtype=np.int64)
-
-
-def beside_void(valid: Mask) -> Mask:
-    """Mark valid cells beside a void or the edge of the data: where flow may leave or unseen water come in."""
-    padded = np.pad(valid, 1, constant_values=False)
-    rows, cols = valid.shape
-    around = np.ones_like(valid)
-    for row in range(3):
-        for col in range(3):
-            around &= padded[row : row + rows, col : col + cols]
-    return valid & ~around
-
-
-def open_catchments(direction: Directions, *, threads: int) -> Mask:
-    """
-    Tell of each cell whether its catchment may go on beyond the data: its area is then a lower bound.
-
-    It does where a cell beside the edge or a void drains inward and so may carry water that the data do not hold.
-    """
-    inward = beside_void(direction != 255) & (direction <= 8)
-    return any_above(direction, inward, threads=threads)

@@ -5,8 +5,9 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
+from siting.errors import GridError
 from siting.terrain._kernels.depressions import label_patches, measure_patches
-from siting.terrain.condition import Conditioned, FloatArray, Heights, Mask
+from siting.terrain.condition import Conditioned, FloatArray, Heights, Mask, row_bands
 
 Integers = npt.NDArray[np.int64]
 
@@ -19,8 +20,9 @@ class Pans:
     """
     Kept, given and doubtful depressions, one entry each; `label` holds the pan_id of their cells, else 0.
 
-    `spill_cell` is the flat index of the first cell outside that the pan would spill to, -1 where unknown.
-    `bottom_cell` is the deepest cell, at which the flow into a kept pan ends.
+    `status` is "kept" by its size and depth, "given" by the user, or "doubtful": drained, yet perhaps real. Volume is
+    that between the ground and the spill level. `spill_cell` is the flat index of the first cell outside that the pan
+    would spill to, -1 where unknown. `bottom_cell` is the lowest cell, at which the flow into a kept pan ends.
     """
 
     pan_id: Integers
@@ -61,11 +63,35 @@ def find_pans(
     A patch of at least `pan_min_area_m2` is kept if its greatest depth is at least 2 e, or its mean depth at least
     2 e / sqrt(n), n = its area over a hectare or over one cell if that is larger: pans are wide and shallow. One
     with half that depth is doubtful. `pan_layer` (1 keep, -1 never keep, 0 not said) always wins where it touches a
-    patch; where it says both of one patch, keeping wins.
+    patch; where it says both of one patch, keeping wins. Where it keeps ground that holds no depression, each
+    8-connected part of that ground is listed with depth and volume 0 and ends the flow at its lowest cell.
+
+    Parameters
+    ----------
+    conditioned
+        The plain fill of `elevation`, no pan kept.
+    elevation
+        Heights in m, NaN void.
+    cell_area_m2
+        Area of a cell for each row, m2.
+    vertical_error_m
+        Standard deviation e of the local error of the heights, m.
+    pan_min_area_m2, pan_layer
+        As above; the layer is (rows, columns) or None.
+
+    Raises
+    ------
+    GridError
+        A layer of another shape than the heights.
     """
+    if pan_layer is not None and pan_layer.shape != elevation.shape:
+        msg = f"pan_layer has shape {pan_layer.shape}, the heights {elevation.shape}: give both on one grid"
+        raise GridError(msg)
     raised = conditioned.filled > elevation
     label = np.zeros(elevation.shape, dtype=np.int32)
     count = label_patches(raised, label, np.empty(int(raised.sum()) + 8, dtype=np.int64))
+    if pan_layer is not None:
+        count = _label_kept_ground((pan_layer > 0) & np.isfinite(elevation), label, count)
     area, volume, depth = (np.zeros(count + 1) for _ in range(3))
     bottom, spill = (np.full(count + 1, -1, dtype=np.int64) for _ in range(2))
     measure_patches(
@@ -81,6 +107,8 @@ def find_pans(
     listed = np.flatnonzero(status != "")
     number = np.zeros(count + 1, dtype=np.int32)
     number[listed] = np.arange(1, listed.size + 1)
+    for first, last in row_bands(elevation.shape[0], 64):  # in place: one raster of labels, not two
+        label[first:last] = number[label[first:last]]
     return Pans(
         np.arange(1, listed.size + 1, dtype=np.int64),
         tuple(str(status[patch]) for patch in listed),
@@ -89,8 +117,20 @@ def find_pans(
         volume[listed],
         spill[listed],
         bottom[listed],
-        number[label],
+        label,
     )
+
+
+def _label_kept_ground(keep: Mask, label: npt.NDArray[np.int32], count: int) -> int:
+    """Add to the labels each kept patch of ground that touches no depression; return how many labels there are."""
+    ground = np.zeros(label.shape, dtype=np.int32)
+    patches = label_patches(keep, ground, np.empty(int(keep.sum()) + 8, dtype=np.int64))
+    new = np.ones(patches + 1, dtype=np.bool_)
+    new[ground[label > 0]] = False
+    new[0] = False
+    number = np.where(new, count + np.cumsum(new), 0).astype(np.int32)
+    np.maximum(label, number[ground], out=label)
+    return count + int(new.sum())
 
 
 def _statuses(

@@ -10,6 +10,9 @@ from siting.terrain.condition import FloatArray, Heights, row_bands
 LEAST_SLOPE = 0.001
 """Floor of tan b in the wetness index, so that level ground gets a number and not infinity."""
 
+STRAIGHT_M = 0.002
+"""Bend over a cell below which a profile is straight: 32-bit heights at 8000 m may show 0.0012 m on a plane."""
+
 BAND_ROWS = 64
 """Rows worked on together: their temporary arrays stay small beside the raster."""
 
@@ -91,8 +94,8 @@ def profile_curvature(
     """
     Curvature along the steepest line, 1/m: above zero where convex (steepens downward).
 
-    Second derivative of a quadratic surface through the cell and its neighbours; 0 on level ground and
-    beside voids, where the neighbours do not suffice; NaN at voids.
+    Second derivative of a quadratic surface through the cell and its neighbours; 0 on level ground, where the ground
+    bends by less than STRAIGHT_M over a cell, and beside voids, where the neighbours do not suffice; NaN at voids.
 
     References
     ----------
@@ -108,4 +111,5 @@ def profile_curvature(
     steep = p * p + q * q
     with np.errstate(invalid="ignore", divide="ignore"):
         along = -(r * p * p + 2 * s * p * q + t * q * q) / steep
-    return np.where(np.isnan(centre), np.nan, np.where(np.isfinite(along), along, 0.0)).astype(np.float32)
+        bends = np.isfinite(along) & (np.abs(along) * width * height >= STRAIGHT_M)
+    return np.where(np.isnan(centre), np.nan, np.where(bends, along, 0.0)).astype(np.float32)

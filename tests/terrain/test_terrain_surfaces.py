@@ -1,31 +1,22 @@
-"""Analytic surfaces, a valley worked by hand, pans, and what lies above and below."""
+"""Analytic surfaces, a valley worked by hand, positions in the landscape, and laws of the whole terrain."""
+
+from collections.abc import Callable
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 import pytest
+from ground import FloatArray, bowl, terrain_of, worked_valley
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
-from siting.grid import Raster, metric_grid
-from siting.terrain import Terrain, analyse, any_above, first_below, flow_path, slope, wetness_index
-from siting.terrain.pans import DOUBTFUL, GIVEN, KEPT
-
-FloatArray = npt.NDArray[np.float64]
+from siting.grid import Grid, Raster
+from siting.terrain import Terrain, analyse, landscape_position, profile_curvature, slope, wetness_index
 
 
 def tangent(z: FloatArray, cell_m: float) -> npt.NDArray[np.float32]:
     size = np.full(z.shape[0], cell_m)
     return slope(z, cell_width_m=size, cell_height_m=size)
-
-
-def terrain_of(z: FloatArray, cell_m: float, **settings: object) -> Terrain:
-    values: dict[str, object] = {
-        "vertical_error_m": 0.15,
-        "channel_area_m2": 10_800.0,
-        "pan_min_area_m2": 1e9,
-        "pan_layer": None,
-        "threads": 2,
-    }
-    raster = Raster(metric_grid(z.shape[0], z.shape[1], cell_m), z.astype(np.float32))
-    return analyse(raster, **(values | settings))  # type: ignore[arg-type]
 
 
 def test_slope_of_the_printed_window() -> None:
@@ -98,10 +89,7 @@ def test_level_ground_gets_a_number_for_wetness() -> None:
 @pytest.fixture(scope="module")
 def valley() -> Terrain:
     """Worked by hand: 17 x 11 cells of 20 m, sides of 5 %, a bed that falls 1 % south, a rim that falls away."""
-    r, c = np.mgrid[0:17, 0:11]
-    z = 100 + 1.0 * np.abs(np.clip(c, 1, 9) - 5) + 0.2 * (15 - np.maximum(r, 1))
-    z = z - 0.1 * ((r == 0) | (c == 0) | (c == 10))
-    return terrain_of(z, 20.0)
+    return terrain_of(worked_valley(), 20.0)
 
 
 def test_the_valley_worked_by_hand(valley: Terrain) -> None:
@@ -113,97 +101,186 @@ def test_the_valley_worked_by_hand(valley: Terrain) -> None:
     np.testing.assert_array_equal(valley.filled, valley.elevation)  # nothing is raised
 
 
-def test_the_valley_is_closed_inside_its_rim(valley: Terrain) -> None:
-    assert not valley.open_catchment[13, 5]
-    assert not valley.open_catchment[12, 5]
+def test_slope_of_a_plane_of_five_percent() -> None:
+    # dz/dx 0.05, dz/dy 0: 5.0 % everywhere, whatever the size of the cells (algebra)
+    for cell_m in (1.0, 10.0, 30.0):
+        z = np.repeat(0.05 * cell_m * np.arange(80.0)[None, :], 70, axis=0)
+        np.testing.assert_allclose(tangent(z, cell_m), 0.05, rtol=1e-5)
 
 
-def test_paths_and_distances_in_the_valley(valley: Terrain) -> None:
-    path = flow_path(valley.direction, 10 * 11 + 2)
-    assert path[:4].tolist() == [112, 113, 114, 115]  # along row 10 to column 5
-    assert path[-1] // 11 == 16
-    target, distance = first_below(
-        valley.direction,
-        valley.channel,
-        cell_width_m=valley.grid.cell_width_m,
-        cell_height_m=valley.grid.cell_height_m,
-        include_self=True,
+@settings(max_examples=40, deadline=None)
+@given(a=st.floats(-0.5, 0.5), b=st.floats(-0.5, 0.5), width=st.floats(1.0, 40.0), height=st.floats(1.0, 40.0))
+def test_any_plane_has_its_gradient_on_cells_of_any_shape(a: float, b: float, width: float, height: float) -> None:
+    y, x = np.mgrid[0:7, 0:9]
+    got = slope(a * x * width + b * y * height, cell_width_m=np.full(7, width), cell_height_m=np.full(7, height))
+    np.testing.assert_allclose(got, np.hypot(a, b), rtol=1e-4, atol=1e-6)
+
+
+def test_a_paraboloid_bends_by_its_second_derivative() -> None:
+    # z = a r2 rises outward ever more steeply: along the slope z'' = 2a, concave downslope, so -2a; a dome +2a
+    y, x = np.mgrid[-20:21, -20:21] * 10.0
+    size = {"cell_width_m": np.full(41, 10.0), "cell_height_m": np.full(41, 10.0)}
+    bowl_bend = profile_curvature(5e-4 * (x**2 + y**2), **size)
+    dome_bend = profile_curvature(100 - 5e-4 * (x**2 + y**2), **size)
+    assert float(bowl_bend[20, 30]) == pytest.approx(-1e-3, rel=1e-6)
+    assert float(dome_bend[27, 12]) == pytest.approx(1e-3, rel=1e-6)
+    assert float(bowl_bend[20, 20]) == 0.0  # level: no direction to bend along
+
+
+def test_a_plane_high_up_is_straight_in_spite_of_its_32_bits() -> None:
+    y, x = np.mgrid[0:200, 0:200]
+    z = (8000.0 + 0.0371 * x - 0.0113 * y).astype(np.float32)
+    size = {"cell_width_m": np.full(200, 1.0), "cell_height_m": np.full(200, 1.0)}
+    assert not profile_curvature(z, **size).any()
+
+
+# h above the channel, u below the top, slope, bend (> 0 convex), e = 1 m -> position
+POSITIONS = [
+    ("toeslope by height and slope", 1.0, 9.0, 0.05, 0.1, 5),
+    ("a steep foot is a footslope", 1.0, 9.0, 0.06, -0.1, 4),
+    ("a steep convex foot is neither", 1.0, 9.0, 0.06, 0.1, 3),
+    ("footslope up to r = 0.35", 3.5, 6.5, 0.2, 0.0, 4),
+    ("backslope above it", 3.6, 6.4, 0.2, -0.1, 3),
+    ("shoulder from r = 0.65", 6.5, 3.5, 0.2, 0.0, 2),
+    ("a concave one is a backslope", 6.5, 3.5, 0.2, -0.1, 3),
+    ("summit from r = 0.9, gentle", 9.0, 1.0, 0.05, -0.1, 1),
+    ("a steep top is a shoulder", 9.0, 1.0, 0.06, 0.1, 2),
+    ("relief within the error is unknown", 0.9, 1.0, 0.01, 0.0, 0),
+    ("relief of just twice the error is known", 0.125, 1.875, 0.01, 0.0, 5),
+    ("no channel below is unknown", np.nan, 5.0, 0.01, 0.0, 0),
+    ("a void has no position", np.nan, np.nan, np.nan, np.nan, 255),
+]
+
+
+@pytest.mark.parametrize(("h", "u", "steep", "bend", "code"), [p[1:] for p in POSITIONS], ids=[p[0] for p in POSITIONS])
+def test_positions_follow_their_thresholds(h: float, u: float, steep: float, bend: float, code: int) -> None:
+    def cell(value: float) -> npt.NDArray[np.float32]:
+        return np.array([[value]], dtype=np.float32)
+
+    got = landscape_position(
+        height_above_channel_m=cell(h),
+        drop_from_above_m=cell(u),
+        slope=cell(steep),
+        profile_curvature=cell(bend),
+        vertical_error_m=1.0,
     )
-    assert target[10, 2] == 115
-    assert distance[10, 2] == 60.0
-    assert distance[10, 5] == 0.0
-    beyond, further = first_below(
-        valley.direction,
-        valley.channel,
-        cell_width_m=valley.grid.cell_width_m,
-        cell_height_m=valley.grid.cell_height_m,
-        include_self=False,
+    assert got.tolist() == [[code]]
+
+
+def test_a_hillside_runs_from_summit_to_toeslope() -> None:
+    # a ridge and a valley, cosine between them: convex above, concave below
+    r, c = np.mgrid[0:60, 0:81]
+    z = 120.0 + 20.0 * np.cos(np.pi * (c - 40) / 40.0) * -1.0 + 0.2 * (60 - r)
+    got = terrain_of(z, 10.0, channel_area_m2=81 * 100.0 * 5, vertical_error_m=0.5)
+    along = got.position[40, 2:40]
+    assert along[along > 0].tolist() == sorted(along[along > 0].tolist())  # summit 1 ... toeslope 5, in order
+    assert set(along.tolist()) >= {2, 3, 4, 5}
+
+
+SYMMETRIES: list[Callable[[Any], Any]] = [
+    lambda z: z,
+    lambda z: np.rot90(z, 1),
+    lambda z: np.rot90(z, 2),
+    lambda z: np.rot90(z, 3),
+    lambda z: np.flipud(z),
+    lambda z: np.fliplr(z),
+    lambda z: z.T,
+    lambda z: np.rot90(z, 2).T,
+]
+
+
+@pytest.mark.parametrize("turn", SYMMETRIES)
+def test_turning_or_mirroring_the_ground_turns_or_mirrors_every_layer(turn: Callable[[Any], Any]) -> None:
+    # hills and valleys without two equal steepest ways, and one pan that is kept
+    y, x = np.mgrid[0:70, 0:83] * 10.0
+    z = 300 - 0.031 * x - 0.017 * y + 4 * np.sin(x / 97 + y / 211) + 3 * np.cos(y / 83 - x / 301)
+    z -= 15 * np.exp(-((x - 402.3) ** 2 + (y - 351.7) ** 2) / 120**2)
+    rule = {"channel_area_m2": 20_000.0, "pan_min_area_m2": 10_000.0, "vertical_error_m": 0.5}
+    one, other = terrain_of(z, 10.0, **rule), terrain_of(np.ascontiguousarray(turn(z)), 10.0, **rule)
+    assert one.pans.status == other.pans.status == ("kept",)
+    assert one.pans.volume_m3[0] == pytest.approx(other.pans.volume_m3[0], rel=1e-6)
+    for name in ("filled", "contributing_area_m2", "channel", "height_above_channel_m", "position", "open_catchment"):
+        np.testing.assert_array_equal(turn(getattr(one, name)), getattr(other, name), err_msg=name)
+    for name in ("multiple_flow_area_m2", "slope", "wetness_index"):
+        np.testing.assert_allclose(turn(getattr(one, name)), getattr(other, name), rtol=1e-4, err_msg=name)
+
+
+@settings(max_examples=25, deadline=None)
+@given(seed=st.integers(0, 2**32 - 1), lift=st.sampled_from([1.0, -64.0, 512.0]))
+def test_raising_all_ground_changes_nothing(seed: int, lift: float) -> None:
+    # heights in 1/64 m: adding whole metres is exact
+    rng = np.random.default_rng(seed)
+    z = np.cumsum(np.cumsum(np.round(rng.standard_normal((25, 30)) * 16) / 64, axis=0), axis=1)
+    rule = {"channel_area_m2": 3_000.0, "pan_min_area_m2": 800.0, "vertical_error_m": 0.5}
+    low, high = terrain_of(z, 20.0, **rule), terrain_of(z + lift, 20.0, **rule)
+    assert low.pans.status == high.pans.status
+    for name in ("direction", "contributing_area_m2", "channel", "position", "height_above_channel_m", "open_sides"):
+        np.testing.assert_array_equal(getattr(low, name), getattr(high, name), err_msg=name)
+    np.testing.assert_allclose(low.slope, high.slope, rtol=1e-6)
+    np.testing.assert_allclose(low.wetness_index, high.wetness_index, rtol=1e-5)
+    np.testing.assert_array_equal(low.filled + np.float32(lift), high.filled)
+
+
+def test_cells_whose_width_varies_by_row_keep_their_own_area_slope_and_contour() -> None:
+    # a plane that falls south on cells 8 m wide in the north and 12 m in the south, 10 m high
+    width = np.linspace(8.0, 12.0, 30)
+    height = np.full(30, 10.0)
+    z = np.repeat(np.arange(30, 0, -1.0)[:, None], 41, axis=1).astype(np.float32)
+    grid = Grid(30, 41, (1.0, 0.0, 0.0, 0.0, -1.0, 0.0), "EPSG:4326", width, height)
+    got = analyse(
+        Raster(grid, z),
+        vertical_error_m=0.1,
+        channel_area_m2=500.0,
+        pan_min_area_m2=1e4,
+        pan_layer=None,
+        threads=1,
     )
-    assert beyond[10, 5] == 126
-    assert further[10, 5] == 20.0
+    column = np.cumsum(grid.cell_area_m2)
+    np.testing.assert_array_equal(got.contributing_area_m2[:, 20], column)
+    np.testing.assert_allclose(got.slope[1:-1], 0.1, rtol=1e-5)
+    expected = np.log(got.multiple_flow_area_m2[:, 20] / ((width + height) / 2) / 0.1)
+    np.testing.assert_allclose(got.wetness_index[1:-1, 20], expected[1:-1], rtol=1e-5)
+    np.testing.assert_array_equal(np.flatnonzero(got.channel[:, 20]), np.flatnonzero(column >= 500.0))
 
 
-def test_ground_cut_by_the_edge_of_the_data_is_open() -> None:
-    # a plane that falls south, higher at its northern edge: what comes in over that edge is unseen
-    z = np.repeat(np.arange(20, 0, -1.0)[:, None], 30, axis=1)
+@pytest.mark.parametrize("shape", [(1, 1), (1, 7), (7, 1), (2, 2)])
+def test_the_smallest_rasters_have_a_terrain(shape: tuple[int, int]) -> None:
+    z = np.arange(float(shape[0] * shape[1])).reshape(shape)
     got = terrain_of(z, 10.0)
-    assert got.open_catchment[10, 15]
+    assert got.contributing_area_m2[got.direction == 9].sum() == 100.0 * z.size
+    assert np.isfinite(got.slope).all()
+    assert np.isfinite(got.wetness_index).all()
 
 
-def test_a_mark_is_seen_by_all_below_and_none_above(valley: Terrain) -> None:
-    mark = np.zeros(valley.grid.shape, dtype=np.bool_)
-    mark[10, 2] = True
-    below = any_above(valley.direction, mark, threads=1)
-    assert below[10, 2] and below[10, 4] and below[14, 5]
-    assert not below[9, 5] and not below[10, 7]
+def test_ground_without_any_height_has_no_number_anywhere() -> None:
+    got = terrain_of(np.full((6, 7), np.nan), 10.0)
+    for name in (
+        "filled",
+        "contributing_area_m2",
+        "multiple_flow_area_m2",
+        "slope",
+        "wetness_index",
+        "height_above_channel_m",
+    ):
+        assert np.isnan(getattr(got, name)).all(), name
+    assert np.all(got.direction == 255) and np.all(got.position == 255)
+    assert not got.channel.any() and not got.open_catchment.any()
+    assert got.flat_share == 0.0 and got.enclosed_voids == 0
 
 
-def bowl(depth: float) -> FloatArray:
-    y, x = np.mgrid[0:60, 0:60]
-    z = 100.0 + 0.02 * (60 - y)
-    r = np.hypot(x - 30, y - 30)
-    heights: FloatArray = np.where(r < 12, 100.0 - depth * (1 - (r / 12) ** 2), z)
-    return heights
+def test_infinite_heights_are_voids() -> None:
+    z = bowl(0.2)
+    with_void, with_infinite = z.copy(), z.copy()
+    with_void[5, 5], with_infinite[5, 5] = np.nan, np.inf
+    one, other = terrain_of(with_void, 20.0), terrain_of(with_infinite, 20.0)
+    assert one.enclosed_voids == other.enclosed_voids == 1
+    np.testing.assert_array_equal(one.elevation, other.elevation)
+    np.testing.assert_array_equal(one.contributing_area_m2, other.contributing_area_m2)
 
 
-def test_a_deep_pan_ends_the_flow_and_a_shallow_one_is_drained() -> None:
-    kept = terrain_of(bowl(3.0), 20.0, vertical_error_m=1.0, pan_min_area_m2=10_000.0)
-    assert kept.pans.status == (KEPT,)
-    assert kept.pans.depth_m[0] == pytest.approx(3.0, abs=0.7)
-    assert 0.3 * kept.pans.area_m2[0] < kept.pans.volume_m3[0] / kept.pans.depth_m[0] < 0.9 * kept.pans.area_m2[0]
-    assert np.count_nonzero(kept.direction == 10) == 1
-    drained = terrain_of(bowl(0.2), 20.0, vertical_error_m=1.0, pan_min_area_m2=10_000.0)
-    assert not np.any(drained.direction == 10)
-
-
-def test_water_is_kept_where_pans_end_it() -> None:
-    got = terrain_of(bowl(3.0), 20.0, vertical_error_m=1.0, pan_min_area_m2=10_000.0)
-    ends = (got.direction == 9) | (got.direction == 10)
-    assert got.contributing_area_m2[ends].sum() == 400.0 * 3600
-
-
-def test_the_users_layer_of_pans_wins() -> None:
-    layer = np.zeros((60, 60), dtype=np.int8)
-    layer[30, 30] = -1
-    never = terrain_of(bowl(3.0), 20.0, vertical_error_m=1.0, pan_min_area_m2=10_000.0, pan_layer=layer)
-    assert never.pans.status == ()
-    always = terrain_of(bowl(0.2), 20.0, vertical_error_m=1.0, pan_min_area_m2=10_000.0, pan_layer=-layer)
-    assert always.pans.status == (GIVEN,)
-    assert always.direction[30, 30] == 10
-
-
-def test_a_pan_of_half_the_depth_is_doubtful() -> None:
-    got = terrain_of(bowl(1.3), 20.0, vertical_error_m=3.0, pan_min_area_m2=10_000.0)
-    assert got.pans.status == (DOUBTFUL,)
-    assert got.pans.doubtful_mask().sum() * 400.0 == got.pans.area_m2[0]
-    assert not np.any(got.direction == 10)
-
-
-def test_raising_all_ground_changes_nothing() -> None:
-    low, high = (
-        terrain_of(bowl(3.0).round() + lift, 20.0, vertical_error_m=1.0, pan_min_area_m2=10_000.0) for lift in (0.0, 1.0)
-    )
-    np.testing.assert_array_equal(low.direction, high.direction)
-    np.testing.assert_array_equal(low.contributing_area_m2, high.contributing_area_m2)
-    np.testing.assert_array_equal(low.position, high.position)
-    np.testing.assert_allclose(low.slope, high.slope, atol=1e-7)
+def test_a_listener_hears_every_stage_once_in_order() -> None:
+    heard: list[tuple[str, int, int]] = []
+    terrain_of(bowl(1.0), 20.0, progress=lambda *news: heard.append(news))
+    assert [done for _, done, _ in heard] == list(range(1, len(heard) + 1))
+    assert {total for _, _, total in heard} == {len(heard)}
+    assert heard[0][0] == "drainage"

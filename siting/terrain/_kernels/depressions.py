@@ -32,7 +32,7 @@ def label_patches(mask, label, stack):
 
 @kernel
 def measure_patches(label, filled, elevation, direction, area_by_row, area, volume, depth, bottom, spill):
-    """Sum area and volume of each patch, its greatest depth with the first deepest cell, and where it would spill."""
+    """Sum area and volume of each patch, its greatest depth, its first lowest cell, and where it would spill."""
     rows, cols = label.shape
     for row in range(rows):
         for col in range(cols):
@@ -42,8 +42,10 @@ def measure_patches(label, filled, elevation, direction, area_by_row, area, volu
             below = filled[row, col] - elevation[row, col]
             area[patch] += area_by_row[row]
             volume[patch] += below * area_by_row[row]
-            if below > depth[patch]:
-                depth[patch], bottom[patch] = below, row * cols + col
+            depth[patch] = max(depth[patch], below)
+            lowest = bottom[patch]
+            if lowest < 0 or elevation[row, col] < elevation[lowest // cols, lowest % cols]:
+                bottom[patch] = row * cols + col
             code = direction[row, col]
             if code <= 8:
                 to_row, to_col = row + STEP_ROW[code], col + STEP_COL[code]
