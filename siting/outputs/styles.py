@@ -52,7 +52,7 @@ def vector_sld(layer: Layer) -> ET.Element:
     for place, item in enumerate(style.items):
         rule = _rule(rules, f"{layer.name}_{place}", item)
         if layer.styled_by:
-            _filter(rule, layer.styled_by, style, place)
+            _filter(rule, layer, style, place)
         _symbolise(rule, layer, item, place)
     if style.unknown is not None:
         rule = _rule(rules, f"{layer.name}_unknown", style.unknown)
@@ -110,8 +110,11 @@ def _rule(rules: ET.Element, name: str, item: Class) -> ET.Element:
     return rule
 
 
-def _filter(rule: ET.Element, column: str, style: Classes, place: int) -> None:
-    parent = ET.SubElement(rule, f"{{{_OGC}}}Filter")
+def _filter(rule: ET.Element, layer: Layer, style: Classes, place: int) -> None:
+    parent, column = ET.SubElement(rule, f"{{{_OGC}}}Filter"), layer.styled_by
+    if layer[column].kind == "bool":
+        _truth(parent, column, style.items[place].value)
+        return
     if not style.by_size:
         _compare(parent, "PropertyIsEqualTo", column, style.items[place].value)
         return
@@ -121,6 +124,14 @@ def _filter(rule: ET.Element, column: str, style: Classes, place: int) -> None:
         _compare(parent, "PropertyIsLessThan", column, style.items[place + 1].value)
         return
     _compare(parent, "PropertyIsGreaterThanOrEqualTo", column, style.items[place].value)
+
+
+def _truth(parent: ET.Element, column: str, value: str) -> None:
+    """Ask for true as known and not false: readers that ask the file, where true is 1, find nothing equal to `true`."""
+    both = ET.SubElement(parent, f"{{{_OGC}}}And")
+    null = ET.SubElement(ET.SubElement(both, f"{{{_OGC}}}Not"), f"{{{_OGC}}}PropertyIsNull")
+    ET.SubElement(null, f"{{{_OGC}}}PropertyName").text = column
+    _compare(both, "PropertyIsNotEqualTo", column, "false" if value == "true" else "true")
 
 
 def _compare(parent: ET.Element, test: str, column: str, value: str) -> None:

@@ -113,4 +113,8 @@ def test_a_column_of_true_and_false_is_drawn_by_its_truth() -> None:
     item = layer("catchments")
     filters = [rule.get("filter") for rule in ET.fromstring(viewer_style(item, "fill")).iter("rule")]
     assert filters == ['NOT "open_catchment"', '"open_catchment"', '"open_catchment" IS NULL']
-    assert [literal.text for literal in vector_sld(item).iter(f"{OGC}Literal")] == ["false", "true"]
+    # the first rule is that of a closed catchment: known, and not true
+    assert [element.findtext(f"{OGC}Literal") for element in vector_sld(item).iter(f"{OGC}PropertyIsNotEqualTo")] == [
+        "true",
+        "false",
+    ]
