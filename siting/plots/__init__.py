@@ -1,0 +1,31 @@
+"""From terrain to plots: screening, patches, division, catchments, who lies above whom."""
+
+from siting.plots.catchments import Catchments, PlotCells, catchment_cells, overflow_path, plot_cells, trace_catchments
+from siting.plots.division import FOUND, GIVEN, PlotLabels, make_plots
+from siting.plots.patches import PlotSize, plot_size
+from siting.plots.screening import Screening, deepest_part, screen, strip_share_left
+from siting.plots.surface import PlotPlane, commonest, fit_planes, plot_means, slope_margin
+
+__all__ = [
+    "FOUND",
+    "GIVEN",
+    "Catchments",
+    "PlotCells",
+    "PlotLabels",
+    "PlotPlane",
+    "PlotSize",
+    "Screening",
+    "catchment_cells",
+    "commonest",
+    "deepest_part",
+    "fit_planes",
+    "make_plots",
+    "overflow_path",
+    "plot_cells",
+    "plot_means",
+    "plot_size",
+    "screen",
+    "slope_margin",
+    "strip_share_left",
+    "trace_catchments",
+]
