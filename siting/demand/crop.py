@@ -7,6 +7,9 @@ from siting.errors import ConfigError
 
 FloatArray = npt.NDArray[np.float64]
 
+HIGHEST_KC = 2.0
+"""Beyond any coefficient in print (the highest of FAO-56 Table 12 is about 1.25)."""
+
 
 def crop_coefficient(
     day: npt.ArrayLike, *, stage_days: tuple[int, int, int, int], kc: tuple[float, float, float]
@@ -28,7 +31,10 @@ def crop_coefficient(
     FAO-56 eq. 66: level, then linear, level, then linear.
     """
     if min(stage_days) < 0 or sum(stage_days) <= 0:
-        msg = f"stage lengths {stage_days} days: none may be below zero, and not all zero"
+        msg = f"stage lengths {stage_days} days: none may be below zero, and not all zero; give four lengths in days"
+        raise ConfigError(msg)
+    if not (min(kc) >= 0 and max(kc) <= HIGHEST_KC):
+        msg = f"crop coefficients {kc}: each must lie between 0 and {HIGHEST_KC:g}; give initial, mid-season and end"
         raise ConfigError(msg)
     initial, development, middle, _ = np.cumsum(stage_days)
     total = float(sum(stage_days))

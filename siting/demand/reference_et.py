@@ -12,6 +12,12 @@ SOLAR_CONSTANT = 0.0820
 STEFAN_BOLTZMANN = 4.903e-9
 """MJ/K4/m2/day (FAO-56 eq. 39)."""
 
+ALBEDO = 0.23
+"""Of the reference grass (FAO-56 eq. 38)."""
+
+LEAST_RELATIVE_SOLAR = 0.3
+"""Solar radiation over that of a clear sky under the densest cloud (ASCE-EWRI 2005; FAO-56 eq. 39 tells about 0.33)."""
+
 MM_PER_MJ = 0.408
 """Water that 1 MJ/m2 evaporates, mm (FAO-56 eq. 20)."""
 
@@ -57,6 +63,14 @@ def saturation_pressure_kpa(temperature_c: ArrayLike) -> FloatArray:
     return np.asarray(0.6108 * np.exp(17.27 * temperature / (temperature + 237.3)))
 
 
+def vapour_pressure_from_humidity_kpa(
+    *, tmin_c: ArrayLike, tmax_c: ArrayLike, rh_max_pct: ArrayLike, rh_min_pct: ArrayLike
+) -> FloatArray:
+    """Actual vapour pressure from greatest and least relative humidity of the day, kPa; FAO-56 eq. 17."""
+    cool = saturation_pressure_kpa(tmin_c) * _floats(rh_max_pct) / 100.0
+    return np.asarray((cool + saturation_pressure_kpa(tmax_c) * _floats(rh_min_pct) / 100.0) / 2.0)
+
+
 def air_pressure_kpa(altitude_m: ArrayLike) -> FloatArray:
     """Air pressure, kPa; FAO-56 eq. 7."""
     return np.asarray(101.3 * ((293.0 - 0.0065 * _floats(altitude_m)) / 293.0) ** 5.26)
@@ -81,6 +95,19 @@ def solar_radiation_from_temperature_mj(
     return coefficient * np.sqrt(span) * _floats(extraterrestrial_mj)
 
 
+def net_longwave_mj(
+    *, tmin_c: ArrayLike, tmax_c: ArrayLike, vapour_pressure_kpa: ArrayLike, relative_solar: ArrayLike
+) -> FloatArray:
+    """
+    Net outgoing long-wave radiation, MJ/m2/day; FAO-56 eq. 39.
+
+    `relative_solar` is solar radiation over that of a clear sky; it counts as 0.3 below that, and as 1 above 1.
+    """
+    cloud = 1.35 * np.clip(_floats(relative_solar), LEAST_RELATIVE_SOLAR, 1.0) - 0.35
+    fourth = ((_floats(tmax_c) + 273.16) ** 4 + (_floats(tmin_c) + 273.16) ** 4) / 2.0
+    return np.asarray(STEFAN_BOLTZMANN * fourth * (0.34 - 0.14 * np.sqrt(_floats(vapour_pressure_kpa))) * cloud)
+
+
 def net_radiation_mj(
     *,
     tmin_c: ArrayLike,
@@ -90,13 +117,18 @@ def net_radiation_mj(
     extraterrestrial_mj: ArrayLike,
     altitude_m: ArrayLike,
 ) -> FloatArray:
-    """Net radiation of the reference grass, MJ/m2/day; FAO-56 eq. 37 to 40."""
+    """
+    Net radiation of the reference grass (albedo 0.23), MJ/m2/day; FAO-56 eq. 37 to 40.
+
+    Temperatures in deg C, vapour pressure in kPa, solar and extraterrestrial radiation in MJ/m2/day, altitude in m;
+    arguments broadcast; NaN stays NaN.
+    """
     solar = _floats(solar_mj)
     clear = (0.75 + 2e-5 * _floats(altitude_m)) * _floats(extraterrestrial_mj)
-    cloud = 1.35 * np.minimum(solar / clear, 1.0) - 0.35
-    fourth = ((_floats(tmax_c) + 273.16) ** 4 + (_floats(tmin_c) + 273.16) ** 4) / 2.0
-    outgoing = STEFAN_BOLTZMANN * fourth * (0.34 - 0.14 * np.sqrt(_floats(vapour_pressure_kpa))) * cloud
-    return np.asarray(0.77 * solar - outgoing)
+    outgoing = net_longwave_mj(
+        tmin_c=tmin_c, tmax_c=tmax_c, vapour_pressure_kpa=vapour_pressure_kpa, relative_solar=solar / clear
+    )
+    return np.asarray((1.0 - ALBEDO) * solar - outgoing)
 
 
 def reference_et_penman_monteith_mm(

@@ -3,29 +3,19 @@
 import numpy as np
 import numpy.typing as npt
 
-from siting.errors import ConfigError
-
 FloatArray = npt.NDArray[np.float64]
 
 
-def catchment_ratio(
-    *,
-    crop_mm: npt.ArrayLike,
-    rain_mm: npt.ArrayLike,
-    runoff_coefficient: npt.ArrayLike,
-    efficiency: npt.ArrayLike,
-) -> FloatArray:
+def mean_capped_ratio(supply_ratio: FloatArray) -> FloatArray:
     """
-    Catchment area over cropped area by the design rule: (CWR - DR) / (DR x K x E), at least 0.
+    Mean over seasons (last axis) of min(1, supply ratio): a flood in one season makes up for no dry one.
 
-    Depths in mm; runoff coefficient K and efficiency E above 0 and at most 1. FAO AGL/MISC/17/91 section 4.2.
+    NaN is not counted; NaN where no season is known.
     """
-    crop, rain = np.asarray(crop_mm, dtype=np.float64), np.asarray(rain_mm, dtype=np.float64)
-    share = np.asarray(runoff_coefficient, dtype=np.float64) * np.asarray(efficiency, dtype=np.float64)
-    if np.any(share <= 0) or np.any(rain <= 0):
-        msg = "the ratio needs rain, runoff coefficient and efficiency above zero"
-        raise ConfigError(msg)
-    return np.asarray(np.maximum((crop - rain) / (rain * share), 0.0))
+    known = ~np.isnan(supply_ratio)
+    total = np.where(known, np.minimum(supply_ratio, 1.0), 0.0).sum(axis=-1)
+    count = known.sum(axis=-1)
+    return np.where(count > 0, total / np.maximum(count, 1), np.nan)
 
 
 def supply_order(
@@ -38,13 +28,33 @@ def supply_order(
     plot_id: npt.NDArray[np.int64],
 ) -> npt.NDArray[np.int64]:
     """
-    Rank plots from 1: by min(1, supply ratio) in the dependable year, then in the median year, then the mean of all
-    seasons, then the gain over rain alone, then the smaller 10-year peak, then the smaller plot_id.
+    Rank plots, the best first.
 
-    An unknown (NaN) ratio comes last within its key; an unknown peak counts as a tie with all others.
-    """  # noqa: D205
-    keys = [_descending(np.minimum(ratio, 1.0)) for ratio in (supply_ratio_dry, supply_ratio_median)]
-    keys += [_descending(supply_ratio_mean), _descending(gain)]
+    The keys, each deciding only where those before tie: the dry, then the median ratio, both at most 1; the
+    mean over seasons; the gain over rain alone; the smaller 10-year peak; the smaller `plot_id`.
+
+    Parameters
+    ----------
+    supply_ratio_dry, supply_ratio_median
+        Ratio reached in 80 % and in 50 % of the plot's own seasons; above 1 counts as 1.
+    supply_ratio_mean
+        Mean over all seasons of the capped ratio, as `mean_capped_ratio` gives it; above 1 counts as 1.
+    gain
+        What run-on adds over rain alone, in any one unit.
+    peak_flow_10y_m3s
+        NaN where unknown; one unknown peak makes all plots tie in it, for no order among the rest could
+        place it.
+    plot_id
+        Different for each plot.
+
+    Returns
+    -------
+    int64 array
+        Rank of each plot, 1 to the number of plots. An unknown (NaN) ratio or gain comes last within its key.
+    """
+    ratios = (supply_ratio_dry, supply_ratio_median, supply_ratio_mean)
+    keys = [_descending(np.minimum(ratio, 1.0)) for ratio in ratios]
+    keys.append(_descending(gain))
     keys.append(np.zeros(plot_id.size) if np.isnan(peak_flow_10y_m3s).any() else peak_flow_10y_m3s)
     order = np.lexsort((plot_id, *reversed(keys)))
     rank = np.empty(plot_id.size, dtype=np.int64)

@@ -21,6 +21,39 @@ def test_saturation_pressure() -> None:
     np.testing.assert_allclose(et.saturation_pressure_kpa([24.5, 15, 18, 25]), [3.075, 1.705, 2.064, 3.168], atol=0.01)
 
 
+def test_vapour_pressure_from_humidity() -> None:
+    # FAO-56 example 3: mean saturation pressure 2.39 kPa; examples 5 and 6: ea 1.70, deficit 0.91 kPa
+    assert float(et.saturation_pressure_kpa([24.5, 15]).mean()) == pytest.approx(2.39, abs=0.01)
+    actual = float(et.vapour_pressure_from_humidity_kpa(tmin_c=18, tmax_c=25, rh_max_pct=82, rh_min_pct=54))
+    assert actual == pytest.approx(1.70, abs=0.01)
+    assert float(et.saturation_pressure_kpa([18, 25]).mean()) - actual == pytest.approx(0.91, abs=0.01)
+
+
+def test_net_radiation() -> None:
+    # FAO-56 examples 11 and 12: long-wave 3.5, short-wave 11.1, net 7.6 MJ/m2/d; Rso 18.8 is 0.75 Ra at sea level
+    day = {"tmin_c": 19.1, "tmax_c": 25.1, "vapour_pressure_kpa": 2.1}
+    assert float(et.net_longwave_mj(**day, relative_solar=14.5 / 18.8)) == pytest.approx(3.5, abs=0.1)
+    net = et.net_radiation_mj(**day, solar_mj=14.5, extraterrestrial_mj=18.8 / 0.75, altitude_m=0)
+    assert float(net) == pytest.approx(7.6, abs=0.1)
+    short_wave = (1 - et.ALBEDO) * 14.5
+    assert short_wave == pytest.approx(11.1, abs=0.1)
+
+
+def test_long_wave_radiation_under_the_densest_cloud_never_turns_round() -> None:
+    # ASCE-EWRI (2005): the ratio is held to 0.3 to 1
+    day = {"tmin_c": 19.1, "tmax_c": 25.1, "vapour_pressure_kpa": 2.1}
+    none, least, most = (float(et.net_longwave_mj(**day, relative_solar=share)) for share in (0.0, 0.3, 1.0))
+    assert none == least > 0
+    assert float(et.net_longwave_mj(**day, relative_solar=1.2)) == most
+    assert least / most == pytest.approx(1.35 * 0.3 - 0.35)
+
+
+def test_solar_declination_and_sunset() -> None:
+    # FAO-56 example 8: declination 0.120 rad, sunset 1.527 rad
+    assert float(et.solar_declination_rad(246)) == pytest.approx(0.120, abs=0.001)
+    assert float(et.sunset_angle_rad(-20, 246)) == pytest.approx(1.527, abs=0.001)
+
+
 def test_extraterrestrial_radiation_and_daylight() -> None:
     # FAO-56 examples 8 and 9: 20 S, 3 September
     assert float(demand.extraterrestrial_radiation_mj(-20, 246)) == pytest.approx(32.2, abs=0.1)
@@ -34,8 +67,10 @@ def test_solar_radiation_from_temperature() -> None:
 
 
 def test_penman_monteith_month_of_bangkok() -> None:
-    # FAO-56 example 17: 13 44 N, 2 m, April; soil heat 0.14; 5.72 mm/d
+    # FAO-56 example 17: 13 44 N, 2 m, April; soil heat 0.14; 5.72 mm/d; psychrometric constant 0.0674
     outer = 38.06
+    assert float(demand.extraterrestrial_radiation_mj(13 + 44 / 60, 105)) == pytest.approx(outer, abs=0.05)
+    assert float(et.psychrometric_constant_kpa(2)) == pytest.approx(0.0674, abs=0.0001)
     solar = et.solar_radiation_mj(sunshine_h=8.5, possible_h=et.daylight_h(13 + 44 / 60, 105), extraterrestrial_mj=outer)
     assert float(solar) == pytest.approx(22.65, abs=0.05)
     net = et.net_radiation_mj(
@@ -116,12 +151,20 @@ def test_adjusted_coefficient_follows_wind_and_humidity() -> None:
     # FAO-56 eq. 62 by hand: 1.2 + (0.04 x 2 - 0.004 x (-15)) x (2/3)^0.3; an end below 0.45 stays
     got = demand.adjusted_coefficient([1.2, 0.35], wind_2m_m_s=4, rh_min_pct=30, height_m=2)
     np.testing.assert_allclose(got, [1.2 + 0.14 * (2 / 3) ** 0.3, 0.35])
+    # the printed ranges hold: 9 m/s counts as 6, 5 % as 20 %
+    beyond = demand.adjusted_coefficient(1.2, wind_2m_m_s=9, rh_min_pct=5, height_m=2)
+    assert float(beyond) == pytest.approx(1.2 + 0.26 * (2 / 3) ** 0.3)
 
 
 def test_available_water_of_three_soils() -> None:
     # FAO-56 example 36: tomato, 0.8 m
     got = demand.available_water_mm(field_capacity=[0.15, 0.32, 0.35], wilting_point=[0.06, 0.15, 0.23], root_depth_m=0.8)
     np.testing.assert_allclose(got, [72, 136, 96], atol=0.5)
+    # readily available at p 0.40: 29, 54, 38 mm; there the stress begins
+    readily = np.array([29, 54, 38])
+    np.testing.assert_allclose(0.40 * got, readily, atol=0.5)
+    np.testing.assert_array_equal(demand.stress_coefficient(available_mm=got, depletion_mm=0.40 * got, fraction=0.4), 1.0)
+    assert (demand.stress_coefficient(available_mm=got, depletion_mm=0.41 * got, fraction=0.4) < 1.0).all()
 
 
 def test_depletion_fraction_follows_demand() -> None:
@@ -134,6 +177,20 @@ def test_stress_coefficient() -> None:
     # FAO-56 eq. 84: TAW 100, p 0.35
     got = demand.stress_coefficient(available_mm=100, depletion_mm=[20, 67.5, 100], fraction=0.35)
     np.testing.assert_allclose(got, [1.0, 0.5, 0.0])
+
+
+def test_soil_without_water_stresses_and_unknown_soil_stays_unknown() -> None:
+    got = demand.stress_coefficient(available_mm=[0.0, np.nan], depletion_mm=0.0, fraction=0.5)
+    np.testing.assert_array_equal(got, [0.0, np.nan])
+    with pytest.raises(ConfigError, match="depletion fraction 1:"):
+        demand.stress_coefficient(available_mm=100, depletion_mm=0, fraction=1.0)
+
+
+def test_stages_and_coefficients_that_cannot_be_are_refused() -> None:
+    with pytest.raises(ConfigError, match="none may be below zero"):
+        demand.daily_coefficients(stage_days=(20, -1, 45, 30), kc=(0.3, 1.05, 0.55))
+    with pytest.raises(ConfigError, match="between 0 and 2"):
+        demand.daily_coefficients(stage_days=(20, 35, 45, 30), kc=(30, 105, 55))
 
 
 def test_yield_response() -> None:

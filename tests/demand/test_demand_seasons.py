@@ -59,17 +59,38 @@ def test_a_storm_moved_past_the_harvest_takes_its_stored_water_away() -> None:
     moved = worked({25: STORMS[-4], 8: STORMS[8], 13: STORMS[13]})
     fall = worked(STORMS).supply_mm[0, YEAR] - moved.supply_mm[0, YEAR]
     assert fall == pytest.approx(0.65 * 24.7275, rel=1e-5)
+    # nothing else moves: the 18 mm that fell with it were in neither season's rain
+    for name in ("demand_mm", "rain_mm", "usable_in_season_mm", "needed_ratio"):
+        assert getattr(moved, name)[0, YEAR] == getattr(worked(STORMS), name)[0, YEAR]
+    # the season after has it in store
+    assert moved.usable_before_mm[0, YEAR + 1] == pytest.approx(24.7275, rel=1e-5)
 
 
 def test_a_season_without_run_on_has_no_needed_ratio() -> None:
     dry = worked({8: (30.0, 0.0)})
     assert np.isnan(dry.needed_ratio[0, YEAR])
+    assert dry.lacks_runon[0, YEAR]
+    assert not worked(STORMS).lacks_runon[0, YEAR]
     assert worked({8: (200.0, 0.0)}).needed_ratio[0, YEAR] == 0.0  # rain alone suffices
 
 
 def test_doubling_the_plot_halves_the_depth_of_run_on() -> None:
     one, two = worked(STORMS), worked(STORMS, area_m2=4800.0)
     np.testing.assert_allclose(two.runon_mm, one.runon_mm / 2)
+
+
+@given(area=st.floats(100, 50_000), factor=st.floats(1, 20))
+def test_a_larger_plot_never_has_a_deeper_run_on(area: float, factor: float) -> None:
+    small, large = worked(STORMS, area_m2=area), worked(STORMS, area_m2=area * factor)
+    for name in ("runon_mm", "usable_in_season_mm", "usable_before_mm", "supply_mm"):
+        assert np.all(getattr(large, name) <= getattr(small, name) * (1 + 1e-12))
+
+
+@given(volume=st.floats(0, 1e6), day=st.integers(-300, 19))
+def test_supply_never_counts_more_run_on_than_arrived_or_soil_holds(volume: float, day: int) -> None:
+    got = worked({day: (0.0, volume)})
+    used = got.supply_mm[0, YEAR] - got.rain_mm[0, YEAR]
+    assert used <= 0.65 * min(1000 * volume / 2400, 78.0) + 1e-9
 
 
 @given(day=st.integers(-300, 19), rain=st.floats(0, 60), volume=st.floats(0, 500))
@@ -97,3 +118,13 @@ def test_a_day_that_most_years_lack_is_refused() -> None:
 def test_a_record_without_a_whole_season_is_refused() -> None:
     with pytest.raises(InputError, match="holds no complete season sown on 06-01"):
         demand.season_days(DAYS[:300], planting=(6, 1), season_length_days=120)
+
+
+def test_planting_on_new_years_day_and_the_day_before() -> None:
+    first = demand.season_days(DAYS, planting=(1, 1), season_length_days=100)
+    assert first.label.tolist() == [2002, 2003]  # that of 2001, sown on day one, has no harvest before it in the record
+    assert str(first.sown[0]) == "2002-01-01"
+    last = demand.season_days(DAYS, planting=(12, 31), season_length_days=365)
+    assert last.label.tolist() == [2001, 2002]  # 2002 ends on the last day of the record
+    np.testing.assert_array_equal(last.first, last.sowing)  # sown the day after the harvest: no fallow
+    assert last.end[-1] == DAYS.size

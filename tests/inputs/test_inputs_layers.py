@@ -180,26 +180,40 @@ def weather(path: Path, header: str, row: str) -> Path:
     return path
 
 
-def test_weather_comes_on_the_days_of_the_rain(tmp_path: Path) -> None:
-    path = weather(tmp_path / "c.csv", "date,tmin_c,tmax_c,comment", "5,20,x")
-    later = DAYS + 8
-    got = inputs.read_climate(path, later)
-    assert set(got) == {"tmin_c", "tmax_c"}
-    assert got["tmax_c"][:2].tolist() == [20.0, 20.0] and np.isnan(got["tmax_c"][2:]).all()
+def test_weather_is_read_by_the_names_of_its_columns(tmp_path: Path) -> None:
+    path = weather(tmp_path / "c.csv", "date,TMin_C , tmax_c,comment", "5,20,x")
+    path.write_text(path.read_text(encoding="utf-8") + "\n2001-01-11,5,-,x", encoding="utf-8")
+    got = inputs.read_climate(path)
+    np.testing.assert_array_equal(got.days[:10], DAYS)
+    assert got.series("tmin_c").tolist() == [5.0] * 11
+    assert got.series("tmax_c")[:10].tolist() == [20.0] * 10
+    assert np.isnan(got.series("tmax_c")[10])  # a mark for missing is unknown
+    assert got.et0_mm is None and np.isnan(got.series("et0_mm")).all()
+
+
+def test_weather_in_any_order_and_with_holes_is_sorted(tmp_path: Path) -> None:
+    path = tmp_path / "c.csv"
+    path.write_text("date,et0_mm\n2001-02-01,4.5\n2001-01-03,3.5\n", encoding="utf-8")
+    got = inputs.read_climate(path)
+    assert got.days.astype(str).tolist() == ["2001-01-03", "2001-02-01"]
+    assert got.series("et0_mm").tolist() == [3.5, 4.5]
 
 
 def test_weather_that_cannot_be_right_is_refused(tmp_path: Path) -> None:
     cases = {
-        "not in -50 to 60": ("date,tmax_c", "95"),
-        "tmin_c above tmax_c on 2001-01-01": ("date,tmin_c,tmax_c", "20,5"),
-        "has none of the columns tmin_c": ("date,temperature", "20"),
+        "tmax_c is 95 deg C on 2001-01-01, outside -90 to 60": ("date,tmax_c", "95"),
+        "on 2001-01-01 tmin_c 20 exceeds tmax_c 5": ("date,tmin_c,tmax_c", "20,5"),
+        "has none of the columns et0_mm, tmin_c": ("date,temperature", "20"),
     }
     for message, (header, row) in cases.items():
         path = weather(tmp_path / "c.csv", header, row)
         with pytest.raises(InputError, match=message):
-            inputs.read_climate(path, DAYS)
-    path = weather(tmp_path / "c.csv", "date,tmin_c", "5")
-    assert "shares no day with the rain record" in refused(lambda: inputs.read_climate(path, DAYS + 400))
+            inputs.read_climate(path)
+    twice = tmp_path / "twice.csv"
+    twice.write_text("date,tmin_c\n2001-01-03,5\n2001-01-02,4\n2001-01-03,6\n", encoding="utf-8")
+    assert "2001-01-03 twice or out of order" in refused(lambda: inputs.read_climate(twice))
+    same = weather(tmp_path / "same.csv", "date,tmin_c,TMIN_C", "5,6")
+    assert "the column tmin_c twice" in refused(lambda: inputs.read_climate(same))
 
 
 def test_a_checksum_is_that_of_the_bytes(tmp_path: Path) -> None:
