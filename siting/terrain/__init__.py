@@ -2,6 +2,7 @@
 
 from siting.terrain.analyse import Terrain, analyse
 from siting.terrain.area import accumulate, multiple_flow_area
+from siting.terrain.channel_lines import ChannelLines, channel_lines
 from siting.terrain.channels import channel_cells, height_above_channel_m, landscape_position
 from siting.terrain.condition import Conditioned, condition
 from siting.terrain.downstream import any_above, first_below, flow_path, highest_above
@@ -11,6 +12,7 @@ from siting.terrain.pans import Pans, find_pans
 from siting.terrain.surface import profile_curvature, slope, wetness_index
 
 __all__ = [
+    "ChannelLines",
     "Conditioned",
     "Pans",
     "Terrain",
@@ -18,6 +20,7 @@ __all__ = [
     "analyse",
     "any_above",
     "channel_cells",
+    "channel_lines",
     "condition",
     "enclosed_voids",
     "find_pans",
