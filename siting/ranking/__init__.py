@@ -2,16 +2,23 @@
 
 from siting.ranking.exceedance import dependable, exceedance, plotting_position, return_period_years
 from siting.ranking.ratio import SufficientRatio, catchment_ratio, sufficient_ratio
+from siting.ranking.reliability import Reliability, reliability, wilson_interval
 from siting.ranking.supply import mean_capped_ratio, supply_order
+from siting.ranking.supported_area import SupportedArea, supported_area
 
 __all__ = [
+    "Reliability",
     "SufficientRatio",
+    "SupportedArea",
     "catchment_ratio",
     "dependable",
     "exceedance",
     "mean_capped_ratio",
     "plotting_position",
+    "reliability",
     "return_period_years",
     "sufficient_ratio",
     "supply_order",
+    "supported_area",
+    "wilson_interval",
 ]
