@@ -205,6 +205,27 @@ def write_day(row: Array, growing: bool, loss: Loss, intake: Intake, after: Wate
 
 
 @kernel
+def note_day(
+    sums: Array,
+    number: int,
+    trace: Array,
+    day: int,
+    growing: bool,
+    rain: float,
+    runon: float,
+    loss: Loss,
+    intake: Intake,
+    before: Water,
+    after: Water,
+) -> None:
+    """Note a day in the sums of its period and in the trace, where there are any."""
+    if number >= 0:
+        add_day(sums[number], rain, runon, loss, intake, before, after)
+    if trace.shape[0] > 0:
+        write_day(trace[day], growing, loss, intake, after)
+
+
+@kernel
 def run_season(
     water: Water,
     soil: Soil,
@@ -247,13 +268,10 @@ def run_season(
         else:
             loss = bare_day(water, soil, et0[day])
         water, intake = receive(water, soil, loss, arrival[day])
-        runon += arrival[day] - rain[day]
-        overflow += intake.overflow
-        percolation += intake.percolation
-        if record and period[day] >= 0:
-            add_day(sums[period[day]], rain[day], arrival[day] - rain[day], loss, intake, before, water)
-        if record and trace.shape[0] > 0:
-            write_day(trace[day], growing, loss, intake, water)
+        from_above = arrival[day] - rain[day]
+        runon, overflow, percolation = runon + from_above, overflow + intake.overflow, percolation + intake.percolation
+        if record:
+            note_day(sums, period[day], trace, day, growing, rain[day], from_above, loss, intake, before, water)
         if growing:
             used += loss.used
             needed += loss.needed
