@@ -1,5 +1,6 @@
 """A DEM of any raster format, brought to metres on its own grid, or refused with the way out."""
 
+import warnings
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -9,7 +10,8 @@ import numpy.typing as npt
 import rasterio
 from affine import Affine
 from pyproj import CRS
-from rasterio.errors import RasterioError, RasterioIOError
+from rasterio.enums import ColorInterp
+from rasterio.errors import NotGeoreferencedWarning, RasterioError, RasterioIOError
 
 from siting.errors import InputError
 from siting.grid import Grid, Raster
@@ -21,15 +23,23 @@ LOWEST_M, HIGHEST_M = -500.0, 9000.0
 """Heights beyond are no ground: an undeclared nodata value, usually."""
 
 SUSPECTS = (-9999.0, -99999.0, -32768.0, 32767.0, -32767.0, 65535.0)
-"""Values that stand for nodata in undeclared files (common practice)."""
+"""Stored values that stand for nodata in undeclared files (common practice)."""
+
+SUSPECT_ALONE = 0.01
+"""A suspect is taken for nodata where no other stored value comes this near to it, as a share of it (assumption)."""
+
+PICTURE = (ColorInterp.red, ColorInterp.green, ColorInterp.blue, ColorInterp.palette)
+"""Bands that hold colours, not heights."""
 
 
 @dataclass(frozen=True, slots=True)
 class _Band:
-    """One band as read: values, where they hold, and what the file says of them."""
+    """One band as stored: values, where they hold, and what the file says of them."""
 
-    values: npt.NDArray[np.float64]
+    stored: npt.NDArray[Any]
     valid: npt.NDArray[np.bool_]
+    scale: float
+    offset: float
     unit_text: str
     transform: Affine
     crs: CRS | None
@@ -65,20 +75,21 @@ def read_dem(
     """
     found = _read(path, band)
     system = _crs_of(path, found.crs, crs, notes)
-    values, valid, transform = _north_up(path, found, notes)
+    stored, valid, transform = _north_up(path, found, notes)
     if found.point:
         notes.assume("dem.pixel_is_point", "yes", "", "declared in the file", "half a cell; the reader has moved the grid")
-    unit = _unit(found, system, elevation_unit, notes)
-    heights = np.where(valid, values * metres_per_unit(unit), np.nan)
-    _check_heights(path, heights, values, valid)
+    unit = _unit(path, found, system, elevation_unit, notes)
+    heights = (stored.astype(np.float64) * found.scale + found.offset) * metres_per_unit(unit)
+    heights[~valid] = np.nan
+    _check_heights(path, heights, stored, valid)
     if np.nanmin(heights) == np.nanmax(heights):
         notes.warn(
             "flat_dem", f"The DEM {path.name} is level, {np.nanmin(heights):g} m everywhere: no flow can be told from it."
         )
-    width, height = row_metrics(transform, values.shape, system)
+    width, height = row_metrics(transform, heights.shape, system)
     grid = Grid(
-        values.shape[0],
-        values.shape[1],
+        heights.shape[0],
+        heights.shape[1],
         (transform.a, 0.0, transform.c, 0.0, transform.e, transform.f),
         system.to_wkt(),
         width,
@@ -92,24 +103,36 @@ def _read(path: Path, band: int) -> _Band:
         msg = f"the DEM {path.name} does not exist; give the path of a raster file in place.dem"
         raise InputError(msg)
     try:
-        with rasterio.open(path) as file:
-            if not 1 <= band <= file.count:
-                msg = f"the DEM {path.name} has {file.count} bands, not {band}; give one of them"
-                raise InputError(msg)
-            raw = file.read(band)
-            valid = file.read_masks(band) > 0
-            values = raw.astype(np.float64)
-            valid &= np.isfinite(values)
-            values = values * float(file.scales[band - 1]) + float(file.offsets[band - 1])
-            crs = CRS.from_user_input(file.crs) if file.crs else None
-            point = file.tags().get("AREA_OR_POINT", "").lower() == "point"
-            return _Band(values, valid, file.units[band - 1] or "", file.transform, crs, point)
+        with warnings.catch_warnings():
+            warnings.simplefilter("ignore", NotGeoreferencedWarning)  # a file without position is refused in our words
+            with rasterio.open(path) as file:
+                return _band(path, file, band)
     except RasterioIOError as error:
         msg = f"the DEM {path.name} cannot be read as a raster ({_first_line(error)}); check that it is whole"
         raise InputError(msg) from error
     except RasterioError as error:
         msg = f"the DEM {path.name} cannot be read ({_first_line(error)}); convert it to GeoTIFF"
         raise InputError(msg) from error
+
+
+def _band(path: Path, file: Any, band: int) -> _Band:
+    if not 1 <= band <= file.count:
+        msg = f"the DEM {path.name} has {file.count} bands, not {band}; give one of them"
+        raise InputError(msg)
+    if file.colorinterp[band - 1] in PICTURE:
+        msg = f"the DEM {path.name} holds colours ({file.colorinterp[band - 1].name}) in band {band}; give a file of heights"
+        raise InputError(msg)
+    stored = file.read(band)
+    return _Band(
+        stored=stored,
+        valid=(file.read_masks(band) > 0) & np.isfinite(stored),
+        scale=float(file.scales[band - 1]),
+        offset=float(file.offsets[band - 1]),
+        unit_text=file.units[band - 1] or "",
+        transform=file.transform,
+        crs=CRS.from_user_input(file.crs) if file.crs else None,
+        point=file.tags().get("AREA_OR_POINT", "").lower() == "point",
+    )
 
 
 def _first_line(error: Exception) -> str:
@@ -136,8 +159,14 @@ def _crs_of(path: Path, found: CRS | None, given: str | None, notes: Notes) -> C
 
 
 def _north_up(path: Path, found: _Band, notes: Notes) -> tuple[npt.NDArray[Any], npt.NDArray[np.bool_], Affine]:
-    """Turn a south-up file over; refuse a rotated or mirrored one."""
+    """Turn a south-up file over; refuse a rotated or mirrored one, and one without a place."""
     t = found.transform
+    if t == Affine.identity():
+        msg = (
+            f"the DEM {path.name} has no position on the ground; set its corners with "
+            f"`gdal_edit.py -a_ullr WEST NORTH EAST SOUTH {path.name}` or give a georeferenced file"
+        )
+        raise InputError(msg)
     if t.b != 0 or t.d != 0 or t.a <= 0:
         msg = (
             f"the DEM {path.name} is rotated, sheared or mirrored; mend it with "
@@ -145,17 +174,17 @@ def _north_up(path: Path, found: _Band, notes: Notes) -> tuple[npt.NDArray[Any],
         )
         raise InputError(msg)
     if t.e < 0:
-        return found.values, found.valid, t
-    if found.crs is None and t == Affine.identity():
-        msg = f"the DEM {path.name} has no position on the ground; give a georeferenced file"
-        raise InputError(msg)
+        return found.stored, found.valid, t
     notes.assume("dem.south_up", "turned", "", "the file's row step is positive", "rows now run north to south")
-    rows = found.values.shape[0]
+    rows = found.stored.shape[0]
     turned = Affine(t.a, 0.0, t.c, 0.0, -t.e, t.f + rows * t.e)
-    return found.values[::-1], found.valid[::-1], turned
+    return found.stored[::-1], found.valid[::-1], turned
 
 
-def _unit(found: _Band, system: CRS, given: str | None, notes: Notes) -> str:
+def _unit(path: Path, found: _Band, system: CRS, given: str | None, notes: Notes) -> str:
+    if any(axis.direction == "down" for axis in system.axis_info):
+        msg = f"the DEM {path.name} holds depths ({system.name}), not heights; turn their sign and give a height CRS"
+        raise InputError(msg)
     if given is not None:
         return unit_from_text(given, "place.elevation_unit")
     if found.unit_text:
@@ -170,23 +199,39 @@ def _unit(found: _Band, system: CRS, given: str | None, notes: Notes) -> str:
 def _check_heights(
     path: Path,
     heights: npt.NDArray[np.float64],
-    values: npt.NDArray[Any],
+    stored: npt.NDArray[Any],
     valid: npt.NDArray[np.bool_],
 ) -> None:
     if not valid.any():
         msg = f"the DEM {path.name} holds no height: all {valid.size} cells are nodata; give another file"
         raise InputError(msg)
-    if valid.sum() == 1 or min(valid.shape) == 1:
+    if min(valid.shape) == 1:
         msg = f"the DEM {path.name} has {valid.shape[0]} x {valid.shape[1]} cells; it must have 2 rows and columns at least"
         raise InputError(msg)
-    wrong = valid & ((heights < LOWEST_M) | (heights > HIGHEST_M))
-    for suspect in SUSPECTS:
-        wrong |= valid & (values == suspect)
-    if wrong.any():
-        row, col = (int(place) for place in np.argwhere(wrong)[0])
+    if valid.sum() == 1:
+        msg = f"the DEM {path.name} has 1 cell that is not nodata; give a DEM of the whole place"
+        raise InputError(msg)
+    with np.errstate(invalid="ignore"):
+        wrong = (heights < LOWEST_M) | (heights > HIGHEST_M)
+    nodata_like = wrong | _suspects(stored, valid)
+    if nodata_like.any():
+        row, col = (int(place) for place in np.argwhere(nodata_like)[0])
+        what = f"outside {LOWEST_M:g} to {HIGHEST_M:g} m" if wrong.any() else "that look like nodata"
         msg = (
-            f"the DEM {path.name} has {int(wrong.sum())} cells outside {LOWEST_M:g} to {HIGHEST_M:g} m, the first "
-            f"{values[row, col]:g} at row {row}, column {col}; if that means nodata, declare it with "
-            f"`gdal_edit.py -a_nodata {values[row, col]:g} {path.name}`, else correct the unit in place.elevation_unit"
+            f"the DEM {path.name} has {int(nodata_like.sum())} cells {what}, the first "
+            f"{stored[row, col]:g} at row {row}, column {col}; if that means nodata, declare it with "
+            f"`gdal_edit.py -a_nodata {stored[row, col]:.17g} {path.name}`, else correct the unit in place.elevation_unit"
         )
         raise InputError(msg)
+
+
+def _suspects(stored: npt.NDArray[Any], valid: npt.NDArray[np.bool_]) -> npt.NDArray[np.bool_]:
+    """Mark cells of a value that stands for nodata by custom, where no ground is near that value."""
+    marked = np.zeros(valid.shape, dtype=np.bool_)
+    for suspect in SUSPECTS:
+        hit = valid & (stored == suspect)
+        if hit.any():
+            near = np.abs(stored.astype(np.float64) - suspect) <= SUSPECT_ALONE * abs(suspect)
+            if not (valid & near & ~hit).any():
+                marked |= hit
+    return marked

@@ -11,7 +11,7 @@ from affine import Affine
 from pyproj import CRS, Geod
 
 from siting.errors import InputError
-from siting.inputs import read_dem, read_rain
+from siting.inputs import read_dem
 from siting.inputs.georeference import row_metrics
 from siting.notes import Notes
 from siting.terrain import accumulate, condition
@@ -127,10 +127,110 @@ def test_scale_and_declared_nodata_are_applied(tmp_path: Path) -> None:
     assert got[0, 0] == pytest.approx(130.0)
 
 
-def test_infinite_cells_are_missing(tmp_path: Path) -> None:
+def test_a_scaled_and_shifted_band_gives_its_heights(tmp_path: Path) -> None:
+    # stored 0 to 2900 as 0.01 m above 101 m
+    stored = np.round((slope_south() - 101.0) * 100).astype(np.uint16)
+    path = write(tmp_path / "shifted.tif", stored)
+    with rasterio.open(path, "r+") as file:
+        file.scales, file.offsets = (0.01,), (101.0,)
+    np.testing.assert_allclose(read_dem(path, notes=Notes()).values, slope_south(), rtol=1e-6)
+
+
+@pytest.mark.parametrize("value", [np.inf, -np.inf, np.nan])
+def test_infinite_cells_are_missing(tmp_path: Path, value: float) -> None:
     values = slope_south()
-    values[2, 2] = np.inf
-    assert np.isnan(read_dem(write(tmp_path / "inf.tif", values), notes=Notes()).values[2, 2])
+    values[2, 2] = value
+    got = read_dem(write(tmp_path / "inf.tif", values), notes=Notes()).values
+    assert np.argwhere(np.isnan(got)).tolist() == [[2, 2]]
+
+
+def test_cells_behind_a_mask_band_are_missing(tmp_path: Path) -> None:
+    path = write(tmp_path / "masked.tif", slope_south())
+    shown = np.full((30, 20), 255, dtype=np.uint8)
+    shown[4:6, 7] = 0
+    with rasterio.open(path, "r+") as file:
+        file.write_mask(shown)
+    got = read_dem(path, notes=Notes()).values
+    assert np.argwhere(np.isnan(got)).tolist() == [[4, 7], [5, 7]]
+    assert got[0, 0] == 130.0
+
+
+def mosaic(folder: Path, names: tuple[str, ...]) -> Path:
+    """Lay tiles of 30 x 20 cells side by side, with a gap of 5 columns between, by a VRT written by hand."""
+    crs = CRS.from_epsg(32636).to_wkt("WKT1_GDAL").replace('"', "&quot;")
+    sources = "".join(
+        f'<ComplexSource><SourceFilename relativeToVRT="1">{name}</SourceFilename><SourceBand>1</SourceBand>'
+        f'<SrcRect xOff="0" yOff="0" xSize="20" ySize="30"/><DstRect xOff="{25 * place}" yOff="0" xSize="20" ySize="30"/>'
+        "<NODATA>-1</NODATA></ComplexSource>"
+        for place, name in enumerate(names)
+    )
+    path = folder / "tiles.vrt"
+    path.write_text(
+        f'<VRTDataset rasterXSize="{25 * len(names) - 5}" rasterYSize="30"><SRS>{crs}</SRS>'
+        "<GeoTransform>700000, 10, 0, 3400000, 0, -10</GeoTransform>"
+        f'<VRTRasterBand dataType="Float32" band="1"><NoDataValue>-1</NoDataValue>{sources}</VRTRasterBand></VRTDataset>',
+        encoding="utf-8",
+    )
+    return path
+
+
+def test_a_mosaic_of_tiles_is_one_dem_with_a_gap(tmp_path: Path) -> None:
+    for name, above in (("west.tif", 0.0), ("east.tif", 5.0)):
+        write(tmp_path / name, slope_south() + np.float32(above), nodata=-1)
+    dem = read_dem(mosaic(tmp_path, ("west.tif", "east.tif")), notes=Notes())
+    assert dem.grid.shape == (30, 45)
+    np.testing.assert_array_equal(dem.values[:, :20], slope_south())
+    np.testing.assert_array_equal(dem.values[:, 25:], slope_south() + 5)
+    assert np.isnan(dem.values[:, 20:25]).all()
+    assert dem.grid.xy(0, 0) == (700_005.0, 3_399_995.0)
+
+
+def test_a_mosaic_whose_tile_is_gone_is_refused(tmp_path: Path) -> None:
+    write(tmp_path / "west.tif", slope_south(), nodata=-1)
+    assert "cannot be read" in refused(mosaic(tmp_path, ("west.tif", "lost.tif")))
+
+
+def test_heights_at_points_lie_at_the_centres_of_their_cells(tmp_path: Path) -> None:
+    # GeoTIFF 1.1, 7.1.2: under RasterPixelIsPoint the tie point of pixel (0, 0) is that sample itself. The setting
+    # makes the writer store the tie point as given, so the file says: the first height stands at 700000, 3400000
+    with rasterio.Env(GTIFF_POINT_GEO_IGNORE=True):
+        path = write(tmp_path / "points.tif", slope_south())
+        with rasterio.open(path, "r+") as file:
+            file.update_tags(AREA_OR_POINT="Point")
+    notes = Notes()
+    dem = read_dem(path, notes=notes)
+    assert dem.grid.xy(0, 0) == (700_000.0, 3_400_000.0)
+    assert "dem.pixel_is_point" in ids(notes)
+
+
+@pytest.mark.parametrize(
+    ("crs", "metres"),
+    [
+        ("EPSG:32636+5773", 1.0),  # EGM96 height
+        ("EPSG:32636+8228", 0.3048),  # NAVD88 height (ft)
+        ("EPSG:32636+6360", 1200 / 3937),  # NAVD88 height (ftUS)
+    ],
+)
+def test_the_vertical_crs_gives_the_unit_and_leaves_the_cells_alone(tmp_path: Path, crs: str, metres: float) -> None:
+    notes = Notes()
+    dem = read_dem(write(tmp_path / "compound.tif", slope_south(), crs=crs), notes=notes)
+    np.testing.assert_allclose(dem.values, slope_south() * metres, rtol=3e-7)  # the two feet differ by 2e-6
+    assert ids(notes) == []
+    np.testing.assert_allclose(dem.grid.cell_width_m, 10.0, rtol=1e-3)
+    given = read_dem(write(tmp_path / "plain.tif", slope_south()), crs=crs, notes=Notes())
+    np.testing.assert_array_equal(given.values, dem.values)
+
+
+def test_the_two_feet_are_told_apart(tmp_path: Path) -> None:
+    # 2 parts in a million: 6 mm at 3000 m
+    path = write(tmp_path / "high.tif", slope_south() + np.float32(9870))
+    heights = [read_dem(path, elevation_unit=unit, notes=Notes()).values for unit in ("us_survey_foot", "foot")]
+    np.testing.assert_allclose((heights[0] - heights[1])[0], 10_000 * (1200 / 3937 - 0.3048), atol=3e-4)
+
+
+def test_depths_are_refused(tmp_path: Path) -> None:
+    path = write(tmp_path / "depths.tif", slope_south(), crs="EPSG:32636+5706")
+    assert "holds depths (WGS 84 / UTM zone 36N + Caspian depth)" in refused(path)
 
 
 def refused(path: Path, **settings: Any) -> str:
@@ -139,16 +239,62 @@ def refused(path: Path, **settings: Any) -> str:
     return str(caught.value)
 
 
-def test_an_undeclared_nodata_value_is_refused_with_its_place(tmp_path: Path) -> None:
+@pytest.mark.parametrize("value", [-9999, -32768, 32767, -3.4e38])
+def test_an_undeclared_nodata_value_is_refused_with_its_place(tmp_path: Path, value: float) -> None:
     values = slope_south()
-    values[5, 6] = -9999
+    values[5, 6] = value
     text = refused(write(tmp_path / "hole.tif", values))
-    assert "1 cells" in text and "row 5, column 6" in text and "gdal_edit.py -a_nodata -9999" in text
+    assert "1 cells outside -500 to 9000 m" in text and "row 5, column 6" in text
+    assert f"gdal_edit.py -a_nodata {np.float32(value):.17g} hole.tif" in text  # to the last digit, or it would not match
 
 
-def test_a_rotated_grid_is_refused_with_the_command_that_mends_it(tmp_path: Path) -> None:
-    turned = Affine(10, 2, 7e5, 2, -10, 3.4e6)
-    assert "gdalwarp" in refused(write(tmp_path / "turned.tif", slope_south(), transform=turned))
+@pytest.mark.parametrize(("dtype", "value"), [("int16", -9999), ("int16", -32768), ("int16", 32767), ("uint16", 65535)])
+def test_an_undeclared_nodata_value_is_found_behind_a_scale(tmp_path: Path, dtype: str, value: int) -> None:
+    # scaled by 0.01 each of these could pass for a height between -500 and 9000 m
+    stored = (slope_south() * 100).astype(dtype)
+    stored[5, 6:8] = value
+    path = write(tmp_path / "hole.tif", stored)
+    with rasterio.open(path, "r+") as file:
+        file.scales = (0.01,)
+    assert f"2 cells that look like nodata, the first {value} at row 5, column 6" in refused(path)
+
+
+def test_ground_that_happens_to_hold_such_a_value_is_taken(tmp_path: Path) -> None:
+    # a shore below the sea in centimetres, from -99.5 m to -100.5 m: -9999 is a height like its neighbours
+    stored = np.linspace(-9950, -10_050, 101).astype(np.int32)[:, None].repeat(9, axis=1)
+    dem = read_dem(write(tmp_path / "shore.tif", stored), elevation_unit="centimetre", notes=Notes())
+    assert float(dem.values[49, 0]) == pytest.approx(-99.99)
+    assert np.isfinite(dem.values).all()
+
+
+@pytest.mark.parametrize(
+    "turned",
+    [
+        Affine(10, 2, 7e5, 2, -10, 3.4e6),  # rotated
+        Affine(10, 2, 7e5, 0, -10, 3.4e6),  # sheared
+        Affine(-10, 0, 7e5, 0, -10, 3.4e6),  # mirrored
+    ],
+)
+def test_a_turned_grid_is_refused_with_the_command_that_mends_it(tmp_path: Path, turned: Affine) -> None:
+    text = refused(write(tmp_path / "turned.tif", slope_south(), transform=turned))
+    assert "`gdalwarp -r bilinear turned.tif upright.tif`" in text
+
+
+@pytest.mark.filterwarnings("ignore:The given matrix is equal to Affine.identity")
+def test_a_file_without_position_is_refused_whatever_its_crs(tmp_path: Path) -> None:
+    path = write(tmp_path / "nowhere.tif", slope_south(), transform=Affine.identity())
+    assert "has no position on the ground; set its corners with `gdal_edit.py -a_ullr" in refused(path)
+    bare = write(tmp_path / "bare.tif", slope_south(), transform=Affine.identity(), crs=None)
+    assert "has no position on the ground" in refused(bare, crs="EPSG:32636")
+
+
+def test_a_picture_is_refused(tmp_path: Path) -> None:
+    path = tmp_path / "shaded.tif"
+    place = {"crs": "EPSG:32636", "transform": Affine(10, 0, 7e5, 0, -10, 3.4e6)}
+    with rasterio.open(path, "w", driver="GTiff", count=3, height=4, width=5, dtype="uint8", **place) as file:
+        file.write(np.arange(60, dtype=np.uint8).reshape(3, 4, 5))
+    assert "shaded.tif holds colours (green) in band 2; give a file of heights" in refused(path, band=2)
+    assert "has 3 bands, not 4" in refused(path, band=4)
 
 
 def test_bad_files_are_refused(tmp_path: Path) -> None:
@@ -165,7 +311,12 @@ def test_bad_files_are_refused(tmp_path: Path) -> None:
     assert "cut.tif cannot be read" in refused(cut)
     nothing = write(tmp_path / "nothing.tif", np.full((5, 5), np.nan, dtype=np.float32), nodata=np.nan)
     assert "holds no height: all 25 cells are nodata" in refused(nothing)
-    assert "1 x 1 cells" in refused(write(tmp_path / "one.tif", np.ones((1, 1), dtype=np.float32)))
+    for shape in ((1, 1), (1, 9), (9, 1)):
+        path = write(tmp_path / "thin.tif", np.ones(shape, dtype=np.float32))
+        assert f"{shape[0]} x {shape[1]} cells; it must have 2 rows and columns at least" in refused(path)
+    one = np.full((3, 3), -1, dtype=np.float32)
+    one[1, 1] = 5.0
+    assert "has 1 cell that is not nodata" in refused(write(tmp_path / "one.tif", one, nodata=-1))
 
 
 def test_a_wrong_crs_or_unit_is_refused(tmp_path: Path) -> None:
@@ -173,66 +324,6 @@ def test_a_wrong_crs_or_unit_is_refused(tmp_path: Path) -> None:
     assert "no known CRS" in refused(path, crs="EPSG:nonsense")
     assert "outside the range" in refused(path, crs="EPSG:4326")
     assert "no unit of length" in refused(path, elevation_unit="cubits")
-
-
-def rain_file(folder: Path, text: str) -> Path:
-    path = folder / "rain.csv"
-    path.write_text(text, encoding="utf-8")
-    return path
-
-
-def days(count: int, depth: str = "1.0", start: str = "2001-01-01") -> list[str]:
-    first = np.datetime64(start)
-    return [f"{first + day},{depth}" for day in range(count)]
-
-
-def test_a_wet_record_is_read_with_its_yearly_totals(package_file: Find) -> None:
-    # Seattle 2012-2015 (NOAA): 1226.0, 828.0, 1232.8, 1139.2 mm
-    rain = read_rain(package_file("vega_datasets", "_data/seattle-weather.csv"), notes=Notes())
-    year = rain.days.astype("datetime64[Y]").astype(int) + 1970
-    totals = [rain.rain_mm[year == one].sum() for one in (2012, 2013, 2014, 2015)]
-    np.testing.assert_allclose(totals, [1226.0, 828.0, 1232.8, 1139.2], atol=0.05)
-
-
-def test_rain_in_other_words_order_and_marks(tmp_path: Path) -> None:
-    text = "lluvia_mm;fecha\n" + "\n".join(f"{day},5;{day:02d}.01.2001" for day in range(1, 31))
-    rain = read_rain(rain_file(tmp_path, text), notes=Notes())
-    assert rain.rain_mm[:2].tolist() == [1.5, 2.5]
-
-
-def test_inches_become_millimetres(tmp_path: Path) -> None:
-    rain = read_rain(rain_file(tmp_path, "date,rain_in\n" + "\n".join(days(40))), notes=Notes())
-    np.testing.assert_allclose(rain.rain_mm, 25.4)
-
-
-def test_gaps_are_missing_and_said(tmp_path: Path) -> None:
-    notes = Notes()
-    lines = days(20)
-    rain = read_rain(rain_file(tmp_path, "date,rain_mm\n" + "\n".join(lines[:8] + lines[11:])), notes=notes)
-    assert np.isnan(rain.rain_mm).sum() == 3
-    assert "lacks 3 days; 1 readings right after a gap" in notes.warnings[0].text
-
-
-@pytest.mark.parametrize(
-    ("text", "message"),
-    [
-        (
-            "date,rain_mm\n" + "\n".join(f"{y}-{m:02d}-01,30" for y in (2001, 2002) for m in range(1, 13)),
-            "give daily rain",
-        ),
-        ("date,rain_mm\n2001-01-01,1\n2001-01-01,2", "more than once"),
-        ("date,rain_mm\n2001-01-01,-3\n2001-01-02,0", "leave missing days empty"),
-        ("date,rain_mm\n2001-01-01,wet\n2001-01-02,0", "'wet' for a number"),
-        ("date,rain_mm\n02/03/2001,1\n03/03/2001,2", "could be day or month first"),
-        ("date,rain\n" + "\n".join(days(800, "0.01")), r"if it is in inches, say rain\.unit = 'inch'"),
-        ("date,rain_mm\n2001-01-01,5000\n2001-01-02,0", "beyond any record"),
-        ("when,what\n2001-01-01,5\n2001-01-02,0", "no date column among 'when', 'what'"),
-        ("", "rain.daily rain.csv"),
-    ],
-)
-def test_rain_that_cannot_be_right_is_refused(tmp_path: Path, text: str, message: str) -> None:
-    with pytest.raises(InputError, match=message):
-        read_rain(rain_file(tmp_path, text), notes=Notes())
 
 
 def test_a_degree_grid_is_analysed_on_its_own_cells(package_file: Find, tmp_path: Path) -> None:
@@ -262,13 +353,3 @@ def test_another_crs_than_the_declared_one_and_a_level_dem_are_said(tmp_path: Pa
     notes = Notes()
     read_dem(write(tmp_path / "level.tif", np.full((9, 9), 5.0, dtype=np.float32)), crs="EPSG:32637", notes=notes)
     assert [warned.code for warned in notes.warnings] == ["crs_overridden", "flat_dem"]
-
-
-def test_a_comma_that_may_group_thousands_is_refused(tmp_path: Path) -> None:
-    with pytest.raises(InputError, match="a decimal or a thousands comma"):
-        read_rain(rain_file(tmp_path, "date;rain_mm\n2001-01-01;1,234\n2001-01-02;0"), notes=Notes())
-
-
-def test_a_very_dry_record_is_taken_when_its_unit_is_stated(tmp_path: Path) -> None:
-    path = rain_file(tmp_path, "date,rain\n" + "\n".join(days(800, "0.01")))
-    assert read_rain(path, unit="mm", notes=Notes()).rain_mm.sum() == pytest.approx(8.0)
