@@ -16,6 +16,9 @@ import rasterio
 from affine import Affine
 from shapely.geometry import LineString, Polygon, box
 
+from siting.grid import metric_grid
+from siting.terrain import accumulate, condition
+
 Array = npt.NDArray[np.float64]
 
 SEED = 20260
@@ -70,7 +73,7 @@ def elevation() -> Array:
     """Heights in m, rounded to 0.01 m."""
     rng = np.random.default_rng(SEED)
     x, y = metres()
-    rough, gentle = fractal(rng, 3.4), fractal(rng, 4.2)
+    rough, gentle = fractal(rng, 3.2), fractal(rng, 4.2)
     away = np.abs(x - axis_x(y))
     beyond = np.maximum(away - floor_half_width(y), 0.0)
     bed = 430.0 + 0.008 * y + 0.004 * away
@@ -82,10 +85,25 @@ def elevation() -> Array:
     side = 48.0 * comb * (1.0 - np.exp(-((hill / 900.0) ** 2)))
     gorge = 70.0 * np.exp(-(((y - GORGE_Y_M) / 420.0) ** 2)) * (1.0 - np.exp(-((beyond / 110.0) ** 2)))
     share = np.clip(hill / 900.0, 0.0, 1.0)
-    z = bed + terrace + rise + side + gorge + rough * (0.12 + 2.6 * share) + 3.0 * gentle * share
+    z = bed + terrace + rise + side + gorge + rough * (1.6 + 2.0 * share) + 3.0 * gentle * share
+    z = gullied(z)
     for pan in PANS:
         z = with_pan(z, x, y, *pan)
     return np.round(with_road(z, x, y), 2)
+
+
+def gullied(z: Array) -> Array:
+    """Cut the ground where water gathers, a little more each time, so that rills join into gullies."""
+    grid = metric_grid(ROWS, COLS, CELL_M)
+    size = {"cell_width_m": grid.cell_width_m, "cell_height_m": grid.cell_height_m}
+    for _ in range(4):
+        z = np.round(z, 2)
+        flow = condition(z.astype(np.float32), sinks=None, threads=2, **size)
+        area = accumulate(flow.direction, grid.cell_area_m2, threads=2)
+        cut = 0.02 * np.log1p(area / 3000.0) + 0.12 * np.log1p(area / 40_000.0)
+        beside = np.stack([np.roll(cut, (down, right), (0, 1)) for down in (-1, 0, 1) for right in (-1, 0, 1)])
+        z = z - 0.4 * cut - 0.6 * beside.mean(axis=0)
+    return z
 
 
 def with_pan(z: Array, x: Array, y: Array, east: float, north: float, radius: float, depth: float) -> Array:

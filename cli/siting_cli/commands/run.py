@@ -94,11 +94,12 @@ def _heading(summary: Mapping[str, Any]) -> str:
 
 def _plot_row(row: Mapping[str, Any]) -> dict[str, object]:
     """Return one plot as a reader wants it: hectares, and ratios as printed, unknown as a dash."""
+    in_degrees = abs(row["x"]) <= 360 and abs(row["y"]) <= 90
     return {
         "rank": row["supply_rank"],
         "plot": row["plot_id"],
-        "x": None if row["x"] is None else round(row["x"], 5 if abs(row["x"]) <= 360 else 0),
-        "y": None if row["y"] is None else round(row["y"], 5 if abs(row["y"]) <= 90 else 0),
+        "x": _coordinate(row["x"], in_degrees),
+        "y": _coordinate(row["y"], in_degrees),
         "hectares": row["area_m2"] / 10_000,
         "dry_year_m3": row["yield_dry_m3"],
         "need_m3": row["crop_demand_m3"],
@@ -107,6 +108,11 @@ def _plot_row(row: Mapping[str, Any]) -> dict[str, object]:
         "rain_alone_dry": row["rain_only_ratio_dry"],
         "cautions": (row["cautions"] or "").replace(";", "; ") or None,
     }
+
+
+def _coordinate(value: float, in_degrees: bool) -> str:
+    """Write a map coordinate to about a metre."""
+    return f"{value:.5f}" if in_degrees else f"{value:.0f}"
 
 
 def _cells(cells: Mapping[str, int]) -> str:

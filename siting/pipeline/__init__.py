@@ -1,0 +1,65 @@
+"""From a project to its results: the only room that knows all others."""
+
+from collections.abc import Callable
+from importlib import import_module
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from siting.progress import Progress, Silent
+
+if TYPE_CHECKING:
+    from siting.config import Project
+    from siting.pipeline.results import Results
+
+__all__ = ["check", "run"]
+
+
+def run(
+    project: "Project",
+    *,
+    out: Path,
+    overwrite: bool = False,
+    threads: int | None = None,
+    progress: Progress | None = None,
+) -> "Results":
+    """
+    Find, size and rank the plots of a place and write the results folder.
+
+    Parameters
+    ----------
+    project
+        As `siting.config.load_project` gives it.
+    out
+        Folder to write; it appears whole at the end, or not at all.
+    overwrite
+        Replace an earlier result of ours in that folder.
+    threads
+        How many to use; None for all that there are. The results are the same.
+    progress
+        Hears of each stage.
+
+    Raises
+    ------
+    SitingError
+        In one sentence: what is wrong with an input, a setting or the folder, and the way out.
+    """
+    carry_out: Callable[..., Results] = import_module("siting.pipeline.stages").run  # compiles kernels: not for `check`
+    return carry_out(project, out=out, overwrite=overwrite, threads=threads, progress=progress or Silent())
+
+
+def check(project: "Project") -> dict[str, Any]:
+    """
+    Read every input of a project and tell what it is; write nothing.
+
+    Returns
+    -------
+    dict
+        Sections by title, each a mapping of names to values; and "warnings", a list of code and text.
+
+    Raises
+    ------
+    SitingError
+        For the first input that cannot be used.
+    """
+    report: Callable[..., dict[str, Any]] = import_module("siting.pipeline.report").check
+    return report(project)

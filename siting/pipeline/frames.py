@@ -1,0 +1,230 @@
+"""Results as tables: the names of the columns are those that siting.layers declares."""
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+import pandas as pd
+
+from siting.config import Project
+from siting.demand.seasons import Seasons
+from siting.layers.codes import POSITIONS, SOIL_GROUPS
+from siting.pipeline.crop import SoilOfPlots
+from siting.pipeline.read import Place
+from siting.pipeline.sites import Sites
+from siting.pipeline.water import Water, Weather
+from siting.plots import commonest, fit_planes, plot_means, slope_margin
+from siting.ranking import dependable, mean_capped_ratio, supply_order
+from siting.runoff.years import SHORT_RECORD_YEARS
+from siting.tables import TEXTURES
+from siting.terrain import Terrain
+
+FloatArray = npt.NDArray[np.float64]
+
+LARGE_CATCHMENT_M2 = 10.0e6
+"""One gauge and one storm do not cover a larger catchment (common practice)."""
+
+STEEP_DROP_M = 2.0
+"""A plot that falls more than this needs levelling in steps (our assumption)."""
+
+POSITION_TERMS = ("", *POSITIONS.values)
+"""Terms by code; 0 is unknown."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class PlotGround:
+    """What the cells of each plot say: codes (-1 unknown) and means (NaN unknown)."""
+
+    texture: npt.NDArray[np.int64]
+    soil_group: npt.NDArray[np.int64]
+    position: npt.NDArray[np.int64]
+    slope: FloatArray
+    drop_m: FloatArray
+    wetness_index: FloatArray
+    height_above_channel_m: FloatArray
+
+
+def plot_ground(sites: Sites, place: Place, ground: Terrain) -> PlotGround:
+    """Sum up the ground of each plot."""
+    grid, cells = ground.grid, sites.cells
+    # codes run from -1 for textures and from 0 for the others, where they say nothing
+    texture = commonest(cells, place.texture + 1, np.arange(len(TEXTURES) + 1) > 0) - 1
+    plane = fit_planes(cells, ground.elevation, cell_width_m=grid.cell_width_m, cell_height_m=grid.cell_height_m)
+    return PlotGround(
+        np.maximum(texture, -1),
+        commonest(cells, place.soil_group, np.arange(5) > 0),
+        commonest(cells, ground.position, np.arange(len(POSITION_TERMS)) > 0),
+        plane.slope,
+        plane.drop_m,
+        plot_means(cells, ground.wetness_index, grid.cell_area_m2),
+        plot_means(cells, ground.height_above_channel_m, grid.cell_area_m2),
+    )
+
+
+def plots_frame(
+    sites: Sites,
+    own: PlotGround,
+    soil: SoilOfPlots,
+    water: Water | None,
+    weather: Weather | None,
+    ground: Terrain,
+    place: Place,
+    curve_number: FloatArray,
+    project: Project,
+) -> pd.DataFrame:
+    """Give one row for each plot, in the order of plot_id; what later methods will fill is left out."""
+    catchments, plots = sites.catchments, sites.plots
+    open_bits = np.bitwise_or.reduceat(ground.open_sides.ravel()[sites.cells.cell], sites.cells.start[:-1])
+    with np.errstate(invalid="ignore", divide="ignore"):
+        outside, behind = (
+            np.where(catchments.area_m2 > 0, 100.0 * part / catchments.area_m2, 0.0)
+            for part in (catchments.outside_m2, catchments.behind_pan_m2)
+        )
+    x, y = _middles(sites, ground)
+    columns: dict[str, Any] = {
+        "plot_id": sites.plot_id,
+        "area_m2": plots.area_m2,
+        "catchment_area_m2": catchments.area_m2,
+        "open_catchment": open_bits != 0,
+        "slope_pct": 100.0 * own.slope,
+        "drop_m": own.drop_m,
+        "wetness_index": own.wetness_index,
+        "height_above_channel_m": own.height_above_channel_m,
+        "position": _terms(own.position, POSITION_TERMS),
+        "soil_group": _terms(own.soil_group, ("", *SOIL_GROUPS.values)),
+        "texture": _terms(own.texture, TEXTURES),
+        "curve_number": curve_number,
+        "available_water_mm": soil.available_water_mm,
+        "catchment_ratio": catchments.area_m2 / plots.area_m2,
+        "catchment_outside_pct": np.full(outside.shape, np.nan) if place.inside is None else outside,
+        "behind_pan_pct": behind,
+        "plots_upstream": catchments.plots_upstream,
+        "next_plot_id": _or_null(catchments.next_plot + 1, catchments.next_plot >= 0),
+        "origin": list(plots.origin),
+        "given_name": [place.given_names[label - 1] if label else None for label in plots.given_label],
+        **_water_columns(water, soil, plots.area_m2, sites.plot_id, project.settings.ranking.dependable),
+    }
+    frame = pd.DataFrame(columns)
+    frame["rank"] = frame["supply_rank"]
+    frame["cautions"] = _cautions(frame, sites, weather, ground, place, project)
+    return frame.assign(x=x, y=y, open_bits=open_bits)
+
+
+def _terms(code: npt.NDArray[np.int64], terms: tuple[str, ...]) -> list[str | None]:
+    """Name codes; below 0 is unknown."""
+    return [terms[number] if number >= 0 else None for number in code]
+
+
+def _or_null(values: npt.NDArray[np.int64], known: npt.NDArray[np.bool_]) -> "pd.Series[Any]":
+    return pd.Series(values, dtype="Int64").where(pd.Series(known))
+
+
+def _middles(sites: Sites, ground: Terrain) -> tuple[FloatArray, FloatArray]:
+    """Return map coordinates of the plot cell nearest to the mean place of each plot's cells, so inside the plot."""
+    cells, count = sites.cells, sites.plots.count
+    row, col = np.divmod(cells.cell, ground.grid.cols)
+    size = np.bincount(cells.plot, minlength=count)
+    mean_row, mean_col = (np.bincount(cells.plot, weights=at, minlength=count) / size for at in (row, col))
+    far = (row - mean_row[cells.plot]) ** 2 + (col - mean_col[cells.plot]) ** 2
+    order = np.lexsort((np.arange(far.size), far, cells.plot))
+    nearest = order[cells.start[:-1]]
+    places = [ground.grid.xy(int(row[one]), int(col[one])) for one in nearest]
+    return np.array([x for x, _ in places]), np.array([y for _, y in places])
+
+
+def _water_columns(
+    water: Water | None, soil: SoilOfPlots, area_m2: FloatArray, plot_id: npt.NDArray[np.int64], share: float
+) -> dict[str, Any]:
+    """Return the columns that need a rain record; unknown without one."""
+    no_rank = {"supply_rank": pd.Series([None] * plot_id.size, dtype="Int64"), "supply_ratio_dry": np.nan}
+    if water is None:
+        return no_rank | {"yield_dry_m3": np.nan}
+    found: dict[str, Any] = {f"yield_{name}_m3": values for name, values in water.yield_m3.items()}
+    found["yield_dry_other_ratio_m3"] = water.other_yield_dry_m3
+    found["supply_ratio_dry_other_ratio"] = water.other_supply_ratio_dry
+    if water.seasons is None or water.needed is None:
+        return found | no_rank
+    table = water.seasons
+    usable = table.usable_in_season_mm + np.minimum(table.usable_before_mm, soil.available_water_mm[:, None])
+    demand = dependable(table.demand_mm, probability=0.5)
+    dry, median = (dependable(table.supply_ratio, probability=part) for part in (share, 0.5))
+    return found | {
+        "needed_ratio": water.needed.ratio,
+        "runon_dry_mm": dependable(usable, probability=share),
+        "runon_median_mm": dependable(usable, probability=0.5),
+        "crop_demand_mm": demand,
+        "crop_demand_m3": demand * area_m2 / 1000.0,
+        "supply_ratio_dry": dry,
+        "supply_ratio_median": median,
+        "rain_only_ratio_dry": dependable(table.rain_only_ratio, probability=share),
+        "supply_rank": _supply_rank(dry, median, table.supply_ratio, table.rain_only_ratio, plot_id),
+    }
+
+
+def _supply_rank(
+    dry: FloatArray, median: FloatArray, ratio: FloatArray, rain_only: FloatArray, plot_id: npt.NDArray[np.int64]
+) -> "pd.Series[Any]":
+    """Rank the plots by supply; one of which no season is known has no rank."""
+    mean = mean_capped_ratio(ratio)
+    rank = supply_order(
+        supply_ratio_dry=dry,
+        supply_ratio_median=median,
+        supply_ratio_mean=mean,
+        gain=mean - mean_capped_ratio(rain_only),
+        peak_flow_10y_m3s=np.full(plot_id.size, np.nan),
+        plot_id=plot_id,
+    )
+    return _or_null(rank, ~np.isnan(mean))
+
+
+def _cautions(
+    frame: pd.DataFrame, sites: Sites, weather: Weather | None, ground: Terrain, place: Place, project: Project
+) -> list[str | None]:
+    """List each plot's caution codes, `;` between them; None where there is none."""
+    limit = project.settings.plots.max_slope_pct
+    doubt = 100.0 * slope_margin(ground.vertical_error_m, ground.grid.typical_cell_m)
+    everywhere = np.ones(len(frame), dtype=np.bool_)
+    held = {
+        "open_catchment": frame["open_catchment"],
+        "short_record": everywhere & (weather is not None and weather.years.labels.size < SHORT_RECORD_YEARS),
+        "rain_trend": everywhere & (weather is not None and weather.rain_trend),
+        "coarse_cells": everywhere & sites.plots.coarse_cells,
+        "marginal_slope": (frame["slope_pct"] - limit).abs() < doubt,
+        "channel_in_plot": sites.channel_in_plot,
+        "doubtful_pan": frame["behind_pan_pct"] > 0,
+        "outside_boundary": frame["catchment_outside_pct"] > 0,
+        "large_catchment": frame["catchment_area_m2"] > LARGE_CATCHMENT_M2,
+        "steep_drop": frame["drop_m"] > STEEP_DROP_M,
+        "no_exclusions": everywhere & (place.excluded is None),
+        "no_runon_in_dry_year": frame["yield_dry_m3"] == 0,
+        "takes_from_below": frame["next_plot_id"].notna(),
+    }
+    table = np.column_stack([np.asarray(flags, dtype=np.bool_) for flags in held.values()])
+    codes = np.array(list(held))
+    return [";".join(codes[row]) or None for row in table]
+
+
+def mean_curve_number(sites: Sites, curve_number: FloatArray) -> FloatArray:
+    """Return the area-weighted curve number of each catchment, for orientation alone; NaN where any part has none."""
+    area = sites.catchments.effective_area_m2[0]
+    with np.errstate(invalid="ignore", divide="ignore"):
+        return np.asarray((area * curve_number).sum(axis=1) / area.sum(axis=1))
+
+
+def seasons_frame(sites: Sites, seasons: Seasons, water: Water) -> pd.DataFrame:
+    """Give one row for each plot and season; what later methods will fill is left out."""
+    table = water.seasons
+    if table is None:
+        return pd.DataFrame()
+    count, years = table.supply_ratio.shape
+    return pd.DataFrame(
+        {
+            "plot_id": np.repeat(sites.plot_id, years),
+            "season": np.tile(seasons.label, count),
+            "sown": np.tile(seasons.sown.astype("datetime64[s]"), count),
+            "rain_mm": table.rain_mm.ravel(),
+            "runon_mm": table.runon_mm.ravel(),
+            "supply_ratio": table.supply_ratio.ravel(),
+        }
+    )

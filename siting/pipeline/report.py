@@ -1,0 +1,151 @@
+"""What the inputs of a project are, told before anything is computed from them."""
+
+from typing import Any
+
+import numpy as np
+from pyproj import CRS
+
+from siting.config import Project, default_vertical_error_m, note_defaults
+from siting.demand.crop import daily_coefficients
+from siting.notes import Notes
+from siting.pipeline.crop import CropChoice, choose_crop
+from siting.pipeline.forecast import forecast
+from siting.pipeline.read import Place, read_place
+from siting.pipeline.water import Weather, weather_of
+from siting.ranking import dependable
+from siting.runoff import RunoffClasses, classify, yearly_totals
+from siting.tables import TEXTURES
+
+GIGABYTE = 1e9
+
+
+def check(project: Project) -> dict[str, Any]:
+    """Read everything and tell what it is; see `siting.pipeline.check`."""
+    notes = Notes()
+    place = read_place(project, notes)
+    note_defaults(project, notes)
+    crop = choose_crop(project, place.climate, notes)
+    weather = weather_of(place, project, crop, float(np.nanmean(place.dem.values)), notes)
+    return {
+        "Elevation model": _dem(project, place),
+        "Outlines": _outlines(place),
+        "Soil": _soil(place),
+        "Cover": _cover(place, project),
+        "Rain": None if weather is None else _rain(weather, project),
+        "Crop": None if crop is None else _crop(crop, weather),
+        "Assumed": [f"{one.id} = {one.value} {one.unit}".rstrip() + f" ({one.source})" for one in notes.assumptions],
+        "Forecast": _forecast(project),
+        "warnings": [{"code": one.code, "text": one.text} for one in notes.warnings],
+    }
+
+
+def _dem(project: Project, place: Place) -> dict[str, Any]:
+    grid, heights = place.dem.grid, place.dem.values
+    lon, lat = place.middle_lonlat
+    error_m = project.settings.place.vertical_error_m
+    return {
+        "file": project.settings.place.dem.name,
+        "rows x columns": f"{grid.rows} x {grid.cols}",
+        "CRS": CRS.from_user_input(grid.crs).name,
+        "cell, m": f"{grid.cell_width_m[grid.rows // 2]:.4g} x {grid.cell_height_m[grid.rows // 2]:.4g}",
+        "area, km2": _area_km2(place, ~np.isnan(heights)),
+        "middle, degrees": f"{abs(lat):.4f} {'N' if lat >= 0 else 'S'}, {abs(lon):.4f} {'E' if lon >= 0 else 'W'}",
+        "heights, m": f"{np.nanmin(heights):.1f} to {np.nanmax(heights):.1f}",
+        "without a height, %": 100.0 * float(np.mean(np.isnan(heights))),
+        "vertical error, m": default_vertical_error_m(grid.typical_cell_m) if error_m is None else error_m,
+    }
+
+
+def _area_km2(place: Place, mask: Any) -> float:
+    return float((mask.sum(axis=1) * place.dem.grid.cell_area_m2).sum()) / 1e6
+
+
+def _outlines(place: Place) -> dict[str, Any]:
+    found: dict[str, Any] = {}
+    if place.inside is not None:
+        found["inside the boundary, km2"] = _area_km2(place, place.inside)
+    if place.excluded is not None:
+        found["excluded, km2"] = _area_km2(place, place.excluded)
+    if place.given_label is not None:
+        found["given plots"] = len(place.given_names)
+    if place.pan_layer is not None:
+        found["pans to keep, cells"] = int((place.pan_layer > 0).sum())
+        found["pans that are none, cells"] = int((place.pan_layer < 0).sum())
+    if place.villages is not None:
+        found["villages"] = len(place.villages)
+    return found
+
+
+def _soil(place: Place) -> dict[str, Any]:
+    known = ~np.isnan(place.dem.values)
+    shares = _shares(place.texture[known] + 1, ("unknown texture", *TEXTURES))
+    return shares | _shares(place.soil_group[known], ("unknown soil group", *(f"soil group {letter}" for letter in "ABCD")))
+
+
+def _shares(codes: Any, names: tuple[str, ...]) -> dict[str, Any]:
+    """Return the share of each code that occurs, in percent, by name."""
+    counts = np.bincount(codes, minlength=len(names))
+    return {f"{name}, %": 100.0 * int(counts[code]) / codes.size for code, name in enumerate(names) if counts[code]}
+
+
+def _cover(place: Place, project: Project) -> list[dict[str, Any]]:
+    """Tell of each class of ground how much there is, and the rain after which it runs: ask whether that is so."""
+    valid = ~np.isnan(place.dem.values)
+    classes: RunoffClasses = classify(curve_number=place.curve_number, runs_after_mm=place.runs_after_mm, valid=valid)
+    ratio = project.settings.runoff.abstraction_ratio
+    counts = np.bincount(np.minimum(classes.class_of_cell[valid], classes.count), minlength=classes.count + 1)
+    starts = [*classes.starts_at_mm(abstraction_ratio=ratio), np.nan]
+    return [
+        {"ground": label, "share_pct": 100.0 * int(number) / int(valid.sum()), "runs_after_mm": start}
+        for label, number, start in zip([*classes.label, "no curve number"], counts, starts, strict=True)
+        if number
+    ]
+
+
+def _rain(weather: Weather, project: Project) -> dict[str, Any]:
+    rain, years = weather.rain, weather.years
+    totals = yearly_totals(rain.as_dry_mm, rain.days, years)
+    share = project.settings.ranking.dependable
+    et0 = weather.et0_mm
+    return {
+        "days": f"{rain.days[0]} to {rain.days[-1]}",
+        "days without a reading": int(np.isnan(rain.rain_mm).sum()),
+        "complete years": int(years.labels.size),
+        "years begin in month": years.starts_month,
+        "mean year, mm": float(totals.mean()),
+        f"reached in {100 * share:.0f} % of years, mm": float(dependable(totals, probability=share)),
+        "greatest day, mm": float(np.nanmax(rain.rain_mm)),
+        "reference ET, mean, mm/d": float(np.nanmean(et0)) if not np.isnan(et0).all() else None,
+    }
+
+
+def _crop(crop: CropChoice, weather: Weather | None) -> dict[str, Any]:
+    month, day = crop.planting
+    found: dict[str, Any] = {
+        "name": crop.name,
+        "sown on": f"{month:02d}-{day:02d}",
+        "season, days": sum(crop.stage_days),
+        "coefficients": crop.kc,
+        "root depth, m": crop.root_depth_m,
+    }
+    if weather is not None and weather.seasons is not None:
+        coefficients = daily_coefficients(stage_days=crop.stage_days, kc=crop.kc)
+        seasons = weather.seasons
+        bounds = zip(seasons.sowing, seasons.end, strict=True)
+        demand = [float(np.dot(coefficients, weather.et0_mm[first:end])) for first, end in bounds]
+        found |= {"seasons": int(seasons.label.size), "demand, mean of seasons, mm": float(np.mean(demand))}
+    return found
+
+
+def _forecast(project: Project) -> dict[str, Any]:
+    found = forecast(project.settings.place.dem, project.folder / "results")
+    if found is None:
+        return {}
+    return {
+        "cells": found.cells,
+        "memory, GB": found.memory_bytes / GIGABYTE,
+        "memory free, GB": None if found.free_memory_bytes is None else found.free_memory_bytes / GIGABYTE,
+        "disk at most, GB": found.disk_bytes / GIGABYTE,
+        "disk free, GB": None if found.free_disk_bytes is None else found.free_disk_bytes / GIGABYTE,
+        "time, about, s": found.seconds,
+    }

@@ -1,0 +1,143 @@
+"""From terrain to plots and what drains onto them."""
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+
+from siting.config import Project
+from siting.layers.codes import WHY_NOT
+from siting.notes import Notes
+from siting.pipeline.read import Place
+from siting.plots import (
+    Catchments,
+    PlotCells,
+    PlotLabels,
+    deepest_part,
+    make_plots,
+    plot_cells,
+    screen,
+    trace_catchments,
+)
+from siting.runoff import RunoffClasses
+from siting.terrain import Terrain
+
+POSITION_NAMES = ("", "summit", "shoulder", "backslope", "footslope", "toeslope")
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Sites:
+    """The plots of a run, their cells, and their catchments at the loss in use."""
+
+    plots: PlotLabels
+    cells: PlotCells
+    catchments: Catchments
+    channel_in_plot: npt.NDArray[np.bool_]
+
+    @property
+    def plot_id(self) -> npt.NDArray[np.int64]:
+        """Return the numbers of the plots, from 1."""
+        return np.arange(1, self.plots.count + 1, dtype=np.int64)
+
+
+def find_sites(place: Place, ground: Terrain, classes: RunoffClasses, project: Project, notes: Notes) -> Sites:
+    """Screen the ground, make plots of what passed and of what was given, and trace their catchments."""
+    grid, size = ground.grid, _cell_size(ground)
+    settings = project.settings
+    screening = _screen(place, ground, project)
+    plots = make_plots(
+        passed=screening.passed if settings.plots.search else np.zeros(grid.shape, dtype=np.bool_),
+        given=place.given_label,
+        catchment_weight=ground.contributing_area_m2,
+        direction=ground.direction,
+        min_area_m2=settings.plots.min_area_m2,
+        target_area_m2=settings.plots.target_area_m2,
+        reason=screening.reason,
+        given_names=place.given_names or None,
+        **size,
+    )
+    _tell(plots, place, notes)
+    cells = plot_cells(plots.label, plots.count)
+    catchments = trace_catchments(
+        cells,
+        label=plots.label,
+        direction=ground.direction,
+        contributing_area_m2=ground.contributing_area_m2,
+        elevation=ground.filled,
+        slope=ground.slope,
+        channel=ground.channel,
+        doubtful_pan=ground.pans.doubtful_mask(),
+        inside=place.inside,
+        class_of_cell=classes.class_of_cell,
+        classes=classes.count,
+        loss_per_km=(settings.runoff.conveyance_loss_per_km,),
+        cell_area_m2=grid.cell_area_m2,
+        **size,
+    )
+    channel_cells = np.bincount(cells.plot, weights=ground.channel.ravel()[cells.cell], minlength=plots.count)
+    return Sites(plots, cells, catchments, channel_cells > 0)
+
+
+def _cell_size(ground: Terrain) -> dict[str, Any]:
+    return {"cell_width_m": ground.grid.cell_width_m, "cell_height_m": ground.grid.cell_height_m}
+
+
+def _screen(place: Place, ground: Terrain, project: Project) -> Any:
+    limits, pans = project.settings.plots, ground.pans
+    kept = pans.kept_mask()
+    depth = project.settings.soil.depth_m
+    return screen(
+        valid=ground.direction != 255,
+        inside=place.inside,
+        excluded=place.excluded,
+        soil_depth_m=np.nan if depth is None else depth,
+        slope=ground.slope,
+        position=ground.position,
+        height_above_channel_m=ground.height_above_channel_m,
+        multiple_flow_area_m2=ground.multiple_flow_area_m2,
+        contributing_area_m2=ground.contributing_area_m2,
+        channel=ground.channel,
+        direction=ground.direction,
+        pan_label=np.where(kept, pans.label, 0).astype(np.int32),
+        pan_deepest=kept & deepest_part(elevation=ground.elevation, pan_label=pans.label, pan_depth_m=pans.depth_m),
+        max_slope_pct=limits.max_slope_pct,
+        max_height_above_channel_m=limits.max_height_above_channel_m,
+        min_soil_depth_m=limits.min_soil_depth_m,
+        min_catchment_ratio=limits.min_catchment_ratio,
+        target_area_m2=limits.target_area_m2,
+        max_catchment_m2=limits.max_catchment_m2,
+        channel_width_m=project.settings.terrain.channel_width_m,
+        channel_setback_m=limits.channel_setback_m,
+        **_cell_size(ground),
+    )
+
+
+def _tell(plots: PlotLabels, place: Place, notes: Notes) -> None:
+    """Say what became of the sizes asked for, of slivers, and of the plots that the user drew."""
+    if plots.coarse_cells:
+        notes.warn(
+            "coarse_cells",
+            "Cells are coarse beside the plots asked for: sizes were raised to 4 cells at least and 9 cells as target, and "
+            "what is found are zones to search in, not plots.",
+        )
+    if plots.slivers:
+        source, effect = "left over when patches were divided", "ground that fits but is in no plot"
+        notes.assume("plots.slivers", plots.slivers, "pieces", source, effect)
+    for number, given in enumerate(plots.given_label[plots.given_label > 0], start=1):
+        _tell_given(place.given_names[int(given) - 1], plots.reason[plots.label == number], notes)
+
+
+def _tell_given(name: str, reasons: npt.NDArray[np.uint8], notes: Notes) -> None:
+    counts = np.bincount(reasons, minlength=13)
+    counts[0] += counts[11] + counts[12]
+    if counts[0] == reasons.size:
+        return
+    labels = {int(item.value): item.label for item in WHY_NOT.items}
+    parts = [
+        f"{100 * counts[code] / reasons.size:.0f} % {labels[code]}"
+        for code in np.argsort(-counts[1:11], kind="stable") + 1
+        if counts[code]
+    ]
+    fit = 100 * counts[0] / reasons.size
+    notes.warn("given_plot", f"Of the given plot {name!r}, {fit:.0f} % can be cropped by the rules; {', '.join(parts)}.")
