@@ -13,29 +13,47 @@ from siting.runoff.curve_number import (
     wet_curve_number,
 )
 from siting.runoff.delivery import delivered_m3
+from siting.runoff.design_rain import annual_max_mm, design_rain_mm, few_years_for_design
 from siting.runoff.event import runoff_depth_mm
+from siting.runoff.peak import (
+    PeakFlowLimits,
+    lag_h,
+    peak_flow_limits,
+    peak_flow_m3s,
+    spillway_width_m,
+    time_of_concentration_h,
+)
 from siting.runoff.rain import Rain
 from siting.runoff.years import Years, driest_month, hydrological_years, yearly_totals
 
 __all__ = [
     "CoverClass",
+    "PeakFlowLimits",
     "Rain",
     "RunoffClasses",
     "Years",
     "aligned_curve_number_a",
+    "annual_max_mm",
     "class_runoff_mm",
     "classify",
     "composite_curve_number",
     "crusted_group",
     "curve_numbers",
     "delivered_m3",
+    "design_rain_mm",
     "driest_month",
     "dry_curve_number",
+    "few_years_for_design",
     "hydrological_years",
+    "lag_h",
+    "peak_flow_limits",
+    "peak_flow_m3s",
     "retention_for_ratio",
     "retention_mm",
     "runoff_depth_mm",
     "slope_adjusted_curve_number",
+    "spillway_width_m",
+    "time_of_concentration_h",
     "wet_curve_number",
     "yearly_totals",
 ]

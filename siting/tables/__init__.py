@@ -2,6 +2,7 @@
 
 from siting.tables.covers import CurveNumber, arc_rows, covers, curve_number
 from siting.tables.crops import Crop, crop, crops
+from siting.tables.peak_discharge import RAIN_DISTRIBUTIONS, UnitPeak, unit_peaks
 from siting.tables.soils import (
     TEXTURES,
     Soil,
@@ -14,11 +15,13 @@ from siting.tables.soils import (
 )
 
 __all__ = [
+    "RAIN_DISTRIBUTIONS",
     "TEXTURES",
     "Crop",
     "CurveNumber",
     "Soil",
     "SoilWater",
+    "UnitPeak",
     "arc_rows",
     "covers",
     "crop",
@@ -29,4 +32,5 @@ __all__ = [
     "soil_water",
     "soils",
     "texture_class",
+    "unit_peaks",
 ]
