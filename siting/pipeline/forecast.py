@@ -10,7 +10,7 @@ from rasterio.errors import RasterioError
 
 from siting.errors import CapacityError
 
-BYTES_PER_CELL = 100
+BYTES_PER_CELL = 110
 """Peak memory of a run for each cell, measured (see benchmarks), rounded up."""
 
 DISK_BYTES_PER_CELL = 45

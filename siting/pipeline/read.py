@@ -84,11 +84,16 @@ def read_place(project: Project, notes: Notes) -> Place:
     )
 
 
+def _everywhere(value: Any, grid: Grid) -> npt.NDArray[Any]:
+    """Give one value to all cells; it takes the memory of one."""
+    return np.broadcast_to(value, grid.shape)
+
+
 def _texture(settings: Any, grid: Grid, notes: Notes) -> npt.NDArray[np.int8]:
     """Return the texture class of each cell as its place in TEXTURES, -1 where unknown."""
     if settings.map is None:
         code = UNKNOWN_TEXTURE if settings.texture is None else TEXTURES.index(soil(settings.texture).texture)
-        return np.full(grid.shape, code, dtype=np.int8)
+        return _everywhere(np.int8(code), grid)
     found = inputs.read_map(settings.map, grid, column=settings.column, setting="soil.map", notes=notes)
     names = found.values
     if inputs.is_raster(settings.map):
@@ -116,7 +121,7 @@ def _soil_group(settings: Any, texture: npt.NDArray[np.int8]) -> npt.NDArray[np.
     """Return the soil group of each cell: as given, else by texture; 0 where unknown."""
     if settings.soil_group is not None:
         letter = settings.soil_group.split("/")[-1]
-        return np.full(texture.shape, GROUP_CODES[letter], dtype=np.uint8)
+        return np.broadcast_to(np.uint8(GROUP_CODES[letter]), texture.shape)
     codes = np.zeros(len(TEXTURES) + 1, dtype=np.uint8)
     for place in np.unique(texture[texture >= 0]):
         group = soil(TEXTURES[place]).soil_group
@@ -132,15 +137,15 @@ def _curve_number(
 ) -> tuple[npt.NDArray[np.float32], npt.NDArray[np.float32]]:
     """Return each cell's curve number and observed threshold, mm; NaN where unknown."""
     cover = settings.cover
-    runs_after = np.full(grid.shape, np.nan if cover.runs_after_mm is None else cover.runs_after_mm, dtype=np.float32)
+    runs_after = _everywhere(np.float32(np.nan if cover.runs_after_mm is None else cover.runs_after_mm), grid)
     if isinstance(cover.curve_number, Path):
         own = inputs.read_raster_on_grid(cover.curve_number, grid, setting="cover.curve_number")
         return own.astype(np.float32), runs_after
     if cover.curve_number is not None:
-        return np.full(grid.shape, cover.curve_number, dtype=np.float32), runs_after
+        return _everywhere(np.float32(cover.curve_number), grid), runs_after
     index, classes = _covers(cover, grid, notes)
     if not classes:
-        return np.full(grid.shape, np.nan, dtype=np.float32), runs_after
+        return _everywhere(np.float32(np.nan), grid), runs_after
     number, seen = curve_numbers(index, classes, group, crusted=settings.soil.crusted, notes=notes)
     return number, np.where(np.isnan(runs_after), seen, runs_after).astype(np.float32)
 
@@ -148,8 +153,8 @@ def _curve_number(
 def _covers(cover: Any, grid: Grid, notes: Notes) -> tuple[npt.NDArray[np.int32], list[CoverClass]]:
     if cover.map is None:
         if cover.cover is None:
-            return np.full(grid.shape, -1, dtype=np.int32), []
-        return np.zeros(grid.shape, dtype=np.int32), [CoverClass(cover.cover, cover.condition, cover.treatment)]
+            return _everywhere(np.int32(-1), grid), []
+        return _everywhere(np.int32(0), grid), [CoverClass(cover.cover, cover.condition, cover.treatment)]
     found = inputs.read_map(cover.map, grid, column=cover.column, setting="cover.map", notes=notes)
     meanings = _meanings(cover.table, ("cover", "condition"), "cover.table", cover.map)
     rows = [_meaning(meanings, value, "cover.table") for value in found.values]

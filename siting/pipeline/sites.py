@@ -85,7 +85,7 @@ def _cell_size(ground: Terrain) -> dict[str, Any]:
 
 def _screen(place: Place, ground: Terrain, project: Project) -> Any:
     limits, pans = project.settings.plots, ground.pans
-    kept = pans.kept_mask()
+    deepest = deepest_part(elevation=ground.elevation, pan_label=pans.label, pan_depth_m=pans.depth_m)
     depth = project.settings.soil.depth_m
     return screen(
         valid=ground.direction != 255,
@@ -99,8 +99,7 @@ def _screen(place: Place, ground: Terrain, project: Project) -> Any:
         contributing_area_m2=ground.contributing_area_m2,
         channel=ground.channel,
         direction=ground.direction,
-        pan_label=np.where(kept, pans.label, 0).astype(np.int32),
-        pan_deepest=kept & deepest_part(elevation=ground.elevation, pan_label=pans.label, pan_depth_m=pans.depth_m),
+        pan_deepest=deepest & pans.kept_mask(),
         max_slope_pct=limits.max_slope_pct,
         max_height_above_channel_m=limits.max_height_above_channel_m,
         min_soil_depth_m=limits.min_soil_depth_m,

@@ -65,7 +65,6 @@ def screen(
     contributing_area_m2: Floats,
     channel: Mask,
     direction: Codes,
-    pan_label: npt.NDArray[np.int32],
     pan_deepest: Mask,
     cell_width_m: FloatArray,
     cell_height_m: FloatArray,
@@ -102,8 +101,8 @@ def screen(
     channel, channel_width_m, channel_setback_m
         The strip of channel_width_m / 2 + channel_setback_m on both sides of the channels' lines is taken off; see
         `strip_share_left`.
-    pan_label, pan_deepest
-        Numbers of pans, 0 elsewhere, and the deepest parts of them, which fail.
+    pan_deepest
+        The deepest parts of pans, which fail.
     cell_width_m, cell_height_m
         Ground metres of a cell, for each row.
 
@@ -111,31 +110,40 @@ def screen(
     ----------
     Slope: Critchley & Siegert (1991), FAO AGL/MISC/17/91. The other limits are common practice or assumptions.
     """
+    left = strip_share_left(
+        channel,
+        direction,
+        0.5 * channel_width_m + channel_setback_m,
+        cell_width_m=cell_width_m,
+        cell_height_m=cell_height_m,
+    )
     found = Screening(np.zeros(valid.shape, dtype=np.uint8), np.full(valid.shape, np.nan, dtype=np.float32))
-    with np.errstate(invalid="ignore"):
-        slope_margin = np.float32(max_slope_pct) - np.float32(100.0) * slope
-        known = valid & ~np.isnan(slope) & ~np.isnan(contributing_area_m2) & ~np.isnan(multiple_flow_area_m2)
-        found._fail(NO_DATA, ~known)
-        if inside is not None:
-            found._fail(OUTSIDE_BOUNDARY, ~inside)
-        if excluded is not None:
-            found._fail(EXCLUDED, excluded)
-        half_m = 0.5 * channel_width_m + channel_setback_m
-        left = strip_share_left(channel, direction, half_m, cell_width_m=cell_width_m, cell_height_m=cell_height_m)
-        found._fail(CHANNEL_STRIP, left < LEAST_SHARE, left - LEAST_SHARE)
-        found._fail(PAN, (pan_label > 0) & pan_deepest)
-        found._fail(TOO_STEEP, slope_margin < 0, slope_margin)
-        height_margin = max_height_above_channel_m - height_above_channel_m
-        foot = (position == FOOTSLOPE) | (position == TOESLOPE)
-        found._fail(NOT_LOW, ~foot & ~(height_margin >= 0), height_margin)
-        soil_margin = soil_depth_m - min_soil_depth_m
-        found._fail(SOIL_TOO_SHALLOW, np.broadcast_to(soil_margin < 0, valid.shape), soil_margin)
-        contour_m = 0.5 * (cell_width_m + cell_height_m)
-        fed_margin = multiple_flow_area_m2 / contour_m[:, None] - min_catchment_ratio * np.sqrt(target_area_m2)
-        found._fail(TOO_LITTLE_ABOVE, fed_margin < 0, fed_margin)
-        flood_margin = max_catchment_m2 - contributing_area_m2
-        found._fail(TOO_MUCH_ABOVE, flood_margin < 0, flood_margin)
-    found.margin[found.passed] = slope_margin[found.passed]
+    contour_m = 0.5 * (cell_width_m + cell_height_m)
+    soil_margin = np.broadcast_to(np.asarray(soil_depth_m - min_soil_depth_m), valid.shape)
+    for row0 in range(0, valid.shape[0], BAND_ROWS):  # the margins of a band are small beside the rasters
+        band = slice(row0, row0 + BAND_ROWS)
+        part = Screening(found.reason[band], found.margin[band])
+        with np.errstate(invalid="ignore"):
+            slope_margin = np.float32(max_slope_pct) - np.float32(100.0) * slope[band]
+            unknown = np.isnan(slope[band]) | np.isnan(contributing_area_m2[band]) | np.isnan(multiple_flow_area_m2[band])
+            part._fail(NO_DATA, ~valid[band] | unknown)
+            if inside is not None:
+                part._fail(OUTSIDE_BOUNDARY, ~inside[band])
+            if excluded is not None:
+                part._fail(EXCLUDED, excluded[band])
+            part._fail(CHANNEL_STRIP, left[band] < LEAST_SHARE, left[band] - LEAST_SHARE)
+            part._fail(PAN, pan_deepest[band])
+            part._fail(TOO_STEEP, slope_margin < 0, slope_margin)
+            height_margin = max_height_above_channel_m - height_above_channel_m[band]
+            foot = (position[band] == FOOTSLOPE) | (position[band] == TOESLOPE)
+            part._fail(NOT_LOW, ~foot & ~(height_margin >= 0), height_margin)
+            part._fail(SOIL_TOO_SHALLOW, soil_margin[band] < 0, soil_margin[band])
+            fed_m = multiple_flow_area_m2[band] / contour_m[band, None]
+            fed_margin = fed_m - min_catchment_ratio * np.sqrt(target_area_m2)
+            part._fail(TOO_LITTLE_ABOVE, fed_margin < 0, fed_margin)
+            flood_margin = max_catchment_m2 - contributing_area_m2[band]
+            part._fail(TOO_MUCH_ABOVE, flood_margin < 0, flood_margin)
+        part.margin[part.passed] = slope_margin[part.passed]
     return found
 
 

@@ -76,7 +76,7 @@ def _means(cells: PlotCells, values: npt.NDArray[Any]) -> FloatArray:
 
 def plot_means(cells: PlotCells, values: npt.NDArray[np.floating], cell_area_m2: FloatArray) -> FloatArray:
     """Return each plot's mean of a raster by area, unknown cells left out; NaN where all are unknown."""
-    value = values.ravel()[cells.cell].astype(np.float64)
+    value = values[np.divmod(cells.cell, values.shape[1])].astype(np.float64)
     weight = np.where(np.isnan(value), 0.0, cell_area_m2[cells.cell // values.shape[1]])
     with np.errstate(invalid="ignore"):
         return np.asarray(_sums(cells, weight * np.nan_to_num(value)) / _sums(cells, weight))
@@ -89,7 +89,7 @@ def commonest(cells: PlotCells, codes: npt.NDArray[Any], known: npt.NDArray[np.b
     `codes` is a raster of small whole numbers from 0, `known` tells of each code (by number) whether it says something.
     """
     count, kinds = cells.start.size - 1, known.size
-    code = codes.ravel()[cells.cell].astype(np.int64)
+    code = codes[np.divmod(cells.cell, codes.shape[1])].astype(np.int64)
     tally = np.bincount(cells.plot * kinds + code, minlength=count * kinds).reshape(count, kinds)
     tally[:, ~known] = 0
     return np.where(tally.max(axis=1) > 0, tally.argmax(axis=1), -1)

@@ -14,6 +14,10 @@ FloatArray = npt.NDArray[np.float64]
 NO_CLASS = 65535
 """Class of cells whose curve number is unknown."""
 
+UNKNOWN_KIND = 0
+BAND_ROWS = 256
+"""Rows sorted at once: what is made on the way stays small beside the raster."""
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class RunoffClasses:
@@ -70,25 +74,18 @@ def classify(
     CapacityError
         Where there are more classes than codes for them.
     """
-    number = _tenths(checked(np.where(valid, curve_number, np.nan)))
-    threshold = np.zeros(valid.shape, dtype=np.int64)
-    if runs_after_mm is not None:
-        seen = np.where(valid, np.asarray(runs_after_mm, dtype=np.float64), np.nan)
-        wrong = seen[(seen < 0.1) | (seen > 1000.0)]
-        if wrong.size:
-            msg = f"cover.runs_after_mm of {wrong[0]:g} mm is outside 0.1 to 1000 mm; leave it out where unknown"
-            raise ConfigError(msg)
-        threshold = _tenths(seen)
-    # an observed threshold needs no curve number: it decides alone
-    number = np.where(threshold > 0, 0, number)
-    known = valid & ((number > 0) | (threshold > 0))
-    key = number * 100_000 + threshold
-    found = np.unique(key[known])
+    bands = [slice(row, row + BAND_ROWS) for row in range(0, valid.shape[0], BAND_ROWS)]
+    seen = None if runs_after_mm is None else np.broadcast_to(np.asarray(runs_after_mm), valid.shape)
+    kinds = [np.unique(_kinds(curve_number, seen, valid, band)) for band in bands]
+    found = np.setdiff1d(np.concatenate(kinds), [UNKNOWN_KIND])
     if found.size >= NO_CLASS:
         msg = f"{found.size} classes of runoff: at most {NO_CLASS - 1}; round the curve numbers"
         raise CapacityError(msg)
     classes = np.full(valid.shape, NO_CLASS, dtype=np.uint16)
-    classes[known] = np.searchsorted(found, key[known]).astype(np.uint16)
+    for band in bands:
+        kind = _kinds(curve_number, seen, valid, band)
+        known = kind != UNKNOWN_KIND
+        classes[band][known] = np.searchsorted(found, kind[known]).astype(np.uint16)
     numbers, thresholds = found // 100_000 / 10.0, found % 100_000
     return RunoffClasses(
         classes,
@@ -97,9 +94,29 @@ def classify(
     )
 
 
-def _tenths(values: FloatArray) -> npt.NDArray[np.int64]:
+def _kinds(
+    curve_number: npt.NDArray[np.floating],
+    runs_after_mm: npt.NDArray[np.floating] | None,
+    valid: npt.NDArray[np.bool_],
+    band: slice,
+) -> npt.NDArray[np.int64]:
+    """Write curve number and threshold of each cell of a band of rows as one number, checked."""
+    number = _tenths(checked(np.where(valid[band], curve_number[band], np.nan)))
+    if runs_after_mm is None:
+        return number * 100_000
+    seen = np.where(valid[band], runs_after_mm[band], np.nan)
+    wrong = seen[(seen < 0.1) | (seen > 1000.0)]
+    if wrong.size:
+        msg = f"cover.runs_after_mm of {wrong[0]:g} mm is outside 0.1 to 1000 mm; leave it out where unknown"
+        raise ConfigError(msg)
+    threshold = _tenths(seen)
+    # an observed threshold needs no curve number: it decides alone
+    return np.where(threshold > 0, threshold, number * 100_000)
+
+
+def _tenths(values: npt.NDArray[np.floating]) -> npt.NDArray[np.int64]:
     """Return values in whole tenths, at least 1; 0 where NaN."""
-    return np.nan_to_num(np.maximum(np.round(values * 10.0), 1.0), nan=0.0).astype(np.int64)
+    return np.nan_to_num(np.maximum(np.round(values.astype(np.float64) * 10.0), 1.0), nan=0.0).astype(np.int64)
 
 
 def class_runoff_mm(rain_mm: npt.ArrayLike, classes: RunoffClasses, *, abstraction_ratio: float) -> FloatArray:
