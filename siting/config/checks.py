@@ -34,6 +34,8 @@ NEEDS = (
     ("villages.walk_km", ("villages.file",)),
     ("villages.name", ("villages.file",)),
     ("crop.planting", ("crop.name", "crop.kc")),
+    ("crop.planting_until", ("crop.planting",)),
+    ("crop.onset_mm", ("crop.planting_until",)),
     ("rain.unit", ("rain.daily",)),
     ("rain.year_starts", ("rain.daily",)),
 )

@@ -32,6 +32,9 @@ def _planting(text: str) -> str:
     return text
 
 
+Day = Annotated[Text, AfterValidator(_planting)]
+
+
 def _ratio(value: float) -> float:
     if value not in PUBLISHED_RATIOS:
         msg = "it must be 0.2 or 0.05, for only these have published retention"
@@ -108,6 +111,7 @@ class Runoff(_Section):
     abstraction_ratio: Annotated[float, AfterValidator(_ratio)]
     conveyance_loss_per_km: AtLeast0
     channel_wetting_mm: AtLeast0
+    rain_distribution: Literal["I", "IA", "II", "III"]
 
 
 class Rain(_Section):
@@ -131,21 +135,35 @@ class Crop(_Section):
     """A crop by name, by values, or by name with values of the user's own laid over it."""
 
     name: Text | None = None
-    planting: Annotated[Text, AfterValidator(_planting)] | None = None
+    planting: Day | None = None
+    planting_until: Day | None = None
+    onset_mm: AtLeast0
     stage_days: StageDays | None = None
     kc: Kc | None = None
     root_depth_m: Above0 | None = None
     depletion_fraction: Share | None = None
     ky: Above0 | None = None
     height_m: Above0 | None = None
+    standing_water_days: Annotated[int, Field(ge=0)]
+    target_yield: Annotated[float, Field(gt=0, le=1)]
+    target_reliability: Share
 
     @property
     def planting_day(self) -> tuple[int, int] | None:
-        """Month and day of sowing, None where not given."""
-        if self.planting is None:
-            return None
-        month, _, day = self.planting.partition("-")
-        return int(month), int(day)
+        """Month and day of sowing, or on which the sowing window opens; None where not given."""
+        return _month_and_day(self.planting)
+
+    @property
+    def last_planting_day(self) -> tuple[int, int] | None:
+        """Month and day on which the sowing window closes; None for a fixed day of sowing."""
+        return _month_and_day(self.planting_until)
+
+
+def _month_and_day(text: str | None) -> tuple[int, int] | None:
+    if text is None:
+        return None
+    month, _, day = text.partition("-")
+    return int(month), int(day)
 
 
 class Plots(_Section):
@@ -162,8 +180,11 @@ class Plots(_Section):
     min_area_m2: Above0
     target_area_m2: Above0
     ponding_mm: AtLeast0
+    levelled: bool
     event_hours: Annotated[float, Field(gt=0, le=24)]
     efficiency: Annotated[float, Field(gt=0, le=1)]
+    spillway_head_m: Above0
+    weir_coefficient: Annotated[float, Field(ge=1.35, le=1.83)]
 
 
 class Ranking(_Section):

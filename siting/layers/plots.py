@@ -174,6 +174,8 @@ _SCORE_RANGE = "component of the score, 0.01 to 1; NULL for all plots where one 
 
 DOUBT = (
     Column("supply_rank", "", "int64", "Rank by supply", "place in the order by supply ratio, 1 is best"),
+    Column("reliability_low_pct", "%", "float64", "Reliability, low", "lower end of the 90 % interval of the reliability"),
+    Column("reliability_high_pct", "%", "float64", "Reliability, high", "upper end of the 90 % interval of the reliability"),
     Column(
         "catchment_outside_pct", "%", "float64", "Catchment outside", "share of the catchment that lies outside the boundary"
     ),

@@ -8,14 +8,15 @@ import numpy.typing as npt
 import pandas as pd
 
 from siting.config import Project
-from siting.demand.seasons import Seasons
 from siting.layers.codes import POSITIONS, SOIL_GROUPS
-from siting.pipeline.crop import SoilOfPlots
+from siting.pipeline.floods import Floods
 from siting.pipeline.read import Place
-from siting.pipeline.sites import Sites
-from siting.pipeline.water import Water, Weather
+from siting.pipeline.sites import GROSS, Sites
+from siting.pipeline.soil import SoilOfPlots
+from siting.pipeline.water import MOST_UNCLASSED_SHARE, CropResults, Water, Weather
 from siting.plots import commonest, fit_planes, plot_means, slope_margin
-from siting.ranking import dependable, mean_capped_ratio, supply_order
+from siting.ranking import dependable, mean_capped_ratio, reliability, supply_order
+from siting.runoff import RunoffClasses
 from siting.runoff.years import SHORT_RECORD_YEARS
 from siting.tables import TEXTURES
 from siting.terrain import Terrain
@@ -24,6 +25,9 @@ FloatArray = npt.NDArray[np.float64]
 
 LARGE_CATCHMENT_M2 = 10.0e6
 """One gauge and one storm do not cover a larger catchment (common practice)."""
+
+FLOOD_M3S = 1.0
+"""A larger 10-year peak is more than a small earth bank and its spillway should be trusted with (our assumption)."""
 
 STEEP_DROP_M = 2.0
 """A plot that falls more than this needs levelling in steps (our assumption)."""
@@ -67,6 +71,7 @@ def plots_frame(
     own: PlotGround,
     soil: SoilOfPlots,
     water: Water | None,
+    floods: Floods | None,
     weather: Weather | None,
     ground: Terrain,
     place: Place,
@@ -82,6 +87,7 @@ def plots_frame(
             for part in (catchments.outside_m2, catchments.behind_pan_m2)
         )
     x, y = _middles(sites, ground)
+    flood_columns = _flood_columns(floods, plots.count)
     columns: dict[str, Any] = {
         "plot_id": sites.plot_id,
         "area_m2": plots.area_m2,
@@ -103,12 +109,22 @@ def plots_frame(
         "next_plot_id": _or_null(catchments.next_plot + 1, catchments.next_plot >= 0),
         "origin": list(plots.origin),
         "given_name": [place.given_names[label - 1] if label else None for label in plots.given_label],
-        **_water_columns(water, soil, plots.area_m2, sites.plot_id, project.settings.ranking.dependable),
+        **flood_columns,
+        **_water_columns(water, soil, plots.area_m2, flood_columns["peak_flow_10y_m3s"], sites.plot_id, project),
     }
     frame = pd.DataFrame(columns)
     frame["rank"] = frame["supply_rank"]
     frame["cautions"] = _cautions(frame, sites, weather, ground, place, project)
     return frame.assign(x=x, y=y, open_bits=open_bits)
+
+
+def _flood_columns(floods: Floods | None, count: int) -> dict[str, Any]:
+    unknown = np.full(count, np.nan)
+    return {
+        "peak_flow_10y_m3s": unknown if floods is None else floods.peak_10y_m3s,
+        "peak_flow_25y_m3s": unknown if floods is None else floods.peak_25y_m3s,
+        "spillway_width_m": unknown if floods is None else floods.spillway_width_m,
+    }
 
 
 def _terms(code: npt.NDArray[np.int64], terms: tuple[str, ...]) -> list[str | None]:
@@ -134,7 +150,12 @@ def _middles(sites: Sites, ground: Terrain) -> tuple[FloatArray, FloatArray]:
 
 
 def _water_columns(
-    water: Water | None, soil: SoilOfPlots, area_m2: FloatArray, plot_id: npt.NDArray[np.int64], share: float
+    water: Water | None,
+    soil: SoilOfPlots,
+    area_m2: FloatArray,
+    peak: FloatArray,
+    plot_id: npt.NDArray[np.int64],
+    project: Project,
 ) -> dict[str, Any]:
     """Return the columns that need a rain record; unknown without one."""
     no_rank = {"supply_rank": pd.Series([None] * plot_id.size, dtype="Int64"), "supply_ratio_dry": np.nan}
@@ -142,28 +163,56 @@ def _water_columns(
         return no_rank | {"yield_dry_m3": np.nan}
     found: dict[str, Any] = {f"yield_{name}_m3": values for name, values in water.yield_m3.items()}
     found["yield_dry_other_ratio_m3"] = water.other_yield_dry_m3
-    found["supply_ratio_dry_other_ratio"] = water.other_supply_ratio_dry
-    if water.seasons is None or water.needed is None:
+    if water.crop is None:
         return found | no_rank
-    table = water.seasons
+    share, table = project.settings.ranking.dependable, water.crop.seasons
     usable = table.usable_in_season_mm + np.minimum(table.usable_before_mm, soil.available_water_mm[:, None])
     demand = dependable(table.demand_mm, probability=0.5)
     dry, median = (dependable(table.supply_ratio, probability=part) for part in (share, 0.5))
-    return found | {
-        "needed_ratio": water.needed.ratio,
-        "runon_dry_mm": dependable(usable, probability=share),
-        "runon_median_mm": dependable(usable, probability=0.5),
-        "crop_demand_mm": demand,
-        "crop_demand_m3": demand * area_m2 / 1000.0,
-        "supply_ratio_dry": dry,
-        "supply_ratio_median": median,
-        "rain_only_ratio_dry": dependable(table.rain_only_ratio, probability=share),
-        "supply_rank": _supply_rank(dry, median, table.supply_ratio, table.rain_only_ratio, plot_id),
+    return (
+        found
+        | {
+            "supply_ratio_dry_other_ratio": water.crop.other_supply_ratio_dry,
+            "needed_ratio": water.crop.needed.ratio,
+            "runon_dry_mm": dependable(usable, probability=share),
+            "runon_median_mm": dependable(usable, probability=0.5),
+            "crop_demand_mm": demand,
+            "crop_demand_m3": demand * area_m2 / 1000.0,
+            "supply_ratio_dry": dry,
+            "supply_ratio_median": median,
+            "rain_only_ratio_dry": dependable(table.rain_only_ratio, probability=share),
+            "supply_rank": _supply_rank(dry, median, table.supply_ratio, table.rain_only_ratio, peak, plot_id),
+        }
+        | _yield_columns(water.crop, project.settings.crop.target_yield)
+    )
+
+
+def _yield_columns(crop: CropResults, target_yield: float) -> dict[str, Any]:
+    """Return what the daily method says of each plot."""
+    with_runon, alone = (
+        reliability(yields.relative_yield, target_yield=target_yield) for yields in (crop.yields, crop.rain_alone)
+    )
+    standing = crop.yields.standing_water_days
+    worst = np.where(np.isnan(standing).all(axis=1), -1.0, np.nan_to_num(standing, nan=-1.0).max(axis=1))
+    return {
+        "reliability_pct": 100.0 * with_runon.share,
+        "reliability_low_pct": 100.0 * with_runon.low,
+        "reliability_high_pct": 100.0 * with_runon.high,
+        "rain_only_reliability_pct": 100.0 * alone.share,
+        "supported_area_m2": crop.supported.area_m2,
+        "limit": [limit or None for limit in crop.supported.limit],
+        "mean_yield_pct": 100.0 * crop.yields.relative_yield.mean(axis=1),
+        "standing_water_days": _or_null(worst.astype(np.int64), worst >= 0),
     }
 
 
 def _supply_rank(
-    dry: FloatArray, median: FloatArray, ratio: FloatArray, rain_only: FloatArray, plot_id: npt.NDArray[np.int64]
+    dry: FloatArray,
+    median: FloatArray,
+    ratio: FloatArray,
+    rain_only: FloatArray,
+    peak_10y_m3s: FloatArray,
+    plot_id: npt.NDArray[np.int64],
 ) -> "pd.Series[Any]":
     """Rank the plots by supply; one of which no season is known has no rank."""
     mean = mean_capped_ratio(ratio)
@@ -172,7 +221,7 @@ def _supply_rank(
         supply_ratio_median=median,
         supply_ratio_mean=mean,
         gain=mean - mean_capped_ratio(rain_only),
-        peak_flow_10y_m3s=np.full(plot_id.size, np.nan),
+        peak_flow_10y_m3s=peak_10y_m3s,
         plot_id=plot_id,
     )
     return _or_null(rank, ~np.isnan(mean))
@@ -195,6 +244,8 @@ def _cautions(
         "doubtful_pan": frame["behind_pan_pct"] > 0,
         "outside_boundary": frame["catchment_outside_pct"] > 0,
         "large_catchment": frame["catchment_area_m2"] > LARGE_CATCHMENT_M2,
+        "flood": frame["peak_flow_10y_m3s"] > FLOOD_M3S,
+        "standing_water": _standing(frame) > project.settings.crop.standing_water_days,
         "steep_drop": frame["drop_m"] > STEEP_DROP_M,
         "no_exclusions": everywhere & (place.excluded is None),
         "no_runon_in_dry_year": frame["yield_dry_m3"] == 0,
@@ -205,26 +256,44 @@ def _cautions(
     return [";".join(codes[row]) or None for row in table]
 
 
-def mean_curve_number(sites: Sites, curve_number: FloatArray) -> FloatArray:
-    """Return the area-weighted curve number of each catchment, for orientation alone; NaN where any part has none."""
-    area = sites.catchments.effective_area_m2[0]
+def _standing(frame: pd.DataFrame) -> npt.NDArray[np.int64]:
+    """Return the days of standing water in the worst season, 0 where unknown."""
+    if "standing_water_days" not in frame:
+        return np.zeros(len(frame), dtype=np.int64)
+    return frame["standing_water_days"].fillna(0).to_numpy(dtype=np.int64)
+
+
+def mean_curve_number(sites: Sites, classes: RunoffClasses) -> FloatArray:
+    """
+    Return the area-weighted curve number of each catchment, for orientation, lag and Ia/P; runoff goes by class.
+
+    A class with an observed threshold has the number that gives it; NaN where much of the catchment has no class.
+    """
+    area = sites.catchments.effective_area_m2[GROSS]
+    number = 25_400.0 / (254.0 + classes.retention_mm(abstraction_ratio=0.2))
     with np.errstate(invalid="ignore", divide="ignore"):
-        return np.asarray((area * curve_number).sum(axis=1) / area.sum(axis=1))
+        mean = (area * number).sum(axis=1) / area.sum(axis=1)
+    unknown = sites.catchments.unclassed_m2 > MOST_UNCLASSED_SHARE * sites.catchments.area_m2
+    return np.where(unknown, np.nan, mean)
 
 
-def seasons_frame(sites: Sites, seasons: Seasons, water: Water) -> pd.DataFrame:
-    """Give one row for each plot and season; what later methods will fill is left out."""
-    table = water.seasons
-    if table is None:
-        return pd.DataFrame()
+def seasons_frame(sites: Sites, crop: CropResults) -> pd.DataFrame:
+    """Give one row for each plot and season."""
+    table, yields = crop.seasons, crop.yields
     count, years = table.supply_ratio.shape
+    standing = yields.standing_water_days.ravel()
     return pd.DataFrame(
         {
             "plot_id": np.repeat(sites.plot_id, years),
-            "season": np.tile(seasons.label, count),
-            "sown": np.tile(seasons.sown.astype("datetime64[s]"), count),
+            "season": np.tile(yields.label, count),
+            "sown": yields.sown.ravel().astype("datetime64[s]"),
             "rain_mm": table.rain_mm.ravel(),
             "runon_mm": table.runon_mm.ravel(),
             "supply_ratio": table.supply_ratio.ravel(),
+            "et_ratio": yields.et_ratio.ravel(),
+            "relative_yield": yields.relative_yield.ravel(),
+            "rain_only_relative_yield": crop.rain_alone.relative_yield.ravel(),
+            "standing_water_days": _or_null(np.nan_to_num(standing).astype(np.int64), ~np.isnan(standing)),
+            "failure": [failure or None for failure in yields.failure.ravel()],
         }
     )

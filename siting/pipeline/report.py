@@ -6,7 +6,6 @@ import numpy as np
 from pyproj import CRS
 
 from siting.config import Project, default_vertical_error_m, note_defaults
-from siting.demand.crop import daily_coefficients
 from siting.notes import Notes
 from siting.pipeline.crop import CropChoice, choose_crop
 from siting.pipeline.forecast import forecast
@@ -120,19 +119,19 @@ def _rain(weather: Weather, project: Project) -> dict[str, Any]:
 
 
 def _crop(crop: CropChoice, weather: Weather | None) -> dict[str, Any]:
-    month, day = crop.planting
+    (month, day), last = crop.planting.opens, crop.planting.closes
     found: dict[str, Any] = {
         "name": crop.name,
-        "sown on": f"{month:02d}-{day:02d}",
-        "season, days": sum(crop.stage_days),
-        "coefficients": crop.kc,
-        "root depth, m": crop.root_depth_m,
+        "sown on" if last is None else "sown from": f"{month:02d}-{day:02d}",
+        "season, days": crop.water.length_days,
+        "coefficients": crop.water.kc,
+        "root depth, m": crop.water.root_depth_m,
     }
-    if weather is not None and weather.seasons is not None:
-        coefficients = daily_coefficients(stage_days=crop.stage_days, kc=crop.kc)
-        seasons = weather.seasons
-        bounds = zip(seasons.sowing, seasons.end, strict=True)
-        demand = [float(np.dot(coefficients, weather.et0_mm[first:end])) for first, end in bounds]
+    if last is not None:
+        found["sown until"] = f"{last[0]:02d}-{last[1]:02d}"
+    if weather is not None and weather.record is not None:
+        coefficients, seasons = crop.water.coefficients(), weather.record.seasons
+        demand = [float(np.dot(coefficients, weather.et0_mm[day : day + coefficients.size])) for day in seasons.sowing]
         found |= {"seasons": int(seasons.label.size), "demand, mean of seasons, mm": float(np.mean(demand))}
     return found
 

@@ -15,8 +15,12 @@ from siting.pipeline.write import GEOPACKAGE, plain_table
 
 SHOWN = (
     "plot_id",
+    "rank",
+    "rank_low",
+    "rank_high",
     "supply_rank",
     "area_m2",
+    "supported_area_m2",
     "x",
     "y",
     "yield_dry_m3",
@@ -24,6 +28,10 @@ SHOWN = (
     "supply_ratio_dry",
     "supply_ratio_median",
     "rain_only_ratio_dry",
+    "reliability_pct",
+    "reliability_low_pct",
+    "reliability_high_pct",
+    "rain_only_reliability_pct",
     "cautions",
 )
 """What the summary tells of each plot."""

@@ -23,7 +23,8 @@ from siting.plots import (
 from siting.runoff import RunoffClasses
 from siting.terrain import Terrain
 
-POSITION_NAMES = ("", "summit", "shoulder", "backslope", "footslope", "toeslope")
+WITH_LOSSES, GROSS = 0, 1
+"""Places of the effective areas: with the loss on the way in use, and without any."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -71,7 +72,7 @@ def find_sites(place: Place, ground: Terrain, classes: RunoffClasses, project: P
         inside=place.inside,
         class_of_cell=classes.class_of_cell,
         classes=classes.count,
-        loss_per_km=(settings.runoff.conveyance_loss_per_km,),
+        loss_per_km=(settings.runoff.conveyance_loss_per_km, 0.0),
         cell_area_m2=grid.cell_area_m2,
         **size,
     )

@@ -12,12 +12,14 @@ from siting.outputs import StagedFolder
 from siting.parallel import usable_threads
 from siting.pipeline import frames, shapes, write
 from siting.pipeline.clock import Clock
-from siting.pipeline.crop import choose_crop, soil_of_plots
+from siting.pipeline.crop import choose_crop
+from siting.pipeline.floods import plot_floods
 from siting.pipeline.forecast import refuse_what_does_not_fit
 from siting.pipeline.read import Place, read_place
 from siting.pipeline.results import Results, summarise
 from siting.pipeline.sites import Sites, find_sites
-from siting.pipeline.water import Water, Weather, plot_water, weather_of
+from siting.pipeline.soil import soil_of_plots
+from siting.pipeline.water import Water, plot_water, weather_of
 from siting.progress import Progress
 from siting.runoff import RunoffClasses, classify
 from siting.terrain import Terrain, analyse
@@ -44,16 +46,17 @@ def run(project: Project, *, out: Path, overwrite: bool, threads: int | None, pr
             sites = find_sites(place, ground, classes, project, notes)
         with clock.stage("water"):
             own = frames.plot_ground(sites, place, ground)
-            soil = soil_of_plots(own.texture, project, None if crop is None else crop.root_depth_m, notes)
-            water = None
+            soil = soil_of_plots(own.texture, own.drop_m, project, crop, notes)
+            number = frames.mean_curve_number(sites, classes)
+            water = floods = None
             if weather is not None and sites.plots.count:
-                water = plot_water(sites, classes, weather, crop, soil, project, workers, notes)
+                water = plot_water(sites, classes, weather, soil, project, workers, notes)
+                floods = plot_floods(sites, classes, number, weather, project, notes)
         with clock.stage("ranking"):
-            number = frames.mean_curve_number(sites, classes.curve_number)
-            frame = frames.plots_frame(sites, own, soil, water, weather, ground, place, number, project)
+            frame = frames.plots_frame(sites, own, soil, water, floods, weather, ground, place, number, project)
         summary = summarise(frame, sites, place, notes, str(out))
         with clock.stage("layers"):
-            tables = _tables(frame, sites, ground, place, water, weather)
+            tables = _tables(frame, sites, ground, place, water)
             tables |= write.notes_tables(notes, write.run_info(project, place, sites, weather))
             write.write_layers(folder, tables, ground.grid.crs, ground)
         if project.settings.output.rasters:
@@ -120,9 +123,7 @@ def _classes(place: Place, ground: Terrain, project: Project, notes: Notes) -> R
     return classes
 
 
-def _tables(
-    frame: pd.DataFrame, sites: Sites, ground: Terrain, place: Place, water: Water | None, weather: Weather | None
-) -> dict[str, Any]:
+def _tables(frame: pd.DataFrame, sites: Sites, ground: Terrain, place: Place, water: Water | None) -> dict[str, Any]:
     """Return every layer and table that holds rows; the writer adds those that hold none."""
     tables: dict[str, Any] = {
         "plots": shapes.plots_layer(frame, sites, ground),
@@ -133,6 +134,6 @@ def _tables(
         "pans": shapes.pans_layer(ground),
         "villages": shapes.villages_layer(place),
     }
-    if water is not None and weather is not None and weather.seasons is not None:
-        tables["seasons"] = frames.seasons_frame(sites, weather.seasons, water)
+    if water is not None and water.crop is not None:
+        tables["seasons"] = frames.seasons_frame(sites, water.crop)
     return tables

@@ -1,6 +1,7 @@
-"""From ground above each plot to its water by year and by season, a few plots at a time."""
+"""From ground above each plot to its water by year and by season, and to yields, a few plots at a time."""
 
-from dataclasses import dataclass, fields
+from collections.abc import Sequence
+from dataclasses import dataclass, fields, replace
 from functools import partial
 from typing import Any
 
@@ -8,15 +9,24 @@ import numpy as np
 import numpy.typing as npt
 
 from siting.config import Project
-from siting.demand.climate import reference_et_daily
-from siting.demand.seasonal import SeasonTable, seasonal_supply
-from siting.demand.seasons import Seasons, complete_seasons, season_days
+from siting.demand import (
+    CropRecord,
+    FieldRules,
+    SeasonTable,
+    SeasonYields,
+    complete_seasons,
+    daily_balance,
+    reference_et_daily,
+    seasonal_supply,
+    sowing_seasons,
+)
 from siting.notes import Notes
 from siting.parallel import run_all
-from siting.pipeline.crop import CropChoice, SoilOfPlots
+from siting.pipeline.crop import CropChoice
 from siting.pipeline.read import Place
-from siting.pipeline.sites import Sites
-from siting.ranking import SufficientRatio, dependable, sufficient_ratio
+from siting.pipeline.sites import WITH_LOSSES, Sites
+from siting.pipeline.soil import SoilOfPlots
+from siting.ranking import SufficientRatio, SupportedArea, dependable, sufficient_ratio, supported_area
 from siting.runoff import Rain, RunoffClasses, Years, class_runoff_mm, delivered_m3, hydrological_years, yearly_totals
 
 FloatArray = npt.NDArray[np.float64]
@@ -35,12 +45,16 @@ TREND_YEARS, TREND_SHARE = 15, 0.1
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Weather:
-    """Rain and reference ET (mm, NaN unknown) on the days of the record, its years, and the crop's seasons, if any."""
+    """
+    Rain and reference ET (mm, NaN unknown) on the days of the record, its years, and what the crop makes of them.
+
+    `record` holds the crop's seasons, None without a crop.
+    """
 
     rain: Rain
     et0_mm: FloatArray
     years: Years
-    seasons: Seasons | None
+    record: CropRecord | None
     rain_trend: bool
 
 
@@ -49,15 +63,25 @@ class Water:
     """
     Water of every plot (first axis); year classes are quantiles of the plot's own series.
 
-    `yield_m3` by class of year; `other_*` under the other abstraction ratio; seasons and needed ratio where there
-    is a crop.
+    `yield_m3` by class of year; `other_*` under the other abstraction ratio. What follows is there with a crop: seasons
+    of the seasonal method, the needed ratio, yields of the daily method with run-on and on rain alone, supported area.
     """
 
     yield_m3: dict[str, FloatArray]
     other_yield_dry_m3: FloatArray
-    seasons: SeasonTable | None
+    crop: "CropResults | None"
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class CropResults:
+    """What the crop makes of each plot's water; see Water."""
+
+    seasons: SeasonTable
     other_supply_ratio_dry: FloatArray
-    needed: SufficientRatio | None
+    needed: SufficientRatio
+    yields: SeasonYields
+    rain_alone: SeasonYields
+    supported: SupportedArea
 
 
 def weather_of(place: Place, project: Project, crop: CropChoice | None, altitude_m: float, notes: Notes) -> Weather | None:
@@ -78,15 +102,19 @@ def weather_of(place: Place, project: Project, crop: CropChoice | None, altitude
         notes=notes,
     )
     if np.isnan(et0_mm).all():
-        notes.warn(
-            "no_reference_et", "Neither climate.daily nor climate.reference_et is given: the crop's demand is unknown."
-        )
-    seasons = None
-    if crop is not None:
-        found = season_days(rain.days, planting=crop.planting, season_length_days=sum(crop.stage_days))
-        missing = np.isnan(rain.rain_mm)
-        seasons = complete_seasons(found, missing=missing, max_missing=settings.rain.max_missing_share, notes=notes)
-    return Weather(rain, et0_mm, years, seasons, _rain_trend(rain, years, settings.ranking.dependable, notes))
+        text = "Neither climate.daily nor climate.reference_et is given: the crop's demand is unknown."
+        notes.warn("no_reference_et", text)
+    record = None if crop is None else _crop_record(rain, et0_mm, crop, project, notes)
+    return Weather(rain, et0_mm, years, record, _rain_trend(rain, years, settings.ranking.dependable, notes))
+
+
+def _crop_record(rain: Rain, et0_mm: FloatArray, crop: CropChoice, project: Project, notes: Notes) -> CropRecord:
+    settings = project.settings
+    found = sowing_seasons(rain.days, planting=crop.planting, crop=crop.water)
+    missing = np.isnan(rain.rain_mm)
+    seasons = complete_seasons(found, missing=missing, max_missing=settings.rain.max_missing_share, notes=notes)
+    field = FieldRules(settings.plots.event_hours, settings.crop.standing_water_days)
+    return CropRecord(rain.days, rain.as_dry_mm, et0_mm, seasons, crop.water, crop.planting, field)
 
 
 def _latitude(place: Place, given: float | None, notes: Notes) -> float:
@@ -117,23 +145,30 @@ def plot_water(
     sites: Sites,
     classes: RunoffClasses,
     weather: Weather,
-    crop: CropChoice | None,
     soil: SoilOfPlots,
     project: Project,
     threads: int,
     notes: Notes,
 ) -> Water:
-    """Simulate the run-on of every plot over the whole record, under both abstraction ratios."""
-    used, days = project.settings.runoff.abstraction_ratio, weather.rain.days
-    work = partial(_some_plots, sites, weather, crop, soil, project, _known_area(sites, classes, notes))
+    """Simulate each plot's run-on over the whole record, under both abstraction ratios, and what a crop makes of it."""
+    used, share = project.settings.runoff.abstraction_ratio, project.settings.ranking.dependable
+    other = OTHER_RATIO[used]
+    work = _Simulation(sites, weather, soil, project, _known_area(sites, classes, notes))
     starts = range(0, sites.plots.count, PLOTS_AT_ONCE)
-    found = {}
-    for ratio in (used, OTHER_RATIO[used]):
-        runoff = np.zeros((1, days.size))
+    parts = {}
+    for ratio in (used, other):
+        runoff = np.zeros((1, weather.rain.days.size))
         if classes.count:
             runoff = class_runoff_mm(weather.rain.as_dry_mm, classes, abstraction_ratio=ratio)
-        found[ratio] = run_all(work, [(runoff, slice(start, start + PLOTS_AT_ONCE)) for start in starts], threads)
-    return _year_classes(found[used], found[OTHER_RATIO[used]], project.settings.ranking.dependable)
+        some = partial(work.some_plots, runoff, with_yields=ratio == used)
+        parts[ratio] = run_all(some, [(slice(start, start + PLOTS_AT_ONCE),) for start in starts], threads)
+    yearly = np.concatenate([part.yearly_m3 for part in parts[used]])
+    shares = {"dry": share, "median": 0.5, "wet": 1.0 - share}
+    return Water(
+        {name: dependable(yearly, probability=probability) for name, probability in shares.items()},
+        dependable(np.concatenate([part.yearly_m3 for part in parts[other]]), probability=share),
+        None if weather.record is None else _crop_results(parts[used], parts[other], share),
+    )
 
 
 def _known_area(sites: Sites, classes: RunoffClasses, notes: Notes) -> FloatArray:
@@ -142,7 +177,7 @@ def _known_area(sites: Sites, classes: RunoffClasses, notes: Notes) -> FloatArra
     if classes.count == 0:
         notes.warn("no_curve_number", "Neither cover nor curve numbers are given: how much runs off is unknown.")
         return np.full((sites.plots.count, 1), np.nan)
-    area = catchments.effective_area_m2[0].copy()
+    area = catchments.effective_area_m2[WITH_LOSSES].copy()
     unclassed = catchments.unclassed_m2 > MOST_UNCLASSED_SHARE * catchments.area_m2
     if unclassed.any():
         notes.warn(
@@ -154,56 +189,108 @@ def _known_area(sites: Sites, classes: RunoffClasses, notes: Notes) -> FloatArra
     return np.asarray(area)
 
 
-def _some_plots(
-    sites: Sites,
-    weather: Weather,
-    crop: CropChoice | None,
-    soil: SoilOfPlots,
-    project: Project,
-    area_m2: FloatArray,
-    runoff_mm: FloatArray,
-    part: slice,
-) -> tuple[FloatArray, SeasonTable | None]:
-    """Return the yearly volumes and the seasons of a few plots."""
-    settings, catchments = project.settings, sites.catchments
-    volume = delivered_m3(
-        area_m2[part],
-        settings.terrain.channel_width_m * catchments.bed_length_m[part],
-        runoff_mm,
-        channel_wetting_mm=settings.runoff.channel_wetting_mm,
+@dataclass(frozen=True, slots=True, eq=False)
+class _Part:
+    """Results of a few plots; what needs a crop, or the ratio in use, is None without it."""
+
+    yearly_m3: FloatArray
+    seasons: SeasonTable | None = None
+    yields: SeasonYields | None = None
+    rain_alone: SeasonYields | None = None
+    supported: SupportedArea | None = None
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Simulation:
+    """What is alike for all plots, and their effective areas by runoff class."""
+
+    sites: Sites
+    weather: Weather
+    soil: SoilOfPlots
+    project: Project
+    area_m2: FloatArray
+
+    def some_plots(self, runoff_mm: FloatArray, part: slice, *, with_yields: bool) -> _Part:
+        """Simulate a few plots under one abstraction ratio."""
+        settings = self.project.settings
+        volume = delivered_m3(
+            self.area_m2[part],
+            settings.terrain.channel_width_m * self.sites.catchments.bed_length_m[part],
+            runoff_mm,
+            channel_wetting_mm=settings.runoff.channel_wetting_mm,
+        )
+        yearly = yearly_totals(volume, self.weather.rain.days, self.weather.years)
+        record = self.weather.record
+        if record is None:
+            return _Part(yearly)
+        table = self._seasonal(record, volume, part)
+        return self._with_yields(record, volume, part, yearly, table) if with_yields else _Part(yearly, table)
+
+    def _seasonal(self, record: CropRecord, volume: FloatArray, part: slice) -> SeasonTable:
+        crop = record.crop
+        # within a window the seasonal method counts from its first day
+        seasons = replace(record.seasons, end=record.seasons.sowing + sum(crop.stage_days))
+        return seasonal_supply(
+            runon_m3=volume,
+            rain_mm=record.rain_mm,
+            et0_mm=record.et0_mm,
+            seasons=seasons,
+            stage_days=crop.stage_days,
+            kc=crop.kc,
+            plot_area_m2=self.sites.plots.area_m2[part],
+            catchment_area_m2=self.sites.catchments.area_m2[part],
+            available_water_mm=self.soil.available_water_mm[part],
+            intake_capacity_mm=self.soil.intake_capacity_mm[part],
+            efficiency=self.project.settings.plots.efficiency,
+        )
+
+    def _with_yields(
+        self, record: CropRecord, volume: FloatArray, part: slice, yearly: FloatArray, table: SeasonTable
+    ) -> _Part:
+        settings = self.project.settings.crop
+        area = self.sites.plots.area_m2[part]
+        soil = self.soil.soil.take(np.arange(self.sites.plots.count)[part])
+
+        def yields_at(places: npt.NDArray[np.int64], area_m2: FloatArray) -> SeasonYields:
+            return daily_balance(record, runon_m3=volume[places], soil=soil.take(places), plot_area_m2=area_m2, threads=1)
+
+        rain_alone = daily_balance(record, runon_m3=None, soil=soil, plot_area_m2=area, threads=1)
+        supported = supported_area(
+            yields_at,
+            rain_alone=rain_alone,
+            patch_area_m2=area,
+            target_yield=settings.target_yield,
+            target_reliability=settings.target_reliability,
+            standing_water_days=settings.standing_water_days,
+        )
+        return _Part(yearly, table, yields_at(np.arange(area.size), area), rain_alone, supported)
+
+
+def _crop_results(used: list[_Part], other: list[_Part], share: float) -> CropResults:
+    """Take the quantiles of each plot's own seasons."""
+    seasons = _joined([part.seasons for part in used])
+    ratio_other = np.concatenate([part.seasons.supply_ratio for part in other if part.seasons is not None])
+    return CropResults(
+        seasons,
+        dependable(ratio_other, probability=share),
+        sufficient_ratio(seasons.needed_ratio, lacks_runon=seasons.lacks_runon, share_of_seasons=share),
+        _joined([part.yields for part in used]),
+        _joined([part.rain_alone for part in used]),
+        _joined([part.supported for part in used]),
     )
-    yearly = yearly_totals(volume, weather.rain.days, weather.years)
-    if crop is None or weather.seasons is None:
-        return yearly, None
-    return yearly, seasonal_supply(
-        runon_m3=volume,
-        rain_mm=weather.rain.as_dry_mm,
-        et0_mm=weather.et0_mm,
-        seasons=weather.seasons,
-        stage_days=crop.stage_days,
-        kc=crop.kc,
-        plot_area_m2=sites.plots.area_m2[part],
-        catchment_area_m2=catchments.area_m2[part],
-        available_water_mm=soil.available_water_mm[part],
-        intake_capacity_mm=soil.intake_capacity_mm[part],
-        efficiency=settings.plots.efficiency,
-    )
 
 
-def _year_classes(used: list[Any], other: list[Any], share: float) -> Water:
-    """Take the quantiles of each plot's own series."""
-    yearly, yearly_other = (np.concatenate([volumes for volumes, _ in parts]) for parts in (used, other))
-    shares = {"dry": share, "median": 0.5, "wet": 1.0 - share}
-    yields = {name: dependable(yearly, probability=probability) for name, probability in shares.items()}
-    other_dry = dependable(yearly_other, probability=share)
-    if used[0][1] is None:
-        return Water(yields, other_dry, None, np.full(other_dry.shape, np.nan), None)
-    seasons, seasons_other = (_joined([table for _, table in parts]) for parts in (used, other))
-    needed = sufficient_ratio(seasons.needed_ratio, lacks_runon=seasons.lacks_runon, share_of_seasons=share)
-    return Water(yields, other_dry, seasons, dependable(seasons_other.supply_ratio, probability=share), needed)
+ALIKE = ("label", "balance")
+"""Columns that hold for all plots together."""
 
 
-def _joined(tables: list[SeasonTable]) -> SeasonTable:
-    """Put the seasons of several groups of plots under one another."""
-    columns = {field.name: np.concatenate([getattr(table, field.name) for table in tables]) for field in fields(SeasonTable)}
-    return SeasonTable(**columns)
+def _joined(tables: Sequence[Any]) -> Any:
+    """Put the results of several groups of plots, columns by plot, under one another."""
+    first = tables[0]
+    columns = {
+        each.name: getattr(first, each.name)
+        if each.name in ALIKE
+        else np.concatenate([getattr(table, each.name) for table in tables])
+        for each in fields(first)
+    }
+    return type(first)(**columns)

@@ -68,8 +68,8 @@ def run_info(project: Project, place: Place, sites: Sites, weather: Weather | No
     if weather is not None:
         labels = weather.years.labels
         found["rain years"] = f"{labels.size} complete, {labels[0]} to {labels[-1]}, from month {weather.years.starts_month}"
-    if weather is not None and weather.seasons is not None:
-        found["seasons"] = str(weather.seasons.label.size)
+    if weather is not None and weather.record is not None:
+        found["seasons"] = str(weather.record.seasons.label.size)
     return found
 
 

@@ -23,6 +23,7 @@ SUMMARY = {
     "plots": [
         {
             "plot_id": number,
+            "rank": number,
             "supply_rank": number,
             "area_m2": 12_300.0,
             "x": 694_321.4,
@@ -32,6 +33,9 @@ SUMMARY = {
             "supply_ratio_dry": 0.61234,
             "supply_ratio_median": np.nan,
             "rain_only_ratio_dry": 0.2,
+            "supported_area_m2": 9_000.0,
+            "reliability_pct": 82.35,
+            "rain_only_reliability_pct": None,
             "cautions": "open_catchment",
         }
         for number in range(1, 8)
@@ -179,7 +183,7 @@ def test_the_screen_of_a_run_shows_plots_reasons_assumptions_and_cautions(capsys
     assert "7 plots, the first 5" in out
     rows = [line.split() for line in out.splitlines() if "694321" in line]
     assert [row[0] for row in rows] == ["1", "2", "3", "4", "5"]
-    assert rows[0][4:] == ["1.23", "841", "5200", "0.6123", "-", "0.2", "open_catchment"]
+    assert rows[0][4:] == ["1.23", "0.9", "841", "5200", "0.6123", "8.2", "-", "open_catchment"]
     assert "99.9 %  too steep (999000)" in out
     assert "< 0.1 %  pan (1)" in out
     assert "no data" not in out

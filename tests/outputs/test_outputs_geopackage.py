@@ -62,6 +62,8 @@ PROMISED_PLOTS = [
     "peak_flow_25y_m3s",
     "spillway_width_m",
     "supply_rank",
+    "reliability_low_pct",
+    "reliability_high_pct",
     "catchment_outside_pct",
     "behind_pan_pct",
     "score",

@@ -45,7 +45,7 @@ def test_ranks_follow_the_supply_ratio(demo: Demo) -> None:
     capped = np.minimum(plots["supply_ratio_dry"].to_numpy(), 1.0)
     assert (np.diff(capped) <= 0).all()
     assert sorted(plots["plot_id"]) == list(range(1, len(plots) + 1))
-    assert plots[["rank_low", "reliability_pct", "score", "peak_flow_10y_m3s"]].isna().all(axis=None)
+    assert plots[["rank_low", "score", "set_order"]].isna().all(axis=None)
 
 
 def test_plots_lie_inside_the_boundary_and_off_the_road(demo: Demo) -> None:
@@ -188,3 +188,36 @@ def test_two_runs_give_the_same_bytes_whatever_the_threads(demo: Demo, tmp_path:
     run(load_project(DEMO / "project.toml"), out=tmp_path / "again", threads=1)
     first, second = (json.loads((path / "run.json").read_text())["outputs"] for path in (folder, tmp_path / "again"))
     assert first == second
+
+
+def test_yields_and_reliability_follow_from_the_seasons(demo: Demo) -> None:
+    plots, seasons = read(demo[0], "plots").set_index("plot_id"), read(demo[0], "seasons")
+    assert len(seasons) == 34 * len(plots)
+    good = (seasons["relative_yield"] >= 0.7).groupby(seasons["plot_id"]).mean() * 100
+    np.testing.assert_allclose(plots["reliability_pct"].sort_index(), good)
+    alone = (seasons["rain_only_relative_yield"] >= 0.7).groupby(seasons["plot_id"]).mean() * 100
+    np.testing.assert_allclose(plots["rain_only_reliability_pct"].sort_index(), alone)
+    mean = seasons.groupby("plot_id")["relative_yield"].mean() * 100
+    np.testing.assert_allclose(plots["mean_yield_pct"].sort_index(), mean)
+    assert (plots["reliability_low_pct"] <= plots["reliability_pct"]).all()
+    assert (plots["reliability_pct"] <= plots["reliability_high_pct"]).all()
+    # run-on lowers a yield only through standing water, or in the season after a stand was lost
+    lower = seasons[seasons["relative_yield"] < seasons["rain_only_relative_yield"] - 1e-9]
+    assert len(lower) < 0.01 * len(seasons)
+    assert plots["reliability_pct"].iloc[:20].min() > 1.5 * plots["rain_only_reliability_pct"].iloc[:20].max()
+
+
+def test_supported_areas_lie_within_the_plots_and_hold_the_target(demo: Demo) -> None:
+    plots = read(demo[0], "plots")
+    assert (plots["supported_area_m2"] <= plots["area_m2"] + 1e-6).all()
+    full = plots["limit"] == "land"
+    assert (plots.loc[full, "reliability_pct"] >= 67).all()
+    assert (plots.loc[~full, "reliability_pct"] < 67).all()
+
+
+def test_flood_peaks_by_the_published_form(demo: Demo) -> None:
+    """The 25-year peak is larger; the spillway passes it by b = Q / (C h^1.5), C 1.5 and h 0.3 m as assumed."""
+    plots = read(demo[0], "plots")
+    assert (plots["peak_flow_25y_m3s"] > plots["peak_flow_10y_m3s"]).all()
+    np.testing.assert_allclose(plots["spillway_width_m"], plots["peak_flow_25y_m3s"] / (1.5 * 0.3**1.5))
+    assert (plots["peak_flow_10y_m3s"] / plots["catchment_area_m2"] * 1e6).between(0.5, 30).all()  # m3/s for each km2

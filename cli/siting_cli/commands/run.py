@@ -96,16 +96,17 @@ def _plot_row(row: Mapping[str, Any]) -> dict[str, object]:
     """Return one plot as a reader wants it: hectares, and ratios as printed, unknown as a dash."""
     in_degrees = abs(row["x"]) <= 360 and abs(row["y"]) <= 90
     return {
-        "rank": row["supply_rank"],
+        "rank": row["rank"],
         "plot": row["plot_id"],
         "x": _coordinate(row["x"], in_degrees),
         "y": _coordinate(row["y"], in_degrees),
         "hectares": row["area_m2"] / 10_000,
+        "supported": None if row["supported_area_m2"] is None else row["supported_area_m2"] / 10_000,
         "dry_year_m3": row["yield_dry_m3"],
         "need_m3": row["crop_demand_m3"],
         "supply_dry": row["supply_ratio_dry"],
-        "supply_median": row["supply_ratio_median"],
-        "rain_alone_dry": row["rain_only_ratio_dry"],
+        "good_years_in_10": _in_ten(row["reliability_pct"]),
+        "on_rain_alone": _in_ten(row["rain_only_reliability_pct"]),
         "cautions": (row["cautions"] or "").replace(";", "; ") or None,
     }
 
@@ -113,6 +114,11 @@ def _plot_row(row: Mapping[str, Any]) -> dict[str, object]:
 def _coordinate(value: float, in_degrees: bool) -> str:
     """Write a map coordinate to about a metre."""
     return f"{value:.5f}" if in_degrees else f"{value:.0f}"
+
+
+def _in_ten(percent: float | None) -> float | None:
+    """Turn a share of seasons in percent into years in ten, to a tenth."""
+    return None if percent is None else round(percent / 10, 1)
 
 
 def _cells(cells: Mapping[str, int]) -> str:

@@ -1,0 +1,94 @@
+"""What a big storm sends to each plot, and how wide the water must be let out: for cautions, not for design."""
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from siting.config import Project
+from siting.notes import Notes
+from siting.pipeline.sites import GROSS, Sites
+from siting.pipeline.water import Weather
+from siting.runoff import (
+    RunoffClasses,
+    annual_max_mm,
+    design_rain_mm,
+    few_years_for_design,
+    lag_h,
+    peak_flow_limits,
+    peak_flow_m3s,
+    runoff_depth_mm,
+    spillway_width_m,
+    time_of_concentration_h,
+)
+
+FloatArray = npt.NDArray[np.float64]
+
+PERIODS_YEARS = (10.0, 25.0)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Floods:
+    """Peak flow at each plot's intake in the 10- and the 25-year storm, m3/s, and spillway width, m; NaN unknown."""
+
+    peak_10y_m3s: FloatArray
+    peak_25y_m3s: FloatArray
+    spillway_width_m: FloatArray
+
+
+def plot_floods(
+    sites: Sites, classes: RunoffClasses, curve_number: FloatArray, weather: Weather, project: Project, notes: Notes
+) -> Floods:
+    """
+    Estimate flood peaks by the lag and the graphical method, from design rain of the record.
+
+    Runoff is summed by class; the mean curve number serves the lag and Ia/P alone. Open catchments give at least this.
+    """
+    settings, catchments = project.settings, sites.catchments
+    maxima = annual_max_mm(weather.rain, weather.years)
+    rains = design_rain_mm(maxima, return_period_years=np.array(PERIODS_YEARS))
+    if not np.isnan(rains).any():
+        told = " and ".join(f"{rain:.0f} mm in {years:.0f} years" for rain, years in zip(rains, PERIODS_YEARS, strict=True))
+        few = "; fewer than 20 years, so uncertain" if few_years_for_design(maxima) else ""
+        source = f"Gumbel by moments from {maxima.size} yearly maxima, x 1.13 for readings at a fixed hour{few}"
+        notes.assume("design_rain", told, "", source, "flood peaks and spillway widths")
+    fed = catchments.area_m2 > 0
+    slope_pct = np.where(fed, 100.0 * catchments.mean_slope, np.nan)
+    hours = time_of_concentration_h(
+        lag_h=lag_h(
+            flow_length_m=np.where(fed, catchments.longest_path_m, np.nan),
+            curve_number=np.where(fed, curve_number, np.nan),
+            slope_pct=slope_pct,
+        )
+    )
+    peaks = [_peak(sites, classes, float(rain), curve_number, hours, project) for rain in rains]
+    held = peak_flow_limits(rain_mm=rains[0], curve_number=curve_number, time_of_concentration_h=hours)
+    count = int(np.count_nonzero((held.ia_over_p | held.time_of_concentration)[fed]))
+    if count:
+        source = "printed limits of the graphical method: Ia/P 0.1 to 0.5, time of concentration 0.1 to 10 h"
+        notes.assume("peak_flow.held_to_limits", f"{count} of {fed.size}", "plots", source, "their flood peaks")
+    width = spillway_width_m(
+        flow_m3s=peaks[1], head_m=settings.plots.spillway_head_m, coefficient=settings.plots.weir_coefficient
+    )
+    return Floods(peaks[0], peaks[1], width)
+
+
+def _peak(
+    sites: Sites, classes: RunoffClasses, rain_mm: float, curve_number: FloatArray, hours: FloatArray, project: Project
+) -> FloatArray:
+    """Return the peak of one storm at each plot; 0 where nothing drains to it, NaN where unknown."""
+    area, ratio = sites.catchments.area_m2, project.settings.runoff.abstraction_ratio
+    by_class = sites.catchments.effective_area_m2[GROSS]
+    depth = runoff_depth_mm(rain_mm, classes.retention_mm(abstraction_ratio=ratio), abstraction_ratio=ratio)
+    known = by_class.sum(axis=1)
+    with np.errstate(invalid="ignore", divide="ignore"):
+        runoff_mm = (by_class * depth).sum(axis=1) / known
+    peak = peak_flow_m3s(
+        area_m2=area,
+        runoff_mm=runoff_mm,
+        rain_mm=rain_mm,
+        curve_number=curve_number,
+        time_of_concentration_h=hours,
+        rain_distribution=project.settings.runoff.rain_distribution,
+    )
+    return np.where(area > 0, peak, 0.0)
