@@ -9,6 +9,7 @@ from siting_cli.commands.demo import demo
 from siting_cli.commands.new import new
 from siting_cli.commands.run import run
 from siting_cli.commands.tables import covers, crops, soils
+from siting_cli.commands.why import why
 from siting_cli.console import fail
 
 
@@ -35,7 +36,7 @@ def group() -> None:
     """Find small low plots that could be cropped on run-on in dry country. Screening, not design."""
 
 
-for command in (demo, run, check, new, crops, covers, soils):
+for command in (demo, run, check, new, why, crops, covers, soils):
     group.add_command(command)
 
 

@@ -64,7 +64,7 @@ def project_from(project: Path | None, overrides: tuple[str, ...], flags: dict[s
     from siting.errors import ConfigError
 
     here = Path("project.toml")
-    has_dem = flags["dem"] is not None or any(one.partition("=")[0].strip() == "place.dem" for one in overrides)
+    has_dem = flags.get("dem") is not None or any(one.partition("=")[0].strip() == "place.dem" for one in overrides)
     if project is None and not has_dem:
         if not here.exists():
             msg = (

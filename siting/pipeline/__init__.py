@@ -11,7 +11,7 @@ if TYPE_CHECKING:
     from siting.config import Project
     from siting.pipeline.results import Results
 
-__all__ = ["check", "run"]
+__all__ = ["check", "run", "why"]
 
 
 def run(
@@ -63,3 +63,35 @@ def check(project: "Project") -> dict[str, Any]:
     """
     report: Callable[..., dict[str, Any]] = import_module("siting.pipeline.report").check
     return report(project)
+
+
+def why(
+    project: "Project",
+    x: float,
+    y: float,
+    *,
+    lonlat: bool = False,
+    threads: int | None = None,
+    progress: Progress | None = None,
+) -> dict[str, Any]:
+    """
+    Judge one place by every test that a run makes; write nothing.
+
+    Parameters
+    ----------
+    x, y
+        Coordinates of the elevation model's CRS; with `lonlat` longitude and latitude, degrees, WGS 84.
+
+    Returns
+    -------
+    dict
+        "place" (cell and coordinates), "tests" (a list with value, limit, unit, margin, result and what would change
+        it), "reason", "plot_id" (None outside plots) and "answer", a sentence.
+
+    Raises
+    ------
+    SitingError
+        For an input that cannot be used, or a point outside the elevation model.
+    """
+    judge: Callable[..., dict[str, Any]] = import_module("siting.pipeline.why").why
+    return judge(project, x, y, lonlat=lonlat, threads=threads, progress=progress or Silent())

@@ -12,6 +12,8 @@ from siting.notes import Notes
 from siting.pipeline.read import Place
 from siting.plots import (
     Catchments,
+    Ground,
+    Limits,
     PlotCells,
     PlotLabels,
     deepest_part,
@@ -46,7 +48,7 @@ def find_sites(place: Place, ground: Terrain, classes: RunoffClasses, project: P
     """Screen the ground, make plots of what passed and of what was given, and trace their catchments."""
     grid, size = ground.grid, _cell_size(ground)
     settings = project.settings
-    screening = _screen(place, ground, project)
+    screening = screen(*screening_of(place, ground, project))
     plots = make_plots(
         passed=screening.passed if settings.plots.search else np.zeros(grid.shape, dtype=np.bool_),
         given=place.given_label,
@@ -84,11 +86,12 @@ def _cell_size(ground: Terrain) -> dict[str, Any]:
     return {"cell_width_m": ground.grid.cell_width_m, "cell_height_m": ground.grid.cell_height_m}
 
 
-def _screen(place: Place, ground: Terrain, project: Project) -> Any:
-    limits, pans = project.settings.plots, ground.pans
-    deepest = deepest_part(elevation=ground.elevation, pan_label=pans.label, pan_depth_m=pans.depth_m)
+def screening_of(place: Place, ground: Terrain, project: Project) -> tuple[Ground, Limits]:
+    """Return what the tests look at, and the limits in use."""
+    settings, pans = project.settings.plots, ground.pans
     depth = project.settings.soil.depth_m
-    return screen(
+    deepest = deepest_part(elevation=ground.elevation, pan_label=pans.label, pan_depth_m=pans.depth_m)
+    looked_at = Ground(
         valid=ground.direction != 255,
         inside=place.inside,
         excluded=place.excluded,
@@ -101,16 +104,19 @@ def _screen(place: Place, ground: Terrain, project: Project) -> Any:
         channel=ground.channel,
         direction=ground.direction,
         pan_deepest=deepest & pans.kept_mask(),
-        max_slope_pct=limits.max_slope_pct,
-        max_height_above_channel_m=limits.max_height_above_channel_m,
-        min_soil_depth_m=limits.min_soil_depth_m,
-        min_catchment_ratio=limits.min_catchment_ratio,
-        target_area_m2=limits.target_area_m2,
-        max_catchment_m2=limits.max_catchment_m2,
-        channel_width_m=project.settings.terrain.channel_width_m,
-        channel_setback_m=limits.channel_setback_m,
         **_cell_size(ground),
     )
+    limits = Limits(
+        max_slope_pct=settings.max_slope_pct,
+        max_height_above_channel_m=settings.max_height_above_channel_m,
+        min_soil_depth_m=settings.min_soil_depth_m,
+        min_catchment_ratio=settings.min_catchment_ratio,
+        target_area_m2=settings.target_area_m2,
+        max_catchment_m2=settings.max_catchment_m2,
+        channel_width_m=project.settings.terrain.channel_width_m,
+        channel_setback_m=settings.channel_setback_m,
+    )
+    return looked_at, limits
 
 
 def _tell(plots: PlotLabels, place: Place, notes: Notes) -> None:

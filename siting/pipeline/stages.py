@@ -39,9 +39,9 @@ def run(project: Project, *, out: Path, overwrite: bool, threads: int | None, pr
             crop = choose_crop(project, place.climate, notes)
             weather = weather_of(place, project, crop, float(np.nanmean(place.dem.values)), notes)
         with clock.stage("terrain"):
-            ground = _terrain(place, project, workers, progress, notes)
+            ground = analyse_terrain(place, project, workers, progress, notes)
         with clock.stage("runoff classes"):
-            classes = _classes(place, ground, project, notes)
+            classes = runoff_classes(place, ground, project, notes)
         with clock.stage("plots"):
             sites = find_sites(place, ground, classes, project, notes)
         with clock.stage("water"):
@@ -68,7 +68,8 @@ def run(project: Project, *, out: Path, overwrite: bool, threads: int | None, pr
     return Results(summary | {"seconds": clock.total_seconds}, tuple(notes.warnings))
 
 
-def _terrain(place: Place, project: Project, threads: int, progress: Progress, notes: Notes) -> Terrain:
+def analyse_terrain(place: Place, project: Project, threads: int, progress: Progress, notes: Notes) -> Terrain:
+    """Derive the terrain of a place; the vertical error that stands in is noted, and so is what is odd about the ground."""
     settings, cell_m = project.settings, place.dem.grid.typical_cell_m
     error_m = settings.place.vertical_error_m
     if error_m is None:
@@ -111,7 +112,7 @@ def _tell_pans(ground: Terrain, notes: Notes) -> None:
         )
 
 
-def _classes(place: Place, ground: Terrain, project: Project, notes: Notes) -> RunoffClasses:
+def runoff_classes(place: Place, ground: Terrain, project: Project, notes: Notes) -> RunoffClasses:
     """Sort the ground by how it runs off; the rain after which each class runs is noted, for people can confirm it."""
     ratio = project.settings.runoff.abstraction_ratio
     classes = classify(curve_number=place.curve_number, runs_after_mm=place.runs_after_mm, valid=ground.direction != 255)

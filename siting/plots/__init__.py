@@ -3,13 +3,15 @@
 from siting.plots.catchments import Catchments, PlotCells, catchment_cells, overflow_path, plot_cells, trace_catchments
 from siting.plots.division import FOUND, GIVEN, PlotLabels, make_plots
 from siting.plots.patches import PlotSize, plot_size
-from siting.plots.screening import Screening, deepest_part, screen, strip_share_left
+from siting.plots.screening import Ground, Limits, Screening, deepest_part, judge, screen, strip_share_left
 from siting.plots.surface import PlotPlane, commonest, fit_planes, plot_means, slope_margin
 
 __all__ = [
     "FOUND",
     "GIVEN",
     "Catchments",
+    "Ground",
+    "Limits",
     "PlotCells",
     "PlotLabels",
     "PlotPlane",
@@ -19,6 +21,7 @@ __all__ = [
     "commonest",
     "deepest_part",
     "fit_planes",
+    "judge",
     "make_plots",
     "overflow_path",
     "plot_cells",

@@ -1,6 +1,7 @@
 """Which cells can be cropped; each failed test leaves its code and by how much."""
 
-from dataclasses import dataclass
+from collections.abc import Iterator
+from dataclasses import dataclass, fields
 from typing import Any
 
 import numpy as np
@@ -52,38 +53,15 @@ class Screening:
         self.margin[new] = np.broadcast_to(np.asarray(margin, dtype=np.float32), new.shape)[new]
 
 
-def screen(
-    *,
-    valid: Mask,
-    inside: Mask | None,
-    excluded: Mask | None,
-    soil_depth_m: Floats | float,
-    slope: Floats,
-    position: Codes,
-    height_above_channel_m: Floats,
-    multiple_flow_area_m2: Floats,
-    contributing_area_m2: Floats,
-    channel: Mask,
-    direction: Codes,
-    pan_deepest: Mask,
-    cell_width_m: FloatArray,
-    cell_height_m: FloatArray,
-    max_slope_pct: float,
-    max_height_above_channel_m: float,
-    min_soil_depth_m: float,
-    min_catchment_ratio: float,
-    target_area_m2: float,
-    max_catchment_m2: float,
-    channel_width_m: float,
-    channel_setback_m: float,
-) -> Screening:
+@dataclass(frozen=True, slots=True, eq=False)
+class Ground:
     """
-    Test every cell, in the order of the reason codes; the first failed test is the reason.
+    What the tests look at, all rasters (rows, columns).
 
     Parameters
     ----------
     valid
-        Where heights are known; all arrays are (rows, columns). A valid cell without slope or areas counts as no data.
+        Where heights are known. A valid cell without slope or areas counts as no data.
     inside, excluded
         The boundary given, and what must stay clear, set-backs included; None where there is none.
     soil_depth_m
@@ -91,60 +69,140 @@ def screen(
     slope
         Tangent.
     position, height_above_channel_m
-        A cell is low if it is footslope (4) or toeslope (5) or not higher than `max_height_above_channel_m` above its
-        channel; one whose height is unknown (NaN) and that is no slope foot fails, with margin NaN.
-    multiple_flow_area_m2
-        Per metre of contour (mean of the cell's width and height) at least `min_catchment_ratio` times the root of
-        `target_area_m2`.
-    contributing_area_m2
-        At most `max_catchment_m2`.
-    channel, channel_width_m, channel_setback_m
-        The strip of channel_width_m / 2 + channel_setback_m on both sides of the channels' lines is taken off; see
-        `strip_share_left`.
+        A cell is low if it is footslope (4) or toeslope (5) or not higher than the limit above its channel; one whose
+        height is unknown (NaN) and that is no slope foot fails, with margin NaN.
+    multiple_flow_area_m2, contributing_area_m2
+        Ground above each cell by multiple flow, and along the steepest descent.
+    channel, direction
+        Marks of channel cells, and where each cell drains to, for the strips along the channels' lines.
     pan_deepest
         The deepest parts of pans, which fail.
     cell_width_m, cell_height_m
         Ground metres of a cell, for each row.
+    """
+
+    valid: Mask
+    inside: Mask | None
+    excluded: Mask | None
+    soil_depth_m: Floats | float
+    slope: Floats
+    position: Codes
+    height_above_channel_m: Floats
+    multiple_flow_area_m2: Floats
+    contributing_area_m2: Floats
+    channel: Mask
+    direction: Codes
+    pan_deepest: Mask
+    cell_width_m: FloatArray
+    cell_height_m: FloatArray
+
+    def rows(self, first: int, after: int) -> "Ground":
+        """Return some rows of it, without a copy."""
+        shape = self.valid.shape
+        found: dict[str, Any] = {}
+        for each in fields(self):
+            values = getattr(self, each.name)
+            if each.name == "soil_depth_m":
+                values = np.broadcast_to(np.asarray(values), shape)
+            found[each.name] = None if values is None else values[first:after]
+        return Ground(**found)
+
+
+@dataclass(frozen=True, slots=True)
+class Limits:
+    """
+    What a cell that can be cropped keeps to.
+
+    Multiple-flow area per metre of contour (mean of the cell's width and height) must reach `min_catchment_ratio` times
+    the root of `target_area_m2`; contributing area may be `max_catchment_m2` at most. The strip of channel_width_m / 2 +
+    channel_setback_m on both sides of the channels' lines is taken off; see `strip_share_left`.
 
     References
     ----------
     Slope: Critchley & Siegert (1991), FAO AGL/MISC/17/91. The other limits are common practice or assumptions.
     """
-    left = strip_share_left(
-        channel,
-        direction,
-        0.5 * channel_width_m + channel_setback_m,
-        cell_width_m=cell_width_m,
-        cell_height_m=cell_height_m,
-    )
-    found = Screening(np.zeros(valid.shape, dtype=np.uint8), np.full(valid.shape, np.nan, dtype=np.float32))
-    contour_m = 0.5 * (cell_width_m + cell_height_m)
-    soil_margin = np.broadcast_to(np.asarray(soil_depth_m - min_soil_depth_m), valid.shape)
-    for row0 in range(0, valid.shape[0], BAND_ROWS):  # the margins of a band are small beside the rasters
-        band = slice(row0, row0 + BAND_ROWS)
+
+    max_slope_pct: float
+    max_height_above_channel_m: float
+    min_soil_depth_m: float
+    min_catchment_ratio: float
+    target_area_m2: float
+    max_catchment_m2: float
+    channel_width_m: float
+    channel_setback_m: float
+
+    @property
+    def strip_half_width_m(self) -> float:
+        """Ground taken off on each side of a channel's line."""
+        return 0.5 * self.channel_width_m + self.channel_setback_m
+
+    @property
+    def least_fed_m(self) -> float:
+        """Least ground above for each metre of contour, m2/m."""
+        return float(self.min_catchment_ratio * np.sqrt(self.target_area_m2))
+
+
+def screen(ground: Ground, limits: Limits) -> Screening:
+    """Test every cell, in the order of the reason codes; the first failed test is the reason."""
+    shape = ground.valid.shape
+    left = _strip_left(ground, limits)
+    found = Screening(np.zeros(shape, dtype=np.uint8), np.full(shape, np.nan, dtype=np.float32))
+    for row in range(0, shape[0], BAND_ROWS):  # the margins of a band are small beside the rasters
+        band = slice(row, row + BAND_ROWS)
         part = Screening(found.reason[band], found.margin[band])
+        some = ground.rows(row, row + BAND_ROWS)
         with np.errstate(invalid="ignore"):
-            slope_margin = np.float32(max_slope_pct) - np.float32(100.0) * slope[band]
-            unknown = np.isnan(slope[band]) | np.isnan(contributing_area_m2[band]) | np.isnan(multiple_flow_area_m2[band])
-            part._fail(NO_DATA, ~valid[band] | unknown)
-            if inside is not None:
-                part._fail(OUTSIDE_BOUNDARY, ~inside[band])
-            if excluded is not None:
-                part._fail(EXCLUDED, excluded[band])
-            part._fail(CHANNEL_STRIP, left[band] < LEAST_SHARE, left[band] - LEAST_SHARE)
-            part._fail(PAN, pan_deepest[band])
-            part._fail(TOO_STEEP, slope_margin < 0, slope_margin)
-            height_margin = max_height_above_channel_m - height_above_channel_m[band]
-            foot = (position[band] == FOOTSLOPE) | (position[band] == TOESLOPE)
-            part._fail(NOT_LOW, ~foot & ~(height_margin >= 0), height_margin)
-            part._fail(SOIL_TOO_SHALLOW, soil_margin[band] < 0, soil_margin[band])
-            fed_m = multiple_flow_area_m2[band] / contour_m[band, None]
-            fed_margin = fed_m - min_catchment_ratio * np.sqrt(target_area_m2)
-            part._fail(TOO_LITTLE_ABOVE, fed_margin < 0, fed_margin)
-            flood_margin = max_catchment_m2 - contributing_area_m2[band]
-            part._fail(TOO_MUCH_ABOVE, flood_margin < 0, flood_margin)
-        part.margin[part.passed] = slope_margin[part.passed]
+            for code, failed, margin in _tests(some, limits, left[band]):
+                part._fail(code, failed, margin)
+            part.margin[part.passed] = _slope_margin(some, limits)[part.passed]
     return found
+
+
+def judge(ground: Ground, limits: Limits, *, row: int, col: int) -> dict[int, tuple[bool, float]]:
+    """Return for one cell and every test, by its code, whether it fails, and its margin (NaN where it has no measure)."""
+    left = _strip_left(ground, limits)
+    found = {}
+    with np.errstate(invalid="ignore"):
+        for code, failed, margin in _tests(ground.rows(row, row + 1), limits, left[row : row + 1]):
+            value = np.broadcast_to(np.asarray(margin, dtype=np.float64), failed.shape)[0, col]
+            found[code] = (bool(failed[0, col]), float(value))
+    return found
+
+
+def _strip_left(ground: Ground, limits: Limits) -> npt.NDArray[np.float32]:
+    return strip_share_left(
+        ground.channel,
+        ground.direction,
+        limits.strip_half_width_m,
+        cell_width_m=ground.cell_width_m,
+        cell_height_m=ground.cell_height_m,
+    )
+
+
+def _slope_margin(ground: Ground, limits: Limits) -> Floats:
+    return np.asarray(np.float32(limits.max_slope_pct) - np.float32(100.0) * ground.slope)
+
+
+def _tests(ground: Ground, limits: Limits, left: Floats) -> Iterator[tuple[int, Mask, Any]]:
+    """Give code, failed cells and margin of every test, in the order of the codes."""
+    none = np.zeros(ground.valid.shape, dtype=np.bool_)
+    area, shared = ground.contributing_area_m2, ground.multiple_flow_area_m2
+    yield NO_DATA, ~ground.valid | np.isnan(ground.slope) | np.isnan(area) | np.isnan(shared), np.nan
+    yield OUTSIDE_BOUNDARY, none if ground.inside is None else ~ground.inside, np.nan
+    yield EXCLUDED, none if ground.excluded is None else ground.excluded, np.nan
+    yield CHANNEL_STRIP, left < LEAST_SHARE, left - LEAST_SHARE
+    yield PAN, ground.pan_deepest, np.nan
+    margin = _slope_margin(ground, limits)
+    yield TOO_STEEP, margin < 0, margin
+    margin = limits.max_height_above_channel_m - ground.height_above_channel_m
+    foot = (ground.position == FOOTSLOPE) | (ground.position == TOESLOPE)
+    yield NOT_LOW, ~foot & ~(margin >= 0), margin
+    depth_margin = ground.soil_depth_m - limits.min_soil_depth_m
+    yield SOIL_TOO_SHALLOW, np.asarray(depth_margin < 0), depth_margin
+    contour_m = 0.5 * (ground.cell_width_m + ground.cell_height_m)
+    fed_margin = shared / contour_m[:, None] - limits.least_fed_m
+    yield TOO_LITTLE_ABOVE, fed_margin < 0, fed_margin
+    yield TOO_MUCH_ABOVE, area > limits.max_catchment_m2, limits.max_catchment_m2 - area
 
 
 def strip_share_left(

@@ -1,11 +1,12 @@
 """Screening: each test alone, its margin, its order, and strips that do not depend on the size of cells."""
 
+from dataclasses import fields
 from typing import Any
 
 import numpy as np
 import pytest
 
-from siting.plots import Screening, deepest_part, screen, strip_share_left
+from siting.plots import Ground, Limits, Screening, deepest_part, judge, screen, strip_share_left
 
 SHAPE = (5, 5)
 E, SOUTH = 1, 3
@@ -13,7 +14,11 @@ E, SOUTH = 1, 3
 
 def screened(**changed: Any) -> Screening:
     """Screen ground on which every cell passes with room, but for what is changed."""
-    values: dict[str, Any] = {
+    return screen(*ground_and_limits(with_room() | changed))
+
+
+def with_room() -> dict[str, Any]:
+    return {
         "valid": np.ones(SHAPE, dtype=np.bool_),
         "inside": None,
         "excluded": None,
@@ -37,7 +42,12 @@ def screened(**changed: Any) -> Screening:
         "channel_width_m": 2.0,
         "channel_setback_m": 5.0,
     }
-    return screen(**(values | changed))
+
+
+def ground_and_limits(values: dict[str, Any]) -> tuple[Ground, Limits]:
+    names = {each.name for each in fields(Ground)}
+    ground = Ground(**{name: value for name, value in values.items() if name in names})
+    return ground, Limits(**{name: value for name, value in values.items() if name not in names})
 
 
 def at_centre(value: Any, other: Any, dtype: Any) -> np.ndarray:
@@ -136,3 +146,28 @@ def test_the_deepest_part_of_a_pan_is_the_lower_half_of_its_depth() -> None:
     label = np.array([[0, 1, 1, 1, 0]], dtype=np.int32)
     deep = deepest_part(elevation=z, pan_label=label, pan_depth_m=np.array([3.0]))
     assert deep.tolist() == [[False, False, True, True, False]]
+
+
+@pytest.mark.parametrize("seed", range(20))
+def test_the_judgement_of_one_cell_agrees_with_the_screening(seed: int) -> None:
+    random = np.random.default_rng(seed)
+    values = with_room() | {
+        "slope": random.uniform(0, 0.08, SHAPE).astype(np.float32),
+        "height_above_channel_m": random.uniform(0, 8, SHAPE).astype(np.float32),
+        "position": random.integers(1, 6, SHAPE).astype(np.uint8),
+        "multiple_flow_area_m2": random.uniform(500, 3000, SHAPE),
+        "contributing_area_m2": random.uniform(0, 3e6, SHAPE),
+        "excluded": random.random(SHAPE) < 0.1,
+        "channel": random.random(SHAPE) < 0.1,
+        "soil_depth_m": random.uniform(0.3, 1.0, SHAPE),
+    }
+    values["direction"][-1] = 9
+    ground, limits = ground_and_limits(values)
+    found = screen(ground, limits)
+    for row, col in np.ndindex(SHAPE):
+        judged = judge(ground, limits, row=row, col=col)
+        assert list(judged) == list(range(1, 11))
+        failed = [code for code, (fails, _) in judged.items() if fails]
+        assert found.reason[row, col] == (failed[0] if failed else 0)
+        if failed:
+            assert found.margin[row, col] == pytest.approx(judged[failed[0]][1], nan_ok=True)
