@@ -46,5 +46,5 @@ def test_a_point_beyond_the_data_is_refused_with_the_way_out(
     tmp_path: Path, write_dem: Callable[..., Path], valley: np.ndarray
 ) -> None:
     project = load_project(None, flags={"place.dem": str(write_dem(tmp_path / "dem.tif", valley, 10.0))})
-    with pytest.raises(InputError, match="lies outside the elevation model.*--lonlat"):
+    with pytest.raises(InputError, match=r"lies outside the elevation model.*--lonlat"):
         why(project, 35.0, 30.9)
