@@ -1,6 +1,13 @@
 """From rain to the water that reaches a plot, by day and by year."""
 
-from siting.runoff.classes import RunoffClasses, class_runoff_mm, classify
+from siting.runoff.antecedent import (
+    EventBounds,
+    antecedent_bounds_mm,
+    antecedent_condition,
+    five_day_rain_mm,
+    growing_days,
+)
+from siting.runoff.classes import RunoffClasses, class_rain_mm, class_runoff_mm, classify
 from siting.runoff.cover import CoverClass, curve_numbers
 from siting.runoff.curve_number import (
     aligned_curve_number_a,
@@ -23,17 +30,26 @@ from siting.runoff.peak import (
     spillway_width_m,
     time_of_concentration_h,
 )
-from siting.runoff.rain import Rain
+from siting.runoff.rain import Rain, StationRain, mean_annual_mm
+from siting.runoff.slope import slope_adjusted
 from siting.runoff.years import Years, driest_month, hydrological_years, yearly_totals
+from siting.runoff.zones import RainField, RainZones, zone_rain_mm
 
 __all__ = [
     "CoverClass",
+    "EventBounds",
     "PeakFlowLimits",
     "Rain",
+    "RainField",
+    "RainZones",
     "RunoffClasses",
+    "StationRain",
     "Years",
     "aligned_curve_number_a",
     "annual_max_mm",
+    "antecedent_bounds_mm",
+    "antecedent_condition",
+    "class_rain_mm",
     "class_runoff_mm",
     "classify",
     "composite_curve_number",
@@ -44,16 +60,21 @@ __all__ = [
     "driest_month",
     "dry_curve_number",
     "few_years_for_design",
+    "five_day_rain_mm",
+    "growing_days",
     "hydrological_years",
     "lag_h",
+    "mean_annual_mm",
     "peak_flow_limits",
     "peak_flow_m3s",
     "retention_for_ratio",
     "retention_mm",
     "runoff_depth_mm",
+    "slope_adjusted",
     "slope_adjusted_curve_number",
     "spillway_width_m",
     "time_of_concentration_h",
     "wet_curve_number",
     "yearly_totals",
+    "zone_rain_mm",
 ]

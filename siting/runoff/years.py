@@ -7,7 +7,7 @@ import numpy.typing as npt
 
 from siting.errors import ConfigError, InputError
 from siting.notes import Notes
-from siting.runoff.rain import Days, Rain
+from siting.runoff.rain import Days, Rain, StationRain, months_of
 
 FloatArray = npt.NDArray[np.float64]
 
@@ -26,28 +26,25 @@ class Years:
     dropped: tuple[int, ...]
 
 
-def driest_month(rain: Rain) -> int:
+def driest_month(rain: Rain | StationRain) -> int:
     """Return the month (1 to 12) with the least mean daily rain; the first of equals, without months never read."""
-    month = _month(rain.days)
-    known = ~np.isnan(rain.rain_mm)
+    month = months_of(rain.days)
     means = np.full(12, np.inf)
     for place in range(12):
-        here = known & (month == place + 1)
-        if here.any():
-            means[place] = rain.rain_mm[here].mean()
+        depth = rain.rain_mm[..., month == place + 1]
+        if not np.isnan(depth).all():
+            means[place] = np.nanmean(depth)
     return int(np.argmin(means)) + 1
 
 
-def _month(days: Days) -> npt.NDArray[np.int64]:
-    return days.astype("datetime64[M]").astype(np.int64) % 12 + 1
-
-
-def hydrological_years(rain: Rain, *, starts_month: int | None, max_missing: float, notes: Notes) -> Years:
+def hydrological_years(rain: Rain | StationRain, *, starts_month: int | None, max_missing: float, notes: Notes) -> Years:
     """
     Divide a record into complete hydrological years.
 
     Parameters
     ----------
+    rain
+        Of one gauge, or of several: then a year must be complete at each of them.
     starts_month
         Month whose first day begins a year; None for the driest month, which is then noted.
     max_missing
@@ -79,13 +76,13 @@ def hydrological_years(rain: Rain, *, starts_month: int | None, max_missing: flo
         start, stop = _bounds(year, month)
         if start < begin or stop > end:
             continue
-        part = rain.rain_mm[int((start - begin).astype(int)) : int((stop - begin).astype(int))]
-        missing = int(np.isnan(part).sum())
-        if missing > max_missing * part.size:
+        part = rain.rain_mm[..., int((start - begin).astype(int)) : int((stop - begin).astype(int))]
+        missing = np.isnan(part).sum(axis=-1)
+        if missing.max() > max_missing * part.shape[-1]:
             dropped.append(year)
         else:
             kept.append(year)
-            missing_kept += missing
+            missing_kept += int(missing.sum())
     if not kept:
         msg = (
             f"the rain record from {begin} to {rain.days[-1]} holds no complete year that begins in "

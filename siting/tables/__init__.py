@@ -1,5 +1,6 @@
 """Published values as tables with their sources, and typed look-ups."""
 
+from siting.tables.antecedent import AntecedentRain, antecedent_rain
 from siting.tables.covers import CurveNumber, arc_rows, covers, curve_number
 from siting.tables.crops import Crop, crop, crops
 from siting.tables.peak_discharge import RAIN_DISTRIBUTIONS, UnitPeak, unit_peaks
@@ -17,11 +18,13 @@ from siting.tables.soils import (
 __all__ = [
     "RAIN_DISTRIBUTIONS",
     "TEXTURES",
+    "AntecedentRain",
     "Crop",
     "CurveNumber",
     "Soil",
     "SoilWater",
     "UnitPeak",
+    "antecedent_rain",
     "arc_rows",
     "covers",
     "crop",

@@ -13,6 +13,7 @@ from siting.tables._rows import rows
     "name",
     [
         "curve_numbers",
+        "antecedent_rain",
         "arc_conversion",
         "hsg_criteria",
         "crops",
