@@ -107,7 +107,7 @@ def analyse(
     filled, direction, flat_cells, pans = _drainage(elevation, size, pan_rule, pan_layer, flow_direction, threads)
     heard.next()
     area = accumulate(direction, grid.cell_area_m2, threads=threads)
-    shared = multiple_flow_area(filled, direction, cell_area_m2=grid.cell_area_m2, **size)
+    shared = multiple_flow_area(filled, direction, cell_area_m2=grid.cell_area_m2, threads=threads, **size)
     heard.next()
     tangent = slope(elevation, threads=threads, **size)
     wetness = wetness_index(shared, tangent, threads=threads, **size)

@@ -5,7 +5,8 @@ import numpy.typing as npt
 
 from siting.errors import GridError
 from siting.parallel import run_all
-from siting.terrain._kernels.accumulate import count_astray, count_inflows, share_down, walk_block, walk_rest
+from siting.terrain._kernels.accumulate import count_astray, count_inflows, walk_block, walk_rest
+from siting.terrain._kernels.share import FINAL, count_donors, find_pourers, release_outside, share_in_block
 from siting.terrain.condition import Directions, FloatArray, Heights, blocks_of, row_bands
 
 CONTOUR_CARDINAL, CONTOUR_DIAGONAL = 0.5, 0.354
@@ -39,7 +40,7 @@ def accumulate(direction: Directions, weight: FloatArray, *, threads: int, block
     if weight.shape not in (direction.shape, direction.shape[:1]):
         msg = f"a weight of shape {weight.shape} does not fit directions of shape {direction.shape}"
         raise GridError(msg)
-    _refuse_astray(direction)
+    _refuse_astray(direction, threads)
     by_cell = weight if weight.ndim == 2 else weight[:, None]
     total = np.empty(direction.shape, dtype=np.float64)
     total[...] = by_cell
@@ -54,7 +55,7 @@ def accumulate(direction: Directions, weight: FloatArray, *, threads: int, block
 
     waiting = run_all(work, blocks_of((direction.shape[0], direction.shape[1]), block), threads)
     walk_rest(direction, inflows, total, np.concatenate(waiting))
-    _refuse_waiting(direction, inflows)
+    _refuse_circles(int(np.count_nonzero((inflows != 255) & (direction != 255))))
     total[direction == 255] = np.nan
     return total
 
@@ -66,45 +67,101 @@ def multiple_flow_area(
     cell_area_m2: FloatArray,
     cell_width_m: FloatArray,
     cell_height_m: FloatArray,
+    threads: int = 1,
+    block: int = 256,
 ) -> FloatArray:
     """
     Contributing area in m2 with each cell's water shared among all lower neighbours.
 
-    Shares are proportional to slope (exponent 1) and contour length; a cell without a lower neighbour
-    follows its single direction. The order of work depends on the raster alone. NaN at voids. Raises
-    GridError where directions lead nowhere, or in a circle with the fall of the surface.
+    Shares are proportional to slope (exponent 1) and contour length; a cell without a lower neighbour follows its single
+    direction. A sum is taken once all its parts are final, in an order fixed by direction, so `threads` and `block`
+    cannot change a bit of it. NaN at voids. Raises GridError where directions lead nowhere, or in a circle with the
+    fall of the surface.
 
     References
     ----------
     Quinn, Beven, Chevallier & Planchon (1991).
     """
-    _refuse_astray(direction)
+    _refuse_astray(direction, threads)
     rows, cols = direction.shape
-    padded = np.full((rows + 2, cols + 2), np.nan, dtype=np.float32)
-    padded[1:-1, 1:-1] = filled
-    slant = np.hypot(cell_width_m, cell_height_m)
-    size = np.sqrt(cell_width_m * cell_height_m)
-    weights = np.column_stack(
-        [
-            CONTOUR_CARDINAL * size / cell_width_m,
-            CONTOUR_DIAGONAL * size / slant,
-            CONTOUR_CARDINAL * size / cell_height_m,
-        ]
-    )
+    padded = (rows + 2, cols + 2)
+    heights = np.empty(padded, dtype=np.float32)
+    pours = np.zeros(padded, dtype=np.uint8)
+    state = np.full(padded, FINAL, dtype=np.uint8)
     total = np.empty(direction.shape, dtype=np.float64)
-    total[...] = cell_area_m2[:, None]
-    inflows = np.empty(direction.shape, dtype=np.uint8)
-    stack = np.empty(direction.size + 8, dtype=np.int64)
-    share_down(padded, direction, weights, total, inflows, stack)
-    _refuse_waiting(direction, inflows)
-    total[direction == 255] = np.nan
+    heights[[0, -1]], heights[:, [0, -1]] = np.nan, np.nan
+
+    def begin(first: int, last: int) -> None:
+        heights[first + 1 : last + 1, 1:-1] = filled[first:last]
+        total[first:last] = np.nan
+
+    bands = row_bands(rows, 64)
+    run_all(begin, bands, threads)
+    run_all(lambda row0, row1: find_pourers(heights, direction, pours, row0, row1), bands, threads)
+    run_all(lambda row0, row1: count_donors(heights, pours, direction, state, row0, row1), bands, threads)
+    _share(
+        heights.ravel(),
+        pours.ravel(),
+        state.ravel(),
+        _weights(cell_width_m, cell_height_m).ravel(),
+        np.pad(cell_area_m2, 1),
+        total,
+        threads,
+        max(1, block),
+    )
+    _refuse_circles(int(np.count_nonzero(state != FINAL)))
     return total
 
 
-def _refuse_astray(direction: Directions) -> None:
+def _weights(cell_width_m: FloatArray, cell_height_m: FloatArray) -> FloatArray:
+    """Return contour length over distance along the row, diagonal and across rows, for each row of a padded raster."""
+    slant = np.hypot(cell_width_m, cell_height_m)
+    size = np.sqrt(cell_width_m * cell_height_m)
+    along, across = CONTOUR_CARDINAL * size / cell_width_m, CONTOUR_CARDINAL * size / cell_height_m
+    return np.pad(np.column_stack([along, CONTOUR_DIAGONAL * size / slant, across]), ((1, 1), (0, 0)))
+
+
+def _share(
+    heights: Heights,
+    pours: Directions,
+    state: Directions,
+    weights: FloatArray,
+    own: FloatArray,
+    total: FloatArray,
+    threads: int,
+    block: int,
+) -> None:
+    """
+    Share water in blocks, round by round, until all cells are final.
+
+    A block stops where a cell waits for one outside. The next round's blocks are twice as large and moved by half their
+    side, so that the borders of one round lie inside the blocks of the next; the last block is the raster.
+    """
+    rows, cols = total.shape
+    width = cols + 2
+    flux, flat_total = np.zeros(heights.size, dtype=np.float64), total.ravel()
+
+    def work(*limits: int) -> npt.NDArray[np.int64]:
+        row0, row1, col0, col1 = limits
+        stack = np.empty((row1 - row0) * (col1 - col0) + 8, dtype=np.int64)
+        pending = np.empty(2 * (row1 - row0 + col1 - col0), dtype=np.int64)
+        count = share_in_block(heights, pours, state, weights, own, flat_total, flux, width, limits, stack, pending)
+        return pending[:count].copy()
+
+    side, shift = block, 0
+    while True:
+        blocks = blocks_of((rows, cols), side, shift)
+        for limits, pending in zip(blocks, run_all(work, blocks, threads), strict=True):
+            release_outside(heights, pours, state, width, limits, pending)
+        if len(blocks) == 1:
+            return
+        side, shift = 2 * side, side
+
+
+def _refuse_astray(direction: Directions, threads: int) -> None:
     """Refuse codes that are no direction, and directions that lead off the raster or into a void."""
-    bands = row_bands(direction.shape[0], 1024)
-    astray = sum(count_astray(direction, row0, row1) for row0, row1 in bands)
+    bands = row_bands(direction.shape[0], 64)
+    astray = sum(run_all(lambda row0, row1: count_astray(direction, row0, row1), bands, threads))
     if astray:
         msg = (
             f"{astray} cells have flow directions that are no code or lead off the raster or into a void; "
@@ -113,9 +170,8 @@ def _refuse_astray(direction: Directions) -> None:
         raise GridError(msg)
 
 
-def _refuse_waiting(direction: Directions, inflows: npt.NDArray[np.uint8]) -> None:
-    """Refuse to return sums of cells that were never finished: their flow runs in a circle."""
-    waiting = int(np.count_nonzero((inflows != 255) & (direction != 255)))
+def _refuse_circles(waiting: int) -> None:
+    """Refuse to return sums of which some were never finished: their flow runs in a circle."""
     if waiting:
         msg = f"flow runs in a circle through or above {waiting} cells; correct the flow directions there"
         raise GridError(msg)

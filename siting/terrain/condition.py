@@ -1,6 +1,7 @@
 """The conditioned surface: filled without epsilon, every cell with a direction, whatever the blocks."""
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 import numpy.typing as npt
@@ -83,14 +84,14 @@ def row_bands(rows: int, height: int) -> list[tuple[int, int]]:
     return [(first, min(rows, first + height)) for first in range(0, rows, height)]
 
 
-def blocks_of(shape: tuple[int, int], side: int) -> list[Block]:
-    """Divide a raster into blocks, row by row: (first row, row after, first column, column after)."""
-    rows, cols = shape
-    return [
-        (row, min(rows, row + side), col, min(cols, col + side))
-        for row in range(0, rows, side)
-        for col in range(0, cols, side)
-    ]
+def blocks_of(shape: tuple[int, int], side: int, shift: int = 0) -> list[Block]:
+    """
+    Divide a raster into blocks, row by row: (first row, row after, first column, column after).
+
+    Borders lie `shift` cells, less than a side, before those of blocks that start at the first cell.
+    """
+    rows, cols = ([0, *range(side - shift, cells, side), cells] for cells in shape)
+    return [(row, row_after, col, col_after) for row, row_after in pairwise(rows) for col, col_after in pairwise(cols)]
 
 
 def inverse_distances(cell_width_m: FloatArray, cell_height_m: FloatArray) -> npt.NDArray[np.float32]:

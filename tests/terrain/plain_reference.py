@@ -120,3 +120,39 @@ class Plain:
                 msg = f"a cycle through {start}"
                 raise AssertionError(msg)
         return total
+
+    def multiple_flow(self, own: float, width: float, height: float) -> npt.NDArray[np.float64]:
+        """Share each cell's water by fall, distance and contour length, from the highest cells down."""
+        size = np.sqrt(width * height)
+        distance = [float(np.hypot(step[1] * width, step[0] * height)) for step in STEPS]
+        contour = [(0.5 if 0 in step else 0.354) * size for step in STEPS]
+        total = np.where(np.isnan(self.z), np.nan, own)
+        done: set[Cell] = set()
+        givers = {cell: self.gives(cell) for cell in self.cells()}
+        waiting = {cell: sum(cell in to.values() for to in givers.values()) for cell in self.cells()}
+        while len(done) < len(waiting):
+            for cell in [one for one, count in waiting.items() if count == 0 and one not in done]:
+                done.add(cell)
+                weight = {step: 1.0 for step in givers[cell]}
+                if len(weight) > 1 or self.falls(cell):
+                    weight = {
+                        step: float(self.filled[cell] - self.filled[to]) / distance[step] * contour[step]
+                        for step, to in givers[cell].items()
+                    }
+                for step, to in givers[cell].items():
+                    total[to] += total[cell] * weight[step] / sum(weight.values())
+                    waiting[to] -= 1
+        return total
+
+    def falls(self, cell: Cell) -> bool:
+        return any(self.filled[other] < self.filled[cell] for other in self.neighbours(cell))
+
+    def gives(self, cell: Cell) -> dict[int, Cell]:
+        """Return the receivers of a cell by direction: all lower neighbours, else the one its direction names."""
+        code = int(self.direction[cell])
+        if code > 8:
+            return {}
+        around = {step: other for step in range(8) if (other := self.neighbour(cell, step)) is not None}
+        if self.falls(cell):
+            return {step: other for step, other in around.items() if self.filled[other] < self.filled[cell]}
+        return {code - 1: around[code - 1]}

@@ -1,50 +1,16 @@
 """One result, whatever the blocks and threads; equal to a plain statement and to two other libraries."""
 
 import numpy as np
-import numpy.typing as npt
 import pyflwdir
 import pytest
 import richdem
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from hypothesis.extra import numpy as hnp
+from made_ground import RASTERS, Heights, conditioned, fractal
 from plain_reference import Plain
 
 from siting.errors import GridError
-from siting.terrain.area import accumulate, multiple_flow_area
-from siting.terrain.condition import Conditioned, condition
-
-Heights = npt.NDArray[np.float32]
-
-SHAPES = hnp.array_shapes(min_dims=2, max_dims=2, min_side=1, max_side=11)
-FEW_HEIGHTS = st.sampled_from([0.0, -0.0, 1.0, 2.0, 3.0, np.nan, np.inf, 2.5])
-RASTERS = hnp.arrays(np.float32, SHAPES, elements=FEW_HEIGHTS)
-
-
-def conditioned(
-    z: Heights, *, sinks: npt.NDArray[np.bool_] | None = None, block: int = 256, threads: int = 1
-) -> Conditioned:
-    rows = z.shape[0]
-    return condition(
-        z,
-        cell_width_m=np.full(rows, 10.0),
-        cell_height_m=np.full(rows, 12.0),
-        sinks=sinks,
-        threads=threads,
-        block=block,
-    )
-
-
-def fractal(side: int, seed: int, *, whole_metres: bool = False) -> Heights:
-    rng = np.random.default_rng(seed)
-    frequency = np.hypot(np.fft.fftfreq(side)[:, None], np.fft.rfftfreq(side)[None, :])
-    frequency[0, 0] = 1.0
-    spectrum = np.fft.rfft2(rng.standard_normal((side, side))) * frequency**-1.7
-    spectrum[0, 0] = 0.0
-    z = np.fft.irfft2(spectrum, s=(side, side))
-    z = 500.0 + 60.0 * z / z.std()
-    heights: Heights = (np.round(z) if whole_metres else z).astype(np.float32)
-    return heights
+from siting.terrain.area import accumulate
 
 
 @settings(max_examples=150, deadline=None)
@@ -132,35 +98,6 @@ def test_a_cell_at_the_edge_with_lower_ground_inside_drains_inward() -> None:
     assert got.direction[2, 1] == 9
 
 
-def test_multiple_flow_keeps_all_water() -> None:
-    z = fractal(120, 19, whole_metres=True)
-    got = conditioned(z)
-    size = np.full(120, 10.0)
-    area = multiple_flow_area(got.filled, got.direction, cell_area_m2=size * 10, cell_width_m=size, cell_height_m=size)
-    assert area[got.direction == 9].sum() == pytest.approx(100.0 * z.size, rel=1e-9)
-    assert np.all(area >= 100.0)
-
-
-def test_multiple_flow_on_a_plane_grows_by_a_row_each_row() -> None:
-    # a plane that falls south: every cell of a row carries the rows above it (away from the sides)
-    z = np.repeat(np.arange(30, 0, -1.0)[:, None], 61, axis=1).astype(np.float32)
-    got = conditioned(z)
-    size = np.full(30, 10.0)
-    area = multiple_flow_area(got.filled, got.direction, cell_area_m2=size * 10, cell_width_m=size, cell_height_m=size)
-    np.testing.assert_allclose(area[:, 30], 100.0 * np.arange(1, 31))
-
-
-def test_directions_against_the_fall_lose_no_water_in_multiple_flow() -> None:
-    # a user's own direction to an equal neighbour although a lower one is there
-    z = np.array([[3, 3, 3, 3, 3], [3, 2, 2, 2, 3], [3, 2, 2, 1.5, 3], [3, 3, 3, 0, 3]], dtype=np.float32)
-    got = conditioned(z)
-    direction = got.direction.copy()
-    direction[1, 2] = 3
-    size = np.full(4, 10.0)
-    area = multiple_flow_area(got.filled, direction, cell_area_m2=size * 10, cell_width_m=size, cell_height_m=size)
-    assert area[direction == 9].sum() == pytest.approx(100.0 * z.size)
-
-
 @pytest.mark.parametrize("codes", [[1, 0, 9], [1, 1, 1], [1, 11, 9], [1, 255, 9], [7, 1, 9]])
 def test_directions_that_lead_nowhere_are_refused(codes: list[int]) -> None:
     with pytest.raises(GridError, match="no code or lead off"):
@@ -171,7 +108,3 @@ def test_a_circle_of_flow_is_refused_not_summed() -> None:
     circle = np.array([[1, 1, 5, 9]], dtype=np.uint8)
     with pytest.raises(GridError, match="through or above 2 cells"):
         accumulate(circle, np.ones(1), threads=1)
-    level = np.ones((1, 4), dtype=np.float32)
-    one = np.ones(1)
-    with pytest.raises(GridError, match="circle"):
-        multiple_flow_area(level, circle, cell_area_m2=one, cell_width_m=one, cell_height_m=one)
