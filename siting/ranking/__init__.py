@@ -1,31 +1,45 @@
 """In how many years, and in which order."""
 
+from siting.ranking.doubt import Doubt, Spread, draw_inputs, rank_doubt, weight_doubt
 from siting.ranking.exceedance import dependable, exceedance, plotting_position, return_period_years
 from siting.ranking.ratio import SufficientRatio, catchment_ratio, sufficient_ratio
 from siting.ranking.reliability import Reliability, reliability, wilson_interval
 from siting.ranking.score import COMPONENTS, Components, Score, score, score_components, score_order
 from siting.ranking.supply import mean_capped_ratio, supply_order
+from siting.ranking.supply_model import Inputs, PlotInputs, SupplyModel, supply_model
 from siting.ranking.supported_area import SupportedArea, supported_area
+from siting.ranking.swaps import Swaps, neighbour_swaps
 
 __all__ = [
     "COMPONENTS",
     "Components",
+    "Doubt",
+    "Inputs",
+    "PlotInputs",
     "Reliability",
     "Score",
+    "Spread",
     "SufficientRatio",
+    "SupplyModel",
     "SupportedArea",
+    "Swaps",
     "catchment_ratio",
     "dependable",
+    "draw_inputs",
     "exceedance",
     "mean_capped_ratio",
+    "neighbour_swaps",
     "plotting_position",
+    "rank_doubt",
     "reliability",
     "return_period_years",
     "score",
     "score_components",
     "score_order",
     "sufficient_ratio",
+    "supply_model",
     "supply_order",
     "supported_area",
+    "weight_doubt",
     "wilson_interval",
 ]
