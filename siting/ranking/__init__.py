@@ -1,7 +1,9 @@
 """In how many years, and in which order."""
 
+from siting.ranking.choice import ChosenSet, Guard, PlotForest, SetWater, choose_set, set_water
 from siting.ranking.doubt import Doubt, Spread, draw_inputs, rank_doubt, weight_doubt
 from siting.ranking.exceedance import dependable, exceedance, plotting_position, return_period_years
+from siting.ranking.ledger import LostShares, Reaches, lost_downstream, lost_share
 from siting.ranking.ratio import SufficientRatio, catchment_ratio, sufficient_ratio
 from siting.ranking.reliability import Reliability, reliability, wilson_interval
 from siting.ranking.score import COMPONENTS, Components, Score, score, score_components, score_order
@@ -12,21 +14,30 @@ from siting.ranking.swaps import Swaps, neighbour_swaps
 
 __all__ = [
     "COMPONENTS",
+    "ChosenSet",
     "Components",
     "Doubt",
+    "Guard",
     "Inputs",
+    "LostShares",
+    "PlotForest",
     "PlotInputs",
+    "Reaches",
     "Reliability",
     "Score",
+    "SetWater",
     "Spread",
     "SufficientRatio",
     "SupplyModel",
     "SupportedArea",
     "Swaps",
     "catchment_ratio",
+    "choose_set",
     "dependable",
     "draw_inputs",
     "exceedance",
+    "lost_downstream",
+    "lost_share",
     "mean_capped_ratio",
     "neighbour_swaps",
     "plotting_position",
@@ -36,6 +47,7 @@ __all__ = [
     "score",
     "score_components",
     "score_order",
+    "set_water",
     "sufficient_ratio",
     "supply_model",
     "supply_order",
