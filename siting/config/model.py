@@ -190,8 +190,14 @@ class Plots(_Section):
 class Ranking(_Section):
     """How plots are put in order."""
 
-    order: Literal["supply"]
+    order: Literal["score", "supply"]
     dependable: Share
+    weight_water: AtLeast0
+    weight_gain: AtLeast0
+    weight_soil: AtLeast0
+    weight_ease: AtLeast0
+    weight_safety: AtLeast0
+    weight_certainty: AtLeast0
 
 
 class Villages(_Section):

@@ -1,6 +1,5 @@
 """Results as tables: the names of the columns are those that siting.layers declares."""
 
-from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
@@ -8,14 +7,16 @@ import numpy.typing as npt
 import pandas as pd
 
 from siting.config import Project
-from siting.layers.codes import POSITIONS, SOIL_GROUPS
+from siting.layers.codes import SOIL_GROUPS
 from siting.pipeline.floods import Floods
+from siting.pipeline.order import UNRANKED, Order
 from siting.pipeline.read import Place
 from siting.pipeline.sites import GROSS, Sites
 from siting.pipeline.soil import SoilOfPlots
+from siting.pipeline.surface import POSITION_TERMS, PlotGround
 from siting.pipeline.water import MOST_UNCLASSED_SHARE, CropResults, Water, Weather
-from siting.plots import commonest, fit_planes, plot_means, slope_margin
-from siting.ranking import dependable, mean_capped_ratio, reliability, supply_order
+from siting.plots import slope_margin
+from siting.ranking import dependable, reliability
 from siting.runoff import RunoffClasses
 from siting.runoff.years import SHORT_RECORD_YEARS
 from siting.tables import TEXTURES
@@ -32,39 +33,6 @@ FLOOD_M3S = 1.0
 STEEP_DROP_M = 2.0
 """A plot that falls more than this needs levelling in steps (our assumption)."""
 
-POSITION_TERMS = ("", *POSITIONS.values)
-"""Terms by code; 0 is unknown."""
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class PlotGround:
-    """What the cells of each plot say: codes (-1 unknown) and means (NaN unknown)."""
-
-    texture: npt.NDArray[np.int64]
-    soil_group: npt.NDArray[np.int64]
-    position: npt.NDArray[np.int64]
-    slope: FloatArray
-    drop_m: FloatArray
-    wetness_index: FloatArray
-    height_above_channel_m: FloatArray
-
-
-def plot_ground(sites: Sites, place: Place, ground: Terrain) -> PlotGround:
-    """Sum up the ground of each plot."""
-    grid, cells = ground.grid, sites.cells
-    # codes run from -1 for textures and from 0 for the others, where they say nothing
-    texture = commonest(cells, place.texture + 1, np.arange(len(TEXTURES) + 1) > 0) - 1
-    plane = fit_planes(cells, ground.elevation, cell_width_m=grid.cell_width_m, cell_height_m=grid.cell_height_m)
-    return PlotGround(
-        np.maximum(texture, -1),
-        commonest(cells, place.soil_group, np.arange(5) > 0),
-        commonest(cells, ground.position, np.arange(len(POSITION_TERMS)) > 0),
-        plane.slope,
-        plane.drop_m,
-        plot_means(cells, ground.wetness_index, grid.cell_area_m2),
-        plot_means(cells, ground.height_above_channel_m, grid.cell_area_m2),
-    )
-
 
 def plots_frame(
     sites: Sites,
@@ -76,23 +44,22 @@ def plots_frame(
     ground: Terrain,
     place: Place,
     curve_number: FloatArray,
+    order: Order,
     project: Project,
 ) -> pd.DataFrame:
     """Give one row for each plot, in the order of plot_id; what later methods will fill is left out."""
     catchments, plots = sites.catchments, sites.plots
-    open_bits = np.bitwise_or.reduceat(ground.open_sides.ravel()[sites.cells.cell], sites.cells.start[:-1])
     with np.errstate(invalid="ignore", divide="ignore"):
         outside, behind = (
             np.where(catchments.area_m2 > 0, 100.0 * part / catchments.area_m2, 0.0)
             for part in (catchments.outside_m2, catchments.behind_pan_m2)
         )
     x, y = _middles(sites, ground)
-    flood_columns = _flood_columns(floods, plots.count)
     columns: dict[str, Any] = {
         "plot_id": sites.plot_id,
         "area_m2": plots.area_m2,
         "catchment_area_m2": catchments.area_m2,
-        "open_catchment": open_bits != 0,
+        "open_catchment": own.open_sides != 0,
         "slope_pct": 100.0 * own.slope,
         "drop_m": own.drop_m,
         "wetness_index": own.wetness_index,
@@ -109,13 +76,16 @@ def plots_frame(
         "next_plot_id": _or_null(catchments.next_plot + 1, catchments.next_plot >= 0),
         "origin": list(plots.origin),
         "given_name": [place.given_names[label - 1] if label else None for label in plots.given_label],
-        **flood_columns,
-        **_water_columns(water, soil, plots.area_m2, flood_columns["peak_flow_10y_m3s"], sites.plot_id, project),
+        "rank": _or_null(order.rank, order.rank > UNRANKED),
+        "supply_rank": _or_null(order.supply_rank, order.supply_rank > UNRANKED),
+        "score": order.score,
+        **{f"score_{name}": values for name, values in order.components.items()},
+        **_flood_columns(floods, plots.count),
+        **_water_columns(water, soil, plots.area_m2, project),
     }
     frame = pd.DataFrame(columns)
-    frame["rank"] = frame["supply_rank"]
     frame["cautions"] = _cautions(frame, sites, weather, ground, place, project)
-    return frame.assign(x=x, y=y, open_bits=open_bits)
+    return frame.assign(x=x, y=y, open_bits=own.open_sides)
 
 
 def _flood_columns(floods: Floods | None, count: int) -> dict[str, Any]:
@@ -149,22 +119,14 @@ def _middles(sites: Sites, ground: Terrain) -> tuple[FloatArray, FloatArray]:
     return np.array([x for x, _ in places]), np.array([y for _, y in places])
 
 
-def _water_columns(
-    water: Water | None,
-    soil: SoilOfPlots,
-    area_m2: FloatArray,
-    peak: FloatArray,
-    plot_id: npt.NDArray[np.int64],
-    project: Project,
-) -> dict[str, Any]:
+def _water_columns(water: Water | None, soil: SoilOfPlots, area_m2: FloatArray, project: Project) -> dict[str, Any]:
     """Return the columns that need a rain record; unknown without one."""
-    no_rank = {"supply_rank": pd.Series([None] * plot_id.size, dtype="Int64"), "supply_ratio_dry": np.nan}
     if water is None:
-        return no_rank | {"yield_dry_m3": np.nan}
+        return {"yield_dry_m3": np.nan, "supply_ratio_dry": np.nan}
     found: dict[str, Any] = {f"yield_{name}_m3": values for name, values in water.yield_m3.items()}
     found["yield_dry_other_ratio_m3"] = water.other_yield_dry_m3
     if water.crop is None:
-        return found | no_rank
+        return found | {"supply_ratio_dry": np.nan}
     share, table = project.settings.ranking.dependable, water.crop.seasons
     usable = table.usable_in_season_mm + np.minimum(table.usable_before_mm, soil.available_water_mm[:, None])
     demand = dependable(table.demand_mm, probability=0.5)
@@ -181,7 +143,6 @@ def _water_columns(
             "supply_ratio_dry": dry,
             "supply_ratio_median": median,
             "rain_only_ratio_dry": dependable(table.rain_only_ratio, probability=share),
-            "supply_rank": _supply_rank(dry, median, table.supply_ratio, table.rain_only_ratio, peak, plot_id),
         }
         | _yield_columns(water.crop, project.settings.crop.target_yield)
     )
@@ -204,27 +165,6 @@ def _yield_columns(crop: CropResults, target_yield: float) -> dict[str, Any]:
         "mean_yield_pct": 100.0 * crop.yields.relative_yield.mean(axis=1),
         "standing_water_days": _or_null(worst.astype(np.int64), worst >= 0),
     }
-
-
-def _supply_rank(
-    dry: FloatArray,
-    median: FloatArray,
-    ratio: FloatArray,
-    rain_only: FloatArray,
-    peak_10y_m3s: FloatArray,
-    plot_id: npt.NDArray[np.int64],
-) -> "pd.Series[Any]":
-    """Rank the plots by supply; one of which no season is known has no rank."""
-    mean = mean_capped_ratio(ratio)
-    rank = supply_order(
-        supply_ratio_dry=dry,
-        supply_ratio_median=median,
-        supply_ratio_mean=mean,
-        gain=mean - mean_capped_ratio(rain_only),
-        peak_flow_10y_m3s=peak_10y_m3s,
-        plot_id=plot_id,
-    )
-    return _or_null(rank, ~np.isnan(mean))
 
 
 def _cautions(

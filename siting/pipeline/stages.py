@@ -15,10 +15,12 @@ from siting.pipeline.clock import Clock
 from siting.pipeline.crop import choose_crop
 from siting.pipeline.floods import plot_floods
 from siting.pipeline.forecast import refuse_what_does_not_fit
+from siting.pipeline.order import order_plots
 from siting.pipeline.read import Place, read_place
 from siting.pipeline.results import Results, summarise
 from siting.pipeline.sites import Sites, find_sites
 from siting.pipeline.soil import soil_of_plots
+from siting.pipeline.surface import plot_ground
 from siting.pipeline.water import Water, plot_water, weather_of
 from siting.progress import Progress
 from siting.runoff import RunoffClasses, classify
@@ -45,7 +47,7 @@ def run(project: Project, *, out: Path, overwrite: bool, threads: int | None, pr
         with clock.stage("plots"):
             sites = find_sites(place, ground, classes, project, notes)
         with clock.stage("water"):
-            own = frames.plot_ground(sites, place, ground)
+            own = plot_ground(sites, place, ground)
             soil = soil_of_plots(own.texture, own.drop_m, project, crop, notes)
             number = frames.mean_curve_number(sites, classes)
             water = floods = None
@@ -53,7 +55,8 @@ def run(project: Project, *, out: Path, overwrite: bool, threads: int | None, pr
                 water = plot_water(sites, classes, weather, soil, project, workers, notes)
                 floods = plot_floods(sites, classes, number, weather, project, notes)
         with clock.stage("ranking"):
-            frame = frames.plots_frame(sites, own, soil, water, floods, weather, ground, place, number, project)
+            order = order_plots(sites, own, soil, water, floods, weather, ground, project, notes)
+            frame = frames.plots_frame(sites, own, soil, water, floods, weather, ground, place, number, order, project)
         summary = summarise(frame, sites, place, notes, str(out))
         with clock.stage("layers"):
             tables = _tables(frame, sites, ground, place, water)

@@ -61,7 +61,7 @@ def run_info(project: Project, place: Place, sites: Sites, weather: Weather | No
         "elevation model sha256": sha256(settings.place.dem),
         "cells": f"{grid.rows} rows x {grid.cols} columns, {grid.typical_cell_m:.4g} m",
         "plots": str(sites.plots.count),
-        "order": "by supply: water in the dependable year first",
+        "order": f"by {settings.ranking.order}",
         "abstraction ratio": f"{settings.runoff.abstraction_ratio:g}",
         "dependable year": f"reached in {100 * settings.ranking.dependable:g} % of years",
     }

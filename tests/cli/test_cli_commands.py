@@ -180,7 +180,7 @@ def test_the_demo_place_leaves_other_files_as_they_are(empty: Path) -> None:
 def test_the_screen_of_a_run_shows_plots_reasons_assumptions_and_cautions(capsys: pytest.CaptureFixture[str]) -> None:
     show_results(SUMMARY, as_json=False)
     out, err = capsys.readouterr()
-    assert "7 plots, the first 5" in out
+    assert "7 plots, the best 5" in out
     rows = [line.split() for line in out.splitlines() if "694321" in line]
     assert [row[0] for row in rows] == ["1", "2", "3", "4", "5"]
     assert rows[0][4:] == ["1.23", "0.9", "841", "5200", "0.6123", "8.2", "-", "open_catchment"]

@@ -61,7 +61,7 @@ def flags(place: Path, **changed: str) -> list[str]:
 def test_a_run_on_flags_alone_tells_plots_reasons_assumptions_and_cautions(place: Path, tmp_path: Path) -> None:
     result = call("run", *flags(place), "--out", str(tmp_path / "out"))
     assert result.exit_code == 0, result.output
-    assert "plots, the first 5 in the order by supply" in result.stdout
+    assert "plots, the best 5 first" in result.stdout
     assert "can be cropped" in result.stdout
     assert "licensed practice" in result.stdout
     assert "No layer of roads, houses or fields was given" in result.stdout
@@ -85,7 +85,7 @@ def test_the_same_as_json_with_a_project_file_and_hostile_names(place: Path, tmp
     assert result.exit_code == 0, result.output
     summary = json.loads(result.stdout)
     assert summary["n_plots"] == len(summary["plots"]) > 5
-    assert summary["plots"][0]["supply_rank"] == 1
+    assert [one["rank"] for one in summary["plots"][:3]] == [1, 2, 3]
     import pyogrio
 
     found = pyogrio.read_dataframe(folder / "results" / "siting.gpkg", layer="villages")

@@ -38,14 +38,23 @@ def test_every_layer_and_raster_is_there_and_opens(demo: Demo) -> None:
                 assert file.read_masks(1).any(), definition.name
 
 
-def test_ranks_follow_the_supply_ratio(demo: Demo) -> None:
+def test_ranks_follow_the_score_and_supply_ranks_the_supply_ratio(demo: Demo) -> None:
     plots = read(demo[0], "plots")
     assert len(plots) == demo[1].summary["n_plots"] > 50
     assert plots["rank"].tolist() == list(range(1, len(plots) + 1))
-    capped = np.minimum(plots["supply_ratio_dry"].to_numpy(), 1.0)
+    assert (np.diff(plots["score"].to_numpy()) <= 1e-12).all()
+    capped = np.minimum(plots.sort_values("supply_rank")["supply_ratio_dry"].to_numpy(), 1.0)
     assert (np.diff(capped) <= 0).all()
-    assert sorted(plots["plot_id"]) == list(range(1, len(plots) + 1))
-    assert plots[["rank_low", "score", "set_order"]].isna().all(axis=None)
+    assert sorted(plots["supply_rank"]) == sorted(plots["plot_id"]) == list(range(1, len(plots) + 1))
+
+
+def test_the_score_is_the_weighted_geometric_mean_of_its_components(demo: Demo) -> None:
+    plots = read(demo[0], "plots")
+    weights = {"water": 0.40, "gain": 0.15, "soil": 0.10, "ease": 0.10, "safety": 0.15, "certainty": 0.10}
+    mean = np.exp(sum(weight * np.log(plots[f"score_{name}"]) for name, weight in weights.items()))
+    np.testing.assert_allclose(plots["score"], mean, rtol=1e-12)
+    np.testing.assert_allclose(plots["score_water"], plots["reliability_pct"] / 100)
+    np.testing.assert_allclose(plots["score_ease"], 1 - plots["slope_pct"] / 10)
 
 
 def test_plots_lie_inside_the_boundary_and_off_the_road(demo: Demo) -> None:

@@ -89,7 +89,7 @@ def _heading(summary: Mapping[str, Any]) -> str:
     if number == 0:
         return "No plot was found; the reasons below tell what stopped the ground."
     shown = min(number, SHOWN_PLOTS, len(summary["plots"]))
-    return f"{number} plot{'s' if number != 1 else ''}, the first {shown} in the order by supply:"
+    return f"{number} plot{'s' if number != 1 else ''}, the best {shown} first:"
 
 
 def _plot_row(row: Mapping[str, Any]) -> dict[str, object]:
@@ -101,7 +101,7 @@ def _plot_row(row: Mapping[str, Any]) -> dict[str, object]:
         "x": _coordinate(row["x"], in_degrees),
         "y": _coordinate(row["y"], in_degrees),
         "hectares": row["area_m2"] / 10_000,
-        "supported": None if row["supported_area_m2"] is None else row["supported_area_m2"] / 10_000,
+        "supported_ha": None if row["supported_area_m2"] is None else row["supported_area_m2"] / 10_000,
         "dry_year_m3": row["yield_dry_m3"],
         "need_m3": row["crop_demand_m3"],
         "supply_dry": row["supply_ratio_dry"],
