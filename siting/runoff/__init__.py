@@ -22,6 +22,7 @@ from siting.runoff.curve_number import (
 from siting.runoff.delivery import delivered_m3
 from siting.runoff.design_rain import annual_max_mm, design_rain_mm, few_years_for_design
 from siting.runoff.event import runoff_depth_mm
+from siting.runoff.generator import RainGenerator, daily_from_monthly
 from siting.runoff.peak import (
     PeakFlowLimits,
     lag_h,
@@ -41,6 +42,7 @@ __all__ = [
     "PeakFlowLimits",
     "Rain",
     "RainField",
+    "RainGenerator",
     "RainZones",
     "RunoffClasses",
     "StationRain",
@@ -55,6 +57,7 @@ __all__ = [
     "composite_curve_number",
     "crusted_group",
     "curve_numbers",
+    "daily_from_monthly",
     "delivered_m3",
     "design_rain_mm",
     "driest_month",
