@@ -114,7 +114,7 @@ def test_a_key_outside_any_section_is_sent_to_its_place(project_file: Path) -> N
         ("plots.event_hours=inf", "plots.event_hours is inf; it must be a finite number (h); the default is 6"),
         ("soil.crusted=1", "soil.crusted is 1; it must be true or false; the default is false"),
         ("place.dem_band=1.5", "place.dem_band is 1.5; it must be a whole number; the default is 1"),
-        ("ranking.order=luck", 'ranking.order is "score"; it must be \'supply\'; the default is "supply"'),
+        ("ranking.order=luck", "ranking.order is \"luck\"; it must be 'score' or 'supply'; the default is \"score\""),
         ("cover.curve_number=101", "cover.curve_number is 101; it must be at most 100"),
         (
             "cover.curve_number=true",
