@@ -71,12 +71,12 @@ def test_gamma_depths_have_the_mean_of_a_wet_day(wet_day_mm: float) -> None:
 
 @pytest.mark.parametrize("wet_day_mm", [5.0, 8.0, 12.0])
 def test_wet_days_drawn_have_about_the_mean_and_spread_asked_for(wet_day_mm: float) -> None:
-    rain = drawn([60.0] * 600, wet_day_mm=wet_day_mm).rain_mm
+    rain = drawn([120.0] * 600, wet_day_mm=wet_day_mm).rain_mm
     wet = rain[rain > 0]
     shape, scale = runoff.RainGenerator(wet_day_mm, 1).gamma
-    # months held to one total: of five wet days and of six, six reach it a little more often; and depths vary less
-    assert wet.mean() == pytest.approx(wet_day_mm, rel=0.1)
-    assert wet.std() == pytest.approx(np.sqrt(shape) * scale, rel=0.15)
+    assert wet.mean() == pytest.approx(wet_day_mm, rel=0.05)
+    # months held to one total vary a little less than free gamma depths
+    assert 0.85 < wet.std() / (np.sqrt(shape) * scale) < 1.0
 
 
 def test_larger_rains_run_off_more() -> None:
