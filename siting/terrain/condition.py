@@ -7,18 +7,15 @@ import numpy as np
 import numpy.typing as npt
 
 from siting.parallel import run_all
-from siting.terrain._kernels.direction import (
-    direct_flats,
-    flat_seeds,
-    spread_steps,
-    steepest,
-)
+from siting.terrain._kernels.direction import steepest
+from siting.terrain._kernels.flats import cross_flats, direct_flats, start_flats
 from siting.terrain._kernels.watersheds import fill_block, flood_levels, raise_block, seam_passes
 
 FloatArray = npt.NDArray[np.float64]
 Heights = npt.NDArray[np.float32]
 Directions = npt.NDArray[np.uint8]
 Mask = npt.NDArray[np.bool_]
+Steps = npt.NDArray[np.int32]
 Block = tuple[int, int, int, int]
 
 LARGEST_BLOCK = 16_000
@@ -75,7 +72,7 @@ def condition(
     bands = row_bands(heights.shape[0], 64)
     inverse = inverse_distances(cell_width_m, cell_height_m)
     run_all(lambda r0, r1: steepest(padded, ends, inverse, direction, r0, r1), bands, threads)
-    flat_cells = _across_flats(padded, direction, bands, threads)
+    flat_cells = _across_flats(padded, direction, side, threads)
     return Conditioned(padded[1:-1, 1:-1], direction, flat_cells)
 
 
@@ -156,15 +153,43 @@ def _levels(
     return solved
 
 
-def _across_flats(padded: Heights, direction: Directions, bands: list[tuple[int, int]], threads: int) -> int:
+def _across_flats(padded: Heights, direction: Directions, side: int, threads: int) -> int:
     """Direct the cells that have no lower neighbour; return how many there are."""
     flat_cells = int(np.count_nonzero(direction == 0))
     if flat_cells == 0:
         return 0
-    toward = np.zeros(direction.shape, dtype=np.int32)
-    away = np.zeros(direction.shape, dtype=np.int32)
-    queue = np.empty((2, flat_cells), dtype=np.int64)
-    outs, highs = flat_seeds(padded, direction, toward, away, queue)
-    run_all(spread_steps, [(toward, queue[0], outs), (away, queue[1], highs)], threads)
-    run_all(lambda r0, r1: direct_flats(padded, toward, away, direction, r0, r1), bands, threads)
+    cols = direction.shape[1]
+    blocks = blocks_of((direction.shape[0], cols), side)
+    toward, away = (np.zeros(direction.size, dtype=np.int32) for _ in range(2))
+    heights, codes = padded.ravel(), direction.ravel()
+
+    def start(*limits: int) -> None:
+        outs, highs = np.empty((2, (limits[1] - limits[0]) * (limits[3] - limits[2]) + 1), dtype=np.int64)
+        start_flats(heights, codes, cols, toward, away, limits, outs, highs)
+
+    run_all(start, blocks, threads)
+    _meet(toward, away, cols, blocks, side, threads)
+    bands = row_bands(direction.shape[0], 64)
+    run_all(lambda row0, row1: direct_flats(heights, toward, away, cols, codes, row0, row1), bands, threads)
     return flat_cells
+
+
+def _meet(toward: Steps, away: Steps, cols: int, blocks: list[Block], side: int, threads: int) -> None:
+    """Carry steps across the borders of blocks, round by round, until no block can lower another's."""
+    across = -(-cols // side)
+
+    def cross(steps: Steps, block: int) -> int:
+        limits = blocks[block]
+        rows, columns = limits[1] - limits[0], limits[3] - limits[2]
+        seeds, queue = np.empty(2 * (rows + columns), dtype=np.int64), np.empty(rows * columns, dtype=np.int64)
+        return int(cross_flats(steps, cols, limits, seeds, queue))
+
+    work = [(steps, block) for steps in (toward, away) for block in range(len(blocks))]
+    while work:
+        again = {}
+        for (steps, block), gains in zip(work, run_all(cross, work, threads), strict=True):
+            for bit in range(9):
+                if gains >> bit & 1:
+                    other = block + (bit // 3 - 1) * across + bit % 3 - 1
+                    again[id(steps), other] = (steps, other)
+        work = list(again.values())

@@ -6,7 +6,7 @@ import pytest
 import richdem
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from made_ground import RASTERS, Heights, conditioned, fractal
+from made_ground import RASTERS, Heights, conditioned, fractal, kinds_of_ground
 from plain_reference import Plain
 
 from siting.errors import GridError
@@ -25,21 +25,49 @@ def test_small_rasters_equal_the_plain_statement_bit_for_bit(z: Heights, seed: i
     np.testing.assert_array_equal(area, plain.area(120.0))
 
 
-@pytest.mark.parametrize("whole_metres", [False, True])
-def test_blocks_and_threads_change_no_bit(whole_metres: bool) -> None:
-    z = fractal(211, 3, whole_metres=whole_metres)
-    z[40:60, 100:130] = np.nan
-    weight = np.arange(211) / 1024.0 + 100.0
-    one = conditioned(z, block=4096)
+def spiral(side: int) -> Heights:
+    """Make a level corridor that winds inward between walls: one flat, whose steps go through every block many times."""
+    z = np.full((side, side), 9.0, dtype=np.float32)
+    row, col, turn = 0, 0, 0
+    z[row, col] = 1.0
+    while True:
+        for _ in range(2):
+            down, along = ((0, 1), (1, 0), (0, -1), (-1, 0))[turn % 4]
+            beyond = (row + 2 * down, col + 2 * along)
+            if all(0 <= at < side for at in beyond) and z[beyond] == 9.0:
+                break
+            turn += 1
+        else:
+            return z
+        ahead = (row + down, col + along)
+        z[ahead], row, col = 1.0, *ahead
+
+
+KINDS = kinds_of_ground(211) | {"spiral": spiral(150), "level": np.ones((130, 70), dtype=np.float32)}
+
+
+@pytest.mark.parametrize("kind", KINDS)
+def test_blocks_and_threads_change_no_bit(kind: str) -> None:
+    z = KINDS[kind]
+    sinks = z == np.nanmin(z) if kind == "pans" else None
+    weight = np.arange(z.shape[0]) / 1024.0 + 100.0
+    one = conditioned(z, sinks=sinks, block=4096)
     area = accumulate(one.direction, weight, threads=1, block=4096)
-    for block, threads in ((16, 2), (37, 3), (64, 1), (256, 2)):
-        other = conditioned(z, block=block, threads=threads)
+    for block, threads in ((7, 2), (16, 2), (37, 3), (64, 1), (210, 5), (256, 2)):
+        other = conditioned(z, sinks=sinks, block=block, threads=threads)
         np.testing.assert_array_equal(
             np.ascontiguousarray(other.filled).view(np.uint32),
             np.ascontiguousarray(one.filled).view(np.uint32),
         )
         np.testing.assert_array_equal(other.direction, one.direction)
         np.testing.assert_array_equal(accumulate(other.direction, weight, threads=threads, block=block), area)
+
+
+def test_flats_that_wind_through_many_blocks_equal_the_plain_statement() -> None:
+    z = spiral(41)
+    plain = Plain(z, np.zeros(z.shape, dtype=np.bool_), 10.0, 12.0)
+    for block in (5, 16, 64):
+        np.testing.assert_array_equal(conditioned(z, block=block, threads=2).direction, plain.direction)
 
 
 def test_no_cell_is_left_undrained_and_no_water_is_lost() -> None:

@@ -1,4 +1,4 @@
-"""Flow directions: steepest descent, and integer steps across flats."""
+"""Flow directions by steepest descent, and the codes of directions."""
 
 import numpy as np
 
@@ -55,73 +55,4 @@ def steepest(filled, sinks, inverse_distance, direction, row0, row1):
             code = OUTLET if code == 0 and beside_void else code
             code = SINK if sinks[row, col] else code
             code = VOID if np.isnan(here) else code
-            direction[row, col] = code
-
-
-@kernel
-def flat_seeds(filled, direction, toward, away, queue):
-    """Mark flat cells with -1 and, of those, seeds of the steps `toward` a way out and `away` from higher ground."""
-    rows, cols = direction.shape
-    outs = highs = 0
-    size = queue.shape[1]
-    for row in range(rows):
-        for col in range(cols):
-            if direction[row, col] != FLAT:
-                continue
-            here = filled[row + 1, col + 1]
-            way_out = higher = False
-            for code in range(1, 9):
-                to_row, to_col = row + STEP_ROW[code], col + STEP_COL[code]
-                there = filled[to_row + 1, to_col + 1]
-                if there == here and direction[to_row, to_col] != FLAT:
-                    way_out = True
-                if there > here:
-                    higher = True
-            toward[row, col] = 1 if way_out else -1
-            away[row, col] = 1 if higher else -1
-            if way_out:
-                queue[0, outs] = row * cols + col
-                outs += 1
-            if higher:
-                queue[1, highs] = row * cols + col
-                highs += 1
-    return min(outs, size), min(highs, size)
-
-
-@kernel
-def spread_steps(steps, queue, waiting):
-    """Count steps breadth first from the `waiting` seeds in `queue` through cells marked -1."""
-    rows, cols = steps.shape
-    place = 0
-    while place < waiting:
-        row, col = queue[place] // cols, queue[place] % cols
-        place += 1
-        for code in range(1, 9):
-            to_row, to_col = row + STEP_ROW[code], col + STEP_COL[code]
-            inside = 0 <= to_row < rows and 0 <= to_col < cols
-            if inside and steps[to_row, to_col] == -1:
-                steps[to_row, to_col] = steps[row, col] + 1
-                queue[waiting] = to_row * cols + to_col
-                waiting += 1
-
-
-@kernel
-def direct_flats(filled, toward, away, direction, row0, row1):
-    """Direct flat cells to the neighbour of equal height with the least 2 toward - away; ways out come first."""
-    cols = direction.shape[1]
-    for row in range(row0, row1):
-        for col in range(cols):
-            if toward[row, col] == 0:
-                continue
-            here = filled[row + 1, col + 1]
-            best = np.int64(2**62)
-            code = 0
-            for turn in FLAT_ORDER:
-                to_row, to_col = row + STEP_ROW[turn], col + STEP_COL[turn]
-                if filled[to_row + 1, to_col + 1] != here:
-                    continue
-                steps = np.int64(toward[to_row, to_col])
-                value = 2 * steps - max(np.int64(away[to_row, to_col]), 0) if steps > 0 else -(2**62)
-                if value < best:
-                    best, code = value, turn
             direction[row, col] = code
