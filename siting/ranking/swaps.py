@@ -86,7 +86,7 @@ def neighbour_swaps(model: SupplyModel, spread: Spread, *, pairs: int | None = N
 
     Each input is moved alone, outward from its value in use to the ends of its range in `spread`, and the order run
     again: in even steps for all plots, then by bisection for the pair. Every change returned was run and does swap
-    the two. Kc stands for itself and for nothing else than ET0 here: the same change of either does the same.
+    the two. Kc is not listed: it multiplies ET0, so that the same change of either does the same.
 
     Parameters
     ----------
