@@ -192,6 +192,8 @@ class Ranking(_Section):
 
     order: Literal["score", "supply"]
     dependable: Share
+    set_area_m2: Above0 | None = None
+    set_plots: Annotated[int, Field(ge=1)] | None = None
     weight_water: AtLeast0
     weight_gain: AtLeast0
     weight_soil: AtLeast0

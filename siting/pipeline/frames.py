@@ -14,6 +14,7 @@ from siting.pipeline.read import Place
 from siting.pipeline.sites import GROSS, Sites
 from siting.pipeline.soil import SoilOfPlots
 from siting.pipeline.surface import POSITION_TERMS, PlotGround
+from siting.pipeline.together import Together
 from siting.pipeline.water import MOST_UNCLASSED_SHARE, CropResults, Water, Weather
 from siting.plots import slope_margin
 from siting.ranking import dependable, reliability
@@ -45,6 +46,7 @@ def plots_frame(
     place: Place,
     curve_number: FloatArray,
     order: Order,
+    together: Together | None,
     project: Project,
 ) -> pd.DataFrame:
     """Give one row for each plot, in the order of plot_id; what later methods will fill is left out."""
@@ -80,12 +82,19 @@ def plots_frame(
         "supply_rank": _or_null(order.supply_rank, order.supply_rank > UNRANKED),
         "score": order.score,
         **{f"score_{name}": values for name, values in order.components.items()},
+        **_set_columns(together, plots.count),
         **_flood_columns(floods, plots.count),
         **_water_columns(water, soil, plots.area_m2, project),
     }
     frame = pd.DataFrame(columns)
     frame["cautions"] = _cautions(frame, sites, weather, ground, place, project)
     return frame.assign(x=x, y=y, open_bits=own.open_sides)
+
+
+def _set_columns(together: Together | None, count: int) -> dict[str, Any]:
+    order = np.zeros(count, dtype=np.int64) if together is None else together.chosen.order
+    left = np.full(count, np.nan) if together is None else together.set_yield_median_m3
+    return {"set_order": _or_null(order, order > 0), "set_yield_median_m3": left}
 
 
 def _flood_columns(floods: Floods | None, count: int) -> dict[str, Any]:

@@ -21,6 +21,7 @@ from siting.pipeline.results import Results, summarise
 from siting.pipeline.sites import Sites, find_sites
 from siting.pipeline.soil import soil_of_plots
 from siting.pipeline.surface import plot_ground
+from siting.pipeline.together import choose_together
 from siting.pipeline.water import Water, plot_water, weather_of
 from siting.progress import Progress
 from siting.runoff import RunoffClasses, classify
@@ -56,11 +57,14 @@ def run(project: Project, *, out: Path, overwrite: bool, threads: int | None, pr
                 floods = plot_floods(sites, classes, number, weather, project, notes)
         with clock.stage("ranking"):
             order = order_plots(sites, own, soil, water, floods, weather, ground, project, notes)
-            frame = frames.plots_frame(sites, own, soil, water, floods, weather, ground, place, number, order, project)
+            together = choose_together(sites, water, order, project)
+            frame = frames.plots_frame(
+                sites, own, soil, water, floods, weather, ground, place, number, order, together, project
+            )
         summary = summarise(frame, sites, place, notes, str(out))
         with clock.stage("layers"):
             tables = _tables(frame, sites, ground, place, water)
-            tables |= write.notes_tables(notes, write.run_info(project, place, sites, weather))
+            tables |= write.notes_tables(notes, write.run_info(project, place, sites, weather, together))
             write.write_layers(folder, tables, ground.grid.crs, ground)
         if project.settings.output.rasters:
             with clock.stage("rasters"):

@@ -63,10 +63,13 @@ class Water:
     """
     Water of every plot (first axis); year classes are quantiles of the plot's own series.
 
-    `yield_m3` by class of year; `other_*` under the other abstraction ratio. What follows is there with a crop: seasons
-    of the seasonal method, the needed ratio, yields of the daily method with run-on and on rain alone, supported area.
+    `yearly_m3` and `room_m3` are run-on and what of it the plot's bund takes, by complete year; `yield_m3` is by class of
+    year; `other_*` under the other abstraction ratio. `crop` is there with a crop: seasons of the seasonal method, the
+    needed ratio, yields of the daily method with run-on and on rain alone, supported area.
     """
 
+    yearly_m3: FloatArray
+    room_m3: FloatArray
     yield_m3: dict[str, FloatArray]
     other_yield_dry_m3: FloatArray
     crop: "CropResults | None"
@@ -162,9 +165,11 @@ def plot_water(
             runoff = class_runoff_mm(weather.rain.as_dry_mm, classes, abstraction_ratio=ratio)
         some = partial(work.some_plots, runoff, with_yields=ratio == used)
         parts[ratio] = run_all(some, [(slice(start, start + PLOTS_AT_ONCE),) for start in starts], threads)
-    yearly = np.concatenate([part.yearly_m3 for part in parts[used]])
+    yearly, room = (np.concatenate([getattr(part, name) for part in parts[used]]) for name in ("yearly_m3", "room_m3"))
     shares = {"dry": share, "median": 0.5, "wet": 1.0 - share}
     return Water(
+        yearly,
+        room,
         {name: dependable(yearly, probability=probability) for name, probability in shares.items()},
         dependable(np.concatenate([part.yearly_m3 for part in parts[other]]), probability=share),
         None if weather.record is None else _crop_results(parts[used], parts[other], share),
@@ -194,6 +199,7 @@ class _Part:
     """Results of a few plots; what needs a crop, or the ratio in use, is None without it."""
 
     yearly_m3: FloatArray
+    room_m3: FloatArray
     seasons: SeasonTable | None = None
     yields: SeasonYields | None = None
     rain_alone: SeasonYields | None = None
@@ -219,12 +225,16 @@ class _Simulation:
             runoff_mm,
             channel_wetting_mm=settings.runoff.channel_wetting_mm,
         )
-        yearly = yearly_totals(volume, self.weather.rain.days, self.weather.years)
+        most_m3 = self.soil.intake_capacity_mm[part] * self.sites.plots.area_m2[part] / 1000.0
+        yearly, room = (
+            yearly_totals(each, self.weather.rain.days, self.weather.years)
+            for each in (volume, np.minimum(volume, most_m3[:, None]))
+        )
         record = self.weather.record
         if record is None:
-            return _Part(yearly)
+            return _Part(yearly, room)
         table = self._seasonal(record, volume, part)
-        return self._with_yields(record, volume, part, yearly, table) if with_yields else _Part(yearly, table)
+        return _Part(yearly, room, table, *(self._yields(record, volume, part) if with_yields else ()))
 
     def _seasonal(self, record: CropRecord, volume: FloatArray, part: slice) -> SeasonTable:
         crop = record.crop
@@ -244,9 +254,10 @@ class _Simulation:
             efficiency=self.project.settings.plots.efficiency,
         )
 
-    def _with_yields(
-        self, record: CropRecord, volume: FloatArray, part: slice, yearly: FloatArray, table: SeasonTable
-    ) -> _Part:
+    def _yields(
+        self, record: CropRecord, volume: FloatArray, part: slice
+    ) -> tuple[SeasonYields, SeasonYields, SupportedArea]:
+        """Run the daily method with run-on and on rain alone, and find the area that the run-on supports."""
         settings = self.project.settings.crop
         area = self.sites.plots.area_m2[part]
         soil = self.soil.soil.take(np.arange(self.sites.plots.count)[part])
@@ -263,7 +274,7 @@ class _Simulation:
             target_reliability=settings.target_reliability,
             standing_water_days=settings.standing_water_days,
         )
-        return _Part(yearly, table, yields_at(np.arange(area.size), area), rain_alone, supported)
+        return yields_at(np.arange(area.size), area), rain_alone, supported
 
 
 def _crop_results(used: list[_Part], other: list[_Part], share: float) -> CropResults:

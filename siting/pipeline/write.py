@@ -20,6 +20,7 @@ from siting.outputs.run_record import RUN_RECORD
 from siting.pipeline.clock import Clock
 from siting.pipeline.read import Place
 from siting.pipeline.sites import Sites
+from siting.pipeline.together import Together, told_set
 from siting.pipeline.water import Weather
 from siting.progress import Progress
 from siting.ranking import dependable
@@ -51,7 +52,9 @@ def notes_tables(notes: Notes, info: dict[str, str]) -> dict[str, pd.DataFrame]:
     }
 
 
-def run_info(project: Project, place: Place, sites: Sites, weather: Weather | None) -> dict[str, str]:
+def run_info(
+    project: Project, place: Place, sites: Sites, weather: Weather | None, together: Together | None
+) -> dict[str, str]:
     """Say what was run on what; nothing of when, or on which machine."""
     settings, grid = project.settings, place.dem.grid
     found = {
@@ -70,6 +73,8 @@ def run_info(project: Project, place: Place, sites: Sites, weather: Weather | No
         found["rain years"] = f"{labels.size} complete, {labels[0]} to {labels[-1]}, from month {weather.years.starts_month}"
     if weather is not None and weather.record is not None:
         found["seasons"] = str(weather.record.seasons.label.size)
+    if together is not None:
+        found["set"] = told_set(together, sites)
     return found
 
 

@@ -31,8 +31,9 @@ class Catchments:
     length of channel above, `longest_path_m` the longest flow path to the plot, `mean_slope` a tangent, `highest_m`
     the highest ground; the last two NaN without catchment. `intake_cell` (flat) takes most water from outside,
     `intake_area_m2` tells how much ground that is; `exit_cell` is the one most water leaves the plot through, or ends in;
-    -1 where nothing enters. `next_plot` is the number (from 0) of the first other plot below the exit, -1 for none;
-    `plots_upstream` counts the plots from whose exits water comes.
+    -1 where nothing enters. `next_plot` is the number (from 0) of the first other plot below the exit, -1 for none, and
+    `next_distance_m` the length of the path there (NaN for none); `plots_upstream` counts the plots from whose exits
+    water comes.
     """
 
     area_m2: FloatArray
@@ -48,6 +49,7 @@ class Catchments:
     intake_area_m2: FloatArray
     exit_cell: Integers
     next_plot: Integers
+    next_distance_m: FloatArray
     plots_upstream: Integers
 
 
@@ -135,7 +137,7 @@ def trace_catchments(
         elevation, slope, loss_per_m, by_class, sums, peaks,
     )  # fmt: skip
     intake, entering = _intakes(cells, label, direction, contributing_area_m2)
-    leaving, below = _exits(cells, label, direction, contributing_area_m2, other)
+    leaving, below, distance = _exits(cells, label, direction, contributing_area_m2, other, far)
     with np.errstate(invalid="ignore"):
         mean_slope = sums[:, upslope.AREA_SLOPE] / sums[:, upslope.AREA_WITH_SLOPE]
     return Catchments(
@@ -152,6 +154,7 @@ def trace_catchments(
         entering,
         leaving,
         below,
+        distance,
         _count_above(leaving, below, contributing_area_m2),
     )
 
@@ -187,13 +190,18 @@ def _intakes(cells: PlotCells, label: Labels, direction: Codes, area: FloatArray
 
 
 def _exits(
-    cells: PlotCells, label: Labels, direction: Codes, area: FloatArray, other: Integers
-) -> tuple[Integers, Integers]:
-    """Return each plot's exit, and the number of the next plot below it."""
+    cells: PlotCells, label: Labels, direction: Codes, area: FloatArray, other: Integers, far: FloatArray
+) -> tuple[Integers, Integers, FloatArray]:
+    """Return each plot's exit, the number of the next plot below it, and how far that is."""
     leaves = upslope.leaves_plot(cells.cell, label, direction)
     best = _best_of_each(cells, np.where(leaves, area.ravel()[cells.cell], 0.0))
     below = np.where(best < 0, NONE, other[best])
-    return np.where(best < 0, NONE, cells.cell[best]), np.where(below < 0, NONE, cells.plot[below])
+    there = below >= 0
+    return (
+        np.where(best < 0, NONE, cells.cell[best]),
+        np.where(there, cells.plot[below], NONE),
+        np.where(there, far[best], np.nan),
+    )
 
 
 def _count_above(leaving: Integers, below: Integers, area: FloatArray) -> Integers:

@@ -224,6 +224,19 @@ def test_supported_areas_lie_within_the_plots_and_hold_the_target(demo: Demo) ->
     assert (plots.loc[~full, "reliability_pct"] < 67).all()
 
 
+def test_the_set_begins_with_the_best_plot_and_counts_water_once(demo: Demo) -> None:
+    """What the plots of the set above took is missing: with the losses on the way, exactly so by year, at most so by median."""
+    plots = read(demo[0], "plots")
+    members = plots[plots["set_order"].notna()].sort_values("set_order")
+    assert members["set_order"].tolist() == list(range(1, len(members) + 1))
+    assert members["rank"].iloc[0] == 1
+    assert (plots["set_yield_median_m3"] <= plots["yield_median_m3"] + 1e-9).all()
+    heads = plots[plots["plots_upstream"] == 0]
+    np.testing.assert_allclose(heads["set_yield_median_m3"], heads["yield_median_m3"], rtol=1e-12)
+    below = plots[plots["plots_upstream"] > 3]
+    assert (below["set_yield_median_m3"] < below["yield_median_m3"]).mean() > 0.5
+
+
 def test_flood_peaks_by_the_published_form(demo: Demo) -> None:
     """The 25-year peak is larger; the spillway passes it by b = Q / (C h^1.5), C 1.5 and h 0.3 m as assumed."""
     plots = read(demo[0], "plots")

@@ -102,6 +102,8 @@ def test_a_plot_below_another_takes_its_ground_and_that_above_it() -> None:
     assert found.area_m2.tolist() == [300.0, 700.0]
     assert found.next_plot.tolist() == [1, -1]
     assert found.plots_upstream.tolist() == [0, 1]
+    assert found.next_distance_m[0] == 40.0
+    assert np.isnan(found.next_distance_m[1])
     assert found.outside_m2.tolist() == [200.0, 200.0]
     assert found.behind_pan_m2.tolist() == [0.0, 600.0]  # rows 0 to 5, the plot above among them
     assert found.unclassed_m2.tolist() == [0.0, 300.0]

@@ -1,0 +1,53 @@
+"""Plots together: the set, in which water is counted once."""
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from siting.config import Project
+from siting.pipeline.order import Order
+from siting.pipeline.sites import Sites
+from siting.pipeline.water import Water
+from siting.ranking import ChosenSet, PlotForest, choose_set, dependable
+
+FloatArray = npt.NDArray[np.float64]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Together:
+    """Plots above one another, the set chosen of them, and the run-on that the set leaves to each in a median year."""
+
+    forest: PlotForest
+    chosen: ChosenSet
+    set_yield_median_m3: FloatArray
+
+
+def choose_together(sites: Sites, water: Water | None, order: Order, project: Project) -> Together | None:
+    """Choose the set by the score of its plots and the water that those above leave; None without a score."""
+    if water is None or np.isnan(order.score).all():
+        return None
+    settings, catchments = project.settings, sites.catchments
+    loss_per_m = settings.runoff.conveyance_loss_per_km / 1000.0
+    passing = np.where(catchments.next_plot >= 0, np.exp(-loss_per_m * catchments.next_distance_m), 1.0)
+    forest = PlotForest(catchments.next_plot, passing)
+    chosen = choose_set(
+        forest,
+        runon_m3=water.yearly_m3,
+        room_m3=water.room_m3,
+        worth=order.score,
+        rank=order.rank,
+        plot_area_m2=sites.plots.area_m2,
+        most_area_m2=settings.ranking.set_area_m2,
+        most_plots=settings.ranking.set_plots,
+    )
+    return Together(forest, chosen, dependable(chosen.left_m3, probability=0.5))
+
+
+def told_set(together: Together, sites: Sites) -> str:
+    """Say in one line how large the set is and why it ends there."""
+    members = together.chosen.order > 0
+    area_ha = float(sites.plots.area_m2[members].sum()) / 10_000.0
+    ended = {"area": "its area is used up", "number": "its number is reached", "guard": "a village would lose too much"}
+    why = ended.get(together.chosen.stopped, "no plot left adds anything")
+    return f"{int(members.sum())} plots, {area_ha:.1f} ha; it ended because {why}"
