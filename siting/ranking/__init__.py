@@ -11,6 +11,7 @@ from siting.ranking.supply import mean_capped_ratio, supply_order
 from siting.ranking.supply_model import Inputs, PlotInputs, SupplyModel, supply_model
 from siting.ranking.supported_area import SupportedArea, supported_area
 from siting.ranking.swaps import Swaps, neighbour_swaps
+from siting.ranking.villages import VillageRanks, rank_villages
 
 __all__ = [
     "COMPONENTS",
@@ -31,6 +32,7 @@ __all__ = [
     "SupplyModel",
     "SupportedArea",
     "Swaps",
+    "VillageRanks",
     "catchment_ratio",
     "choose_set",
     "dependable",
@@ -42,6 +44,7 @@ __all__ = [
     "neighbour_swaps",
     "plotting_position",
     "rank_doubt",
+    "rank_villages",
     "reliability",
     "return_period_years",
     "score",
