@@ -113,11 +113,11 @@ def analyse(
     wetness = wetness_index(shared, tangent, threads=threads, **size)
     heard.next()
     channel = channel_cells(area, channel_area_m2=channel_area_m2)
-    height = height_above_channel_m(filled, direction, channel)
+    height = height_above_channel_m(filled, direction, channel, threads=threads)
     position = _positions(elevation, filled, direction, height, tangent, size, vertical_error_m, threads)
     heard.next()
     enclosed, voids = enclosed_voids(~np.isnan(elevation))
-    sides = open_sides(direction, enclosed)
+    sides = open_sides(direction, enclosed, threads=threads)
     heard.next()
     return Terrain(
         grid,
@@ -216,7 +216,7 @@ def _positions(
 ) -> npt.NDArray[np.uint8]:
     """Place each cell in the landscape, band by band: the temporary arrays stay small beside the raster."""
     rows = direction.shape[0]
-    highest = highest_above(direction, filled)
+    highest = highest_above(direction, filled, threads=threads)
     position = np.empty(direction.shape, dtype=np.uint8)
 
     def work(first: int, last: int) -> None:

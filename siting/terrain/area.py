@@ -5,9 +5,11 @@ import numpy.typing as npt
 
 from siting.errors import GridError
 from siting.parallel import run_all
-from siting.terrain._kernels.accumulate import count_astray, count_inflows, walk_block, walk_rest
+from siting.terrain._kernels.accumulate import count_astray
+from siting.terrain._kernels.direction import VOID
 from siting.terrain._kernels.share import FINAL, count_donors, find_pourers, release_outside, share_in_block
 from siting.terrain.condition import Directions, FloatArray, Heights, blocks_of, row_bands
+from siting.terrain.gather import gather, unfinished
 
 CONTOUR_CARDINAL, CONTOUR_DIAGONAL = 0.5, 0.354
 """Contour lengths of Quinn et al. (1991), in cells, towards a side and towards a corner."""
@@ -43,20 +45,14 @@ def accumulate(direction: Directions, weight: FloatArray, *, threads: int, block
     _refuse_astray(direction, threads)
     by_cell = weight if weight.ndim == 2 else weight[:, None]
     total = np.empty(direction.shape, dtype=np.float64)
-    total[...] = by_cell
-    inflows = np.empty(direction.shape, dtype=np.uint8)
-    bands = row_bands(direction.shape[0], 64)
-    run_all(lambda r0, r1: count_inflows(direction, inflows, r0, r1), bands, threads)
 
-    def work(row0: int, row1: int, col0: int, col1: int) -> npt.NDArray[np.int64]:
-        pending = np.empty(2 * (row1 - row0 + col1 - col0), dtype=np.int64)
-        waiting = walk_block(direction, inflows, total, row0, row1, col0, col1, pending)
-        return pending[:waiting]
+    def begin(first: int, last: int) -> None:
+        total[first:last] = by_cell[first:last]
+        total[first:last][direction[first:last] == VOID] = np.nan
 
-    waiting = run_all(work, blocks_of((direction.shape[0], direction.shape[1]), block), threads)
-    walk_rest(direction, inflows, total, np.concatenate(waiting))
-    _refuse_circles(int(np.count_nonzero((inflows != 255) & (direction != 255))))
-    total[direction == 255] = np.nan
+    run_all(begin, row_bands(direction.shape[0], 64), threads)
+    inflows = gather(direction, total, largest=False, threads=threads, block=block)
+    _refuse_circles(unfinished(direction, inflows, threads))
     return total
 
 

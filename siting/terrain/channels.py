@@ -3,8 +3,9 @@
 import numpy as np
 import numpy.typing as npt
 
+from siting.parallel import run_all
 from siting.terrain._kernels.walk import height_of_target
-from siting.terrain.condition import Directions, FloatArray, Heights, Mask
+from siting.terrain.condition import Directions, FloatArray, Heights, Mask, blocks_of, row_bands
 
 SUMMIT, SHOULDER, BACKSLOPE, FOOTSLOPE, TOESLOPE = 1, 2, 3, 4, 5
 UNKNOWN_POSITION, NO_POSITION = 0, 255
@@ -17,7 +18,7 @@ def channel_cells(contributing_area_m2: FloatArray, *, channel_area_m2: float) -
         return np.asarray(contributing_area_m2 >= channel_area_m2)
 
 
-def height_above_channel_m(filled: Heights, direction: Directions, channel: Mask) -> Heights:
+def height_above_channel_m(filled: Heights, direction: Directions, channel: Mask, *, threads: int = 1) -> Heights:
     """
     Height of each cell over the first channel cell on its flow path, m; NaN where it meets none.
 
@@ -27,9 +28,13 @@ def height_above_channel_m(filled: Heights, direction: Directions, channel: Mask
     ----------
     Nobre et al. (2011), Journal of Hydrology 404.
     """
-    height = np.empty(direction.shape, dtype=np.float32)
-    height_of_target(direction, channel, filled, height)
-    np.subtract(filled, height, out=height)
+    height = np.full(direction.shape, np.inf, dtype=np.float32)
+    flat = [one.ravel() for one in (direction, channel, filled, height)]
+    cols = direction.shape[1]
+    blocks = blocks_of((direction.shape[0], cols), 256)
+    run_all(lambda *limits: height_of_target(*flat, cols, limits), blocks, threads)
+    bands = row_bands(direction.shape[0], 64)
+    run_all(lambda a, b: np.subtract(filled[a:b], height[a:b], out=height[a:b]), bands, threads)
     return height
 
 

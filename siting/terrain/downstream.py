@@ -3,10 +3,10 @@
 import numpy as np
 import numpy.typing as npt
 
-from siting.terrain._kernels.accumulate import count_inflows
 from siting.terrain._kernels.direction import STEP_COL, STEP_ROW
-from siting.terrain._kernels.walk import carry_bits, first_target, highest_upstream
+from siting.terrain._kernels.walk import carry_bits, first_target
 from siting.terrain.condition import Directions, FloatArray, Mask
+from siting.terrain.gather import gather
 
 Indices = npt.NDArray[np.int64]
 
@@ -41,25 +41,19 @@ def first_below(
     return target.reshape(direction.shape), distance.reshape(direction.shape)
 
 
-def inflow_counts(direction: Directions) -> npt.NDArray[np.uint8]:
-    """Count the neighbours that drain into each cell."""
-    inflows = np.empty(direction.shape, dtype=np.uint8)
-    count_inflows(direction, inflows, 0, direction.shape[0])
-    return inflows
-
-
-def highest_above(direction: Directions, elevation: npt.NDArray[np.floating]) -> npt.NDArray[np.float32]:
+def highest_above(
+    direction: Directions, elevation: npt.NDArray[np.floating], *, threads: int = 1
+) -> npt.NDArray[np.float32]:
     """Return the greatest height among each cell and all cells upstream of it, m; NaN at voids."""
-    inflows = inflow_counts(direction)
-    highest = np.array(elevation, dtype=np.float32)
-    highest_upstream(direction, inflows, highest)
+    highest = np.array(elevation, dtype=np.float32, order="C")
+    gather(direction, highest, largest=True, threads=threads)
     return highest
 
 
 def any_above(direction: Directions, mark: Mask) -> Mask:
     """Tell of each cell whether it, or any cell upstream of it, is marked; voids tell nothing (False)."""
-    bits = np.where(direction == 255, False, mark).astype(np.uint8)
-    carry_bits(direction, inflow_counts(direction), bits)
+    bits = np.ascontiguousarray(np.where(direction == 255, False, mark), dtype=np.uint8)
+    carry_bits(direction.ravel(), bits.ravel(), direction.shape[1])
     return bits.view(np.bool_)
 
 

@@ -5,10 +5,10 @@ from collections.abc import Sequence
 import numpy as np
 import numpy.typing as npt
 
+from siting.parallel import run_all
 from siting.terrain._kernels.depressions import label_patches
 from siting.terrain._kernels.walk import carry_bits, inward_sides
-from siting.terrain.condition import Directions, Mask
-from siting.terrain.downstream import inflow_counts
+from siting.terrain.condition import Directions, Mask, row_bands
 
 Sides = npt.NDArray[np.uint8]
 
@@ -45,7 +45,7 @@ def enclosed_voids(valid: Mask) -> tuple[Mask, int]:
     return np.asarray(enclosed[label]), int(enclosed.sum())
 
 
-def open_sides(direction: Directions, enclosed: Mask) -> Sides:
+def open_sides(direction: Directions, enclosed: Mask, *, threads: int = 1) -> Sides:
     """
     Tell of each cell from which sides its catchment may go on beyond the data; 0 where it is closed.
 
@@ -59,6 +59,8 @@ def open_sides(direction: Directions, enclosed: Mask) -> Sides:
     enclosed
         Void cells that lie inside the data, see `enclosed_voids`. Other voids are ground outside the data's
         outline, and count by the side on which they lie.
+    threads
+        How to compute; cannot change the result.
 
     Returns
     -------
@@ -66,8 +68,9 @@ def open_sides(direction: Directions, enclosed: Mask) -> Sides:
         uint8: the sum of N 1, E 2, S 4, W 8, enclosed void 16 (see SIDES).
     """
     bits = np.empty(direction.shape, dtype=np.uint8)
-    inward_sides(direction, enclosed, SIDE_OF_DIRECTION, VOID, bits)
-    carry_bits(direction, inflow_counts(direction), bits)
+    bands = row_bands(direction.shape[0], 64)
+    run_all(lambda row0, row1: inward_sides(direction, enclosed, SIDE_OF_DIRECTION, VOID, bits, row0, row1), bands, threads)
+    carry_bits(direction.ravel(), bits.ravel(), direction.shape[1])
     return bits
 
 

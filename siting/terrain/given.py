@@ -4,11 +4,12 @@ import numpy as np
 import numpy.typing as npt
 
 from siting.errors import GridError, InputError
+from siting.terrain._kernels.accumulate import DONE
 from siting.terrain._kernels.direction import STEP_COL, STEP_ROW
-from siting.terrain._kernels.walk import DONE, carry_bits, raise_along
+from siting.terrain._kernels.walk import raise_along
 from siting.terrain.condition import Conditioned, Directions, Heights, Mask
-from siting.terrain.downstream import inflow_counts
 from siting.terrain.edges import beside_void
+from siting.terrain.gather import gather
 
 LAST_STEP, OUTLET, SINK, VOID = 8, 9, 10, 255
 
@@ -48,8 +49,7 @@ def follow(elevation: Heights, flow_direction: Directions) -> Conditioned:
     direction[lost & beside_void(valid)] = OUTLET
     _refuse(valid & (direction == VOID), "have heights but no direction", "give one, or 10 where flow ends in a pan")
     direction[_steps_out(direction)] = OUTLET
-    inflows = inflow_counts(direction)
-    carry_bits(direction, inflows, np.zeros(direction.shape, dtype=np.uint8))
+    inflows = gather(direction, np.zeros(direction.shape, dtype=np.float32), largest=True, threads=1)
     _refuse(valid & (inflows != DONE), "run in a circle", "let them end (10) or lead out")
     filled = np.full(elevation.shape, np.nan, dtype=np.float32)
     raise_along(direction, elevation, filled, np.empty(direction.size + 1, dtype=np.int64))

@@ -1,7 +1,12 @@
-"""Sums down the drainage: in blocks first, then across what waited for other blocks."""
+"""Sums and maxima down the drainage: in blocks first, then across what waited for other blocks."""
 
-from siting.terrain._kernels.direction import STEP_COL, STEP_ROW
-from siting.terrain._kernels.jit import kernel
+import numpy as np
+
+from siting.terrain._kernels.direction import STEP_COL, STEP_ROW, VOID
+from siting.terrain._kernels.jit import at, kernel, part
+
+DONE = 255
+"""Left in the count of inflows by a cell that waits for nobody more: none has that many."""
 
 
 @kernel
@@ -38,45 +43,65 @@ def count_inflows(direction, inflows, row0, row1):
 
 
 @kernel
-def walk_block(direction, inflows, total, row0, row1, col0, col1, pending):
-    """Add down from every source of a block; list the cells whose water leaves it. Returns how many."""
+def walk_block(direction, inflows, value, cols, limits, largest, pending):
+    """
+    Gather down from every source of a block: the sum of values, or the `largest`.
+
+    Arrays are flat, `cols` cells to a row. Lists the cells whose water leaves the block; returns how many.
+    """
+    row0, row1, col0, col1 = limits
     waiting = 0
-    for row in range(row0, row1):
-        for col in range(col0, col1):
-            if inflows[row, col] != 0 or direction[row, col] == 255:
+    for first_row in range(row0, row1):
+        for first_col in range(col0, col1):
+            place = first_row * cols + first_col
+            if at(inflows, place) != 0 or at(direction, place) == VOID:
                 continue
-            here_row, here_col = row, col
+            row, col = first_row, first_col
             while True:
-                inflows[here_row, here_col] = 255  # done
-                code = direction[here_row, here_col]
+                inflows[np.uint64(place)] = DONE
+                code = np.int64(at(direction, place))
                 if code > 8:
                     break
-                to_row, to_col = here_row + STEP_ROW[code], here_col + STEP_COL[code]
-                if to_row < row0 or to_row >= row1 or to_col < col0 or to_col >= col1:
-                    pending[waiting] = here_row * direction.shape[1] + here_col
+                row, col = row + at(STEP_ROW, code), col + at(STEP_COL, code)
+                if row < row0 or row >= row1 or col < col0 or col >= col1:
+                    pending[waiting] = place
                     waiting += 1
                     break
-                total[to_row, to_col] += total[here_row, here_col]
-                inflows[to_row, to_col] -= 1
-                # a cell further on in the block is met by the scan: but it may lie behind it
-                if inflows[to_row, to_col] != 0:
+                place = _pass_on(inflows, value, place, row * cols + col, largest)
+                if place < 0:
                     break
-                here_row, here_col = to_row, to_col
     return waiting
 
 
+@part
+def _pass_on(inflows, value, place, below, largest):
+    """Add a cell's value to that of the cell below; return the latter if it waits for nobody more, else -1."""
+    here, there = at(value, place), at(value, below)
+    value[np.uint64(below)] = max(here, there) if largest else there + here
+    left = np.uint8(at(inflows, below) - np.uint8(1))
+    inflows[np.uint64(below)] = left
+    return below if left == 0 else -1
+
+
 @kernel
-def walk_rest(direction, inflows, total, pending):
+def walk_rest(direction, inflows, value, cols, largest, pending):
     """Finish the walks that waited for other blocks."""
-    cols = direction.shape[1]
     for start in pending:
-        row, col = start // cols, start % cols
-        while direction[row, col] <= 8:
-            code = direction[row, col]
-            to_row, to_col = row + STEP_ROW[code], col + STEP_COL[code]
-            total[to_row, to_col] += total[row, col]
-            inflows[to_row, to_col] -= 1
-            if inflows[to_row, to_col] != 0:
-                break
-            inflows[to_row, to_col] = 255
-            row, col = to_row, to_col
+        place = start
+        while place >= 0 and at(direction, place) <= 8:
+            code = np.int64(at(direction, place))
+            inflows[np.uint64(place)] = DONE
+            below = place + at(STEP_ROW, code) * cols + at(STEP_COL, code)
+            place = _pass_on(inflows, value, place, below, largest)
+        if place >= 0:
+            inflows[np.uint64(place)] = DONE
+
+
+@kernel
+def count_unfinished(direction, inflows, row0, row1):
+    """Count in rows `row0` to `row1` the cells that still wait for others: flow runs in a circle there or above."""
+    unfinished = 0
+    for row in range(row0, row1):
+        for col in range(direction.shape[1]):
+            unfinished += np.int64((inflows[row, col] != DONE) & (direction[row, col] != VOID))
+    return unfinished

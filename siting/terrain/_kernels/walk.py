@@ -2,13 +2,10 @@
 
 import numpy as np
 
-from siting.terrain._kernels.direction import STEP_COL, STEP_ROW
-from siting.terrain._kernels.jit import kernel
+from siting.terrain._kernels.direction import STEP_COL, STEP_ROW, VOID
+from siting.terrain._kernels.jit import at, kernel
 
 UNKNOWN, NONE = -2, -1
-
-DONE = 255
-"""Left in the count of inflows by a cell that waits for nobody more: none has that many."""
 
 
 @kernel
@@ -61,94 +58,92 @@ def _unwind(direction, is_target, lengths, include_self, target, distance, stack
 
 
 @kernel
-def highest_upstream(direction, inflows, highest):
-    """Carry the greatest height down; `highest` holds the heights and receives the answers."""
-    rows, cols = direction.shape
-    for row in range(rows):
-        for col in range(cols):
-            if inflows[row, col] != 0 or direction[row, col] == 255:
-                continue
-            here_row, here_col = row, col
-            while True:
-                inflows[here_row, here_col] = DONE
-                code = direction[here_row, here_col]
-                if code > 8:
-                    break
-                to_row, to_col = here_row + STEP_ROW[code], here_col + STEP_COL[code]
-                highest[to_row, to_col] = max(highest[to_row, to_col], highest[here_row, here_col])
-                inflows[to_row, to_col] -= 1
-                if inflows[to_row, to_col] != 0:
-                    break
-                here_row, here_col = to_row, to_col
-
-
-@kernel
-def height_of_target(direction, is_target, height, base):
+def height_of_target(direction, is_target, height, base, cols, limits):
     """
-    Write the height of the first marked cell on each cell's path, itself included; NaN where none is met.
+    Write for the cells of a block the height of the first marked cell on their path, themselves included, else NaN.
 
-    A walk goes down to the first cell whose answer is known; all cells on the way share it.
+    Arrays are flat, `cols` cells to a row; `base` comes as infinity. A walk goes down, out of the block if need be, to
+    the first cell whose answer is known; all cells on the way share it. Two threads may answer for the same cell: they
+    give the same answer.
     """
-    rows, cols = direction.shape
-    base[:] = np.inf
-    for row in range(rows):
-        for col in range(cols):
-            here_row, here_col = row, col
-            while base[here_row, here_col] == np.inf:
-                code = direction[here_row, here_col]
-                if code != 255 and is_target[here_row, here_col]:
-                    base[here_row, here_col] = height[here_row, here_col]
+    row0, row1, col0, col1 = limits
+    for row in range(row0, row1):
+        for first in range(row * cols + col0, row * cols + col1):
+            place, found = first, at(base, first)
+            while found == np.inf:
+                code = np.int64(at(direction, place))
+                if code != VOID and at(is_target, place):
+                    found = at(height, place)
                 elif code > 8:
-                    base[here_row, here_col] = np.nan
+                    found = np.float32(np.nan)
                 else:
-                    here_row, here_col = here_row + STEP_ROW[code], here_col + STEP_COL[code]
-            found = base[here_row, here_col]
-            here_row, here_col = row, col
-            while base[here_row, here_col] == np.inf:
-                base[here_row, here_col] = found
-                code = direction[here_row, here_col]
-                here_row, here_col = here_row + STEP_ROW[code], here_col + STEP_COL[code]
+                    place += at(STEP_ROW, code) * cols + at(STEP_COL, code)
+                    found = at(base, place)
+            last, place = place, first
+            while place != last:
+                base[np.uint64(place)] = found
+                code = np.int64(at(direction, place))
+                place += at(STEP_ROW, code) * cols + at(STEP_COL, code)
+            base[np.uint64(last)] = found
 
 
 @kernel
-def carry_bits(direction, inflows, bits):
-    """Carry marks down: `bits` holds each cell's own and receives its own and those of all cells upstream."""
+def carry_bits(direction, bits, cols):
+    """
+    Carry marks down: `bits` holds each cell's own and receives those of all cells upstream, too.
+
+    Both are flat. A walk ends where the cell below bears the marks already: it has carried them on, or will when its
+    turn comes. So only cells below marks are walked, each at most once a bit.
+    """
+    for first in range(bits.size):
+        if bits[first] == 0 or direction[first] > 8:
+            continue
+        place = first
+        while at(direction, place) <= 8:
+            code = np.int64(at(direction, place))
+            below = place + at(STEP_ROW, code) * cols + at(STEP_COL, code)
+            both = at(bits, below) | at(bits, place)
+            if both == at(bits, below):
+                break
+            bits[np.uint64(below)] = both
+            place = below
+
+
+@kernel
+def _mark_beside_void(direction, row, beside):
+    """Mark the columns of a row that lie beside a void or the raster's edge."""
     rows, cols = direction.shape
-    for row in range(rows):
-        for col in range(cols):
-            if inflows[row, col] != 0 or direction[row, col] == 255:
-                continue
-            here_row, here_col = row, col
-            while True:
-                inflows[here_row, here_col] = DONE
-                code = direction[here_row, here_col]
-                if code > 8:
-                    break
-                to_row, to_col = here_row + STEP_ROW[code], here_col + STEP_COL[code]
-                bits[to_row, to_col] |= bits[here_row, here_col]
-                inflows[to_row, to_col] -= 1
-                if inflows[to_row, to_col] != 0:
-                    break
-                here_row, here_col = to_row, to_col
+    if row == 0 or row == rows - 1:
+        beside[:] = True
+        return
+    north, middle, south = direction[row - 1], direction[row], direction[row + 1]
+    for col in range(1, cols - 1):
+        void = (north[col - 1] == VOID) | (north[col] == VOID) | (north[col + 1] == VOID)
+        void |= (middle[col - 1] == VOID) | (middle[col + 1] == VOID)
+        void |= (south[col - 1] == VOID) | (south[col] == VOID) | (south[col + 1] == VOID)
+        beside[col] = void
+    beside[0], beside[cols - 1] = True, True
 
 
 @kernel
-def inward_sides(direction, enclosed, side_bit, void_bit, bits):
+def inward_sides(direction, enclosed, side_bit, void_bit, bits, first_row, last_row):
     """
     Write from which sides unseen water may enter each cell that drains inward beside the data's edge or a void.
 
-    `side_bit` holds the sides that a missing neighbour in directions 1 to 8 lies on. A missing corner tells nothing
-    that a missing side has not told, save beside an enclosed void.
+    For rows `first_row` up to `last_row`. `side_bit` holds the sides that a missing neighbour in directions 1 to 8 lies
+    on. A missing corner tells nothing that a missing side has not told, save beside an enclosed void.
     """
     rows, cols = direction.shape
-    for row in range(rows):
+    beside = np.empty(cols, np.bool_)
+    for row in range(first_row, last_row):
+        _mark_beside_void(direction, row, beside)
         for col in range(cols):
             sides, corners = 0, 0
-            if direction[row, col] <= 8:
+            if beside[col] and direction[row, col] <= 8:
                 for code in range(1, 9):
                     to_row, to_col = row + STEP_ROW[code], col + STEP_COL[code]
                     inside = 0 <= to_row < rows and 0 <= to_col < cols
-                    if inside and direction[to_row, to_col] != 255:
+                    if inside and direction[to_row, to_col] != VOID:
                         continue
                     if inside and enclosed[to_row, to_col]:
                         sides |= void_bit
