@@ -76,9 +76,9 @@ def rank_villages(
     Notes
     -----
     What is unknown leaves a village between a least and a most area per person, and so between two ranks; it is never last
-    by default. A plot of unknown supported area might be in the set: it adds nothing to all of its area. Unknown people are
-    one or more. A reach that is cut may hold any area, and so may that of a village outside the data. Such villages might
-    also be nearest to plots that count for others here.
+    by default. A plot of unknown supported area might be in the set: it may add anything up to its area. Unknown people are
+    one or more. A reach that is cut may hold any area, and so may that of a village outside the data; that such a village
+    might be nearest to plots which count for others here is not in the bounds.
     """
     pairs = _Pairs(village, plot, distance_m, villages=people.size, plots=in_set.size)
     _check_plots(supported_dry_m2, plot_area_m2)
