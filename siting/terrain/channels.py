@@ -4,11 +4,16 @@ import numpy as np
 import numpy.typing as npt
 
 from siting.parallel import run_all
+from siting.terrain._kernels.stencil import place
 from siting.terrain._kernels.walk import height_of_target
 from siting.terrain.condition import Directions, FloatArray, Heights, Mask, blocks_of, row_bands
 
 SUMMIT, SHOULDER, BACKSLOPE, FOOTSLOPE, TOESLOPE = 1, 2, 3, 4, 5
 UNKNOWN_POSITION, NO_POSITION = 0, 255
+CODES = tuple(np.uint8(code) for code in (SUMMIT, SHOULDER, FOOTSLOPE, TOESLOPE, BACKSLOPE, UNKNOWN_POSITION, NO_POSITION))
+SHARES = tuple(np.float32(share) for share in (0.9, 0.65, 0.35, 0.1))
+"""Limits of r for summit, shoulder, footslope and toeslope."""
+
 GENTLE_SLOPE = 0.05
 
 
@@ -63,15 +68,16 @@ def landscape_position(
     ----------
     Terms: Schoeneberger et al., Field book for describing and sampling soils.
     """
-    relief = height_above_channel_m + drop_from_above_m
-    with np.errstate(invalid="ignore", divide="ignore"):
-        share = height_above_channel_m / relief
-    gentle = slope <= GENTLE_SLOPE
-    position = np.full(slope.shape, BACKSLOPE, dtype=np.uint8)
-    position[(share >= 0.65) & (profile_curvature >= 0)] = SHOULDER
-    position[(share >= 0.9) & gentle] = SUMMIT
-    position[(share <= 0.35) & (profile_curvature <= 0)] = FOOTSLOPE
-    position[(share <= 0.1) & gentle] = TOESLOPE
-    position[~(relief >= 2.0 * vertical_error_m)] = UNKNOWN_POSITION
-    position[np.isnan(slope)] = NO_POSITION
+    position = np.empty(slope.shape, dtype=np.uint8)
+    place(
+        height_above_channel_m,
+        drop_from_above_m,
+        slope,
+        profile_curvature,
+        np.float32(GENTLE_SLOPE),
+        np.float32(2.0 * vertical_error_m),
+        SHARES,
+        CODES,
+        position,
+    )
     return position

@@ -4,7 +4,7 @@ import numpy as np
 import numpy.typing as npt
 
 from siting.parallel import run_all
-from siting.terrain._kernels.stencil import horn, wetness
+from siting.terrain._kernels.stencil import bend, horn, wetness
 from siting.terrain.condition import FloatArray, Heights, row_bands
 
 LEAST_SLOPE = 0.001
@@ -101,15 +101,7 @@ def profile_curvature(
     ----------
     Zevenbergen & Thorne (1987).
     """
-    z = np.pad(np.asarray(elevation, dtype=np.float64), 1, constant_values=np.nan)
-    centre = z[1:-1, 1:-1]
-    width, height = cell_width_m[:, None], cell_height_m[:, None]
-    north, south, west, east = z[:-2, 1:-1], z[2:, 1:-1], z[1:-1, :-2], z[1:-1, 2:]
-    p, q = (east - west) / (2 * width), (north - south) / (2 * height)
-    r, t = (east - 2 * centre + west) / width**2, (north - 2 * centre + south) / height**2
-    s = (z[:-2, 2:] - z[:-2, :-2] - z[2:, 2:] + z[2:, :-2]) / (4 * width * height)
-    steep = p * p + q * q
-    with np.errstate(invalid="ignore", divide="ignore"):
-        along = -(r * p * p + 2 * s * p * q + t * q * q) / steep
-        bends = np.isfinite(along) & (np.abs(along) * width * height >= STRAIGHT_M)
-    return np.where(np.isnan(centre), np.nan, np.where(bends, along, 0.0)).astype(np.float32)
+    z = np.ascontiguousarray(elevation, dtype=np.float64)
+    found = np.empty(z.shape, dtype=np.float32)
+    bend(z, cell_width_m, cell_height_m, STRAIGHT_M, found)
+    return found

@@ -46,3 +46,60 @@ def wetness(area_m2, slope, contour_m, least, index):
             # a NaN slope stays NaN: the comparison is false for it
             steep = np.float32(least) if steep < least else steep
             index[row, col] = np.log(area_m2[row, col] * per_metre / steep)
+
+
+@kernel
+def bend(z, width_m, height_m, straight_m, curvature):
+    """
+    Write the curvature along the steepest line of the quadratic surface through each cell and its neighbours.
+
+    0 where a neighbour is void or missing, on level ground, and where the ground bends by less than `straight_m` over a
+    cell; NaN at voids.
+    """
+    rows, cols = z.shape
+    for row in range(rows):
+        if row == 0 or row == rows - 1 or cols < 3:
+            for col in range(cols):
+                curvature[row, col] = np.nan if np.isnan(z[row, col]) else 0.0
+            continue
+        above, beside, below, out = z[row - 1], z[row], z[row + 1], curvature[row]
+        width, height = width_m[row], height_m[row]
+        for col in range(1, cols - 1):
+            centre = beside[col]
+            north, south, west, east = above[col], below[col], beside[col - 1], beside[col + 1]
+            p, q = (east - west) / (2 * width), (north - south) / (2 * height)
+            r = (east - 2 * centre + west) / (width * width)
+            t = (north - 2 * centre + south) / (height * height)
+            corners = above[col + 1] - above[col - 1] - below[col + 1] + below[col - 1]
+            s = corners / (4 * width * height)
+            steep = p * p + q * q
+            along = -(r * p * p + 2 * s * p * q + t * q * q) / steep
+            along = along if np.abs(along) < np.inf else 0.0  # level ground or a void beside it
+            along = along if np.abs(along) * width * height >= straight_m else 0.0
+            out[col] = np.nan if np.isnan(centre) else along
+        for col in (0, cols - 1):
+            out[col] = np.nan if np.isnan(beside[col]) else 0.0
+
+
+@kernel
+def place(height, drop, slope, curvature, gentle_slope, least_relief, shares, codes, position):
+    """
+    Write the position of each cell by its share of the relief about it, its slope and how it bends.
+
+    `shares` are the limits of summit, shoulder, footslope and toeslope; `codes` are theirs in this order, then those of
+    backslope, unknown and void. All measures are float32.
+    """
+    at_summit, at_shoulder, at_foot, at_toe = shares
+    summit, shoulder, foot, toe, back, unknown, void = codes
+    for row in range(position.shape[0]):
+        above, below, steep, bends, out = height[row], drop[row], slope[row], curvature[row], position[row]
+        for col in range(position.shape[1]):
+            relief = above[col] + below[col]
+            share = above[col] / relief
+            gentle = steep[col] <= gentle_slope
+            code = shoulder if (share >= at_shoulder) & (bends[col] >= 0) else back
+            code = summit if (share >= at_summit) & gentle else code
+            code = foot if (share <= at_foot) & (bends[col] <= 0) else code
+            code = toe if (share <= at_toe) & gentle else code
+            code = code if relief >= least_relief else unknown
+            out[col] = void if np.isnan(steep[col]) else code
