@@ -4,7 +4,9 @@ from siting.inputs.checksum import sha256_of
 from siting.inputs.climate import read_climate
 from siting.inputs.dem import read_dem
 from siting.inputs.maps import CodeMap, is_raster, read_map, read_meanings, read_raster_on_grid
-from siting.inputs.rain import read_rain
+from siting.inputs.rain import read_rain, read_rain_stations
+from siting.inputs.rain_zones import read_rain_zones
+from siting.inputs.stations import Stations, nearest_station, read_stations
 from siting.inputs.vectors import (
     read_boundary,
     read_exclusions,
@@ -15,7 +17,9 @@ from siting.inputs.vectors import (
 
 __all__ = [
     "CodeMap",
+    "Stations",
     "is_raster",
+    "nearest_station",
     "read_boundary",
     "read_climate",
     "read_dem",
@@ -25,7 +29,10 @@ __all__ = [
     "read_meanings",
     "read_pan_layer",
     "read_rain",
+    "read_rain_stations",
+    "read_rain_zones",
     "read_raster_on_grid",
+    "read_stations",
     "read_villages",
     "sha256_of",
 ]

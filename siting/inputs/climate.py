@@ -7,7 +7,7 @@ import numpy.typing as npt
 
 from siting.demand.weather import BOUNDS, Climate
 from siting.errors import InputError
-from siting.inputs.rain import read_dates, read_numbers, read_table
+from siting.inputs.daily_csv import read_dates, read_numbers, read_table
 
 
 def read_climate(path: Path) -> Climate:

@@ -1,5 +1,6 @@
 """Maps of soil or cover, laid on the DEM's grid: the value under each cell's centre."""
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -8,9 +9,11 @@ import numpy.typing as npt
 import pandas as pd
 import rasterio
 from affine import Affine
+from rasterio.enums import ColorInterp
 from rasterio.errors import RasterioError
 from rasterio.vrt import WarpedVRT
 from rasterio.warp import Resampling
+from rasterio.windows import Window
 
 from siting.errors import InputError
 from siting.grid import Grid
@@ -18,6 +21,9 @@ from siting.inputs.vectors import NO_VALUE, burn, read_vector
 from siting.notes import Notes
 
 RASTER_ENDINGS = (".tif", ".tiff", ".vrt", ".img", ".asc", ".bil", ".hgt")
+
+BAND_ROWS = 256
+"""Rows read at once, so that what is made on the way stays small beside the grid."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -53,7 +59,12 @@ def read_map(path: Path, grid: Grid, *, column: str | None, setting: str, notes:
         found = _codes_of_raster(read_raster_on_grid(path, grid, setting=setting))
     else:
         found = _codes_of_polygons(path, grid, column, setting)
-    covered = float(np.mean(found.code >= 0))
+    tell_covered(path, float(np.mean(found.code >= 0)), setting=setting, notes=notes)
+    return found
+
+
+def tell_covered(path: Path, covered: float, *, setting: str, notes: Notes) -> None:
+    """Refuse a map that covers none of the DEM's cells; say what share (0 to 1) one leaves uncovered."""
     if covered == 0.0:
         msg = f"{setting} {path.name} does not meet the DEM; check the CRS of both, or give a map of the same place"
         raise InputError(msg)
@@ -62,17 +73,26 @@ def read_map(path: Path, grid: Grid, *, column: str | None, setting: str, notes:
             f"{setting}_partial",
             f"{setting} {path.name} leaves {100 * (1 - covered):.1f} % of the DEM's cells without a value: unknown.",
         )
-    return found
 
 
 def read_raster_on_grid(path: Path, grid: Grid, *, setting: str) -> npt.NDArray[np.float64]:
     """Read a raster's first band on a grid by nearest neighbour; NaN where it has no value."""
+    values = np.empty(grid.shape, dtype=np.float64)
+    for band, part in raster_bands(path, grid, setting=setting):
+        values[band] = part
+    return values
+
+
+def raster_bands(path: Path, grid: Grid, *, setting: str) -> Iterator[tuple[slice, npt.NDArray[np.float64]]]:
+    """Read a raster as `read_raster_on_grid` does, a band of rows at a time: the rows, and their values."""
     a, _, c, _, e, f = grid.affine
     try:
         with rasterio.open(path) as file:
             if file.crs is None:
                 msg = f"{setting} {path.name} declares no CRS; give it one with `gdal_edit.py -a_srs EPSG:… {path.name}`"
                 raise InputError(msg)
+            scale, offset = float(file.scales[0]), float(file.offsets[0])
+            bare = file.nodata is None and ColorInterp.alpha not in file.colorinterp
             with WarpedVRT(
                 file,
                 crs=grid.crs,
@@ -80,15 +100,17 @@ def read_raster_on_grid(path: Path, grid: Grid, *, setting: str) -> npt.NDArray[
                 width=grid.cols,
                 height=grid.rows,
                 resampling=Resampling.nearest,
-                add_alpha=file.nodata is None,
+                add_alpha=bare,
             ) as warped:
-                values = warped.read(1).astype(np.float64)
-                valid = warped.read_masks(1) > 0
-                values = values * float(file.scales[0]) + float(file.offsets[0])
+                for row in range(0, grid.rows, BAND_ROWS):
+                    window = Window(0, row, grid.cols, min(BAND_ROWS, grid.rows - row))
+                    values = warped.read(1, window=window).astype(np.float64) * scale + offset
+                    # an added band tells what the file covers; as a mask it is heeded for unsigned numbers alone
+                    mask = warped.read(warped.count, window=window) if bare else warped.read_masks(1, window=window)
+                    yield slice(row, row + BAND_ROWS), np.where((mask > 0) & np.isfinite(values), values, np.nan)
     except RasterioError as error:
         msg = f"{setting} {path.name} cannot be read as a raster; check that it exists and is whole"
         raise InputError(msg) from error
-    return np.where(valid & np.isfinite(values), values, np.nan)
 
 
 def _codes_of_raster(values: npt.NDArray[np.float64]) -> CodeMap:

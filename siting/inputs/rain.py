@@ -1,37 +1,43 @@
-"""A daily rain record from a CSV, understood or refused."""
+"""Daily rain records from a CSV, of one gauge or of several, understood or refused."""
 
-import csv
-import io
+from collections.abc import Sequence
 from pathlib import Path
 
 import numpy as np
+import numpy.typing as npt
 import pandas as pd
 
 from siting.errors import InputError
+from siting.inputs.daily_csv import column_named, plain_name, read_dates, read_numbers, read_table
 from siting.notes import Notes
-from siting.runoff.rain import Rain
+from siting.runoff.generator import RainGenerator, daily_from_monthly
+from siting.runoff.rain import Rain, StationRain
 
-DATE_NAMES = ("date", "day", "time", "datum", "fecha", "data", "jour", "tarih", "tarikh")
-DATE_PATTERNS = (
-    *("%Y-%m-%d", "%Y/%m/%d", "%Y%m%d", "%Y-%m-%d %H:%M:%S", "%d.%m.%Y"),
-    *("%d/%m/%Y", "%m/%d/%Y", "%d-%m-%Y", "%m-%d-%Y"),
-)
+FloatArray = npt.NDArray[np.float64]
+Readings = tuple[pd.DatetimeIndex, FloatArray]
+
 RAIN_NAMES = (
     *("rain", "rainfall", "precip", "precipitation", "prcp", "pr", "pluie", "lluvia", "chuva", "niederschlag"),
     *("precipitacion", "precipitacao", "precipitations", "yagis", "mvua"),
 )
+STATION_NAMES = ("station", "gauge", "site", "estacion", "estacao", "poste", "istasyon", "kituo")
 UNIT_ENDINGS = {"mm": "mm", "in": "inch", "inch": "inch", "inches": "inch"}
 MOST_IN_A_DAY_MM = 1825.0
 """The most measured in 24 hours: Foc-Foc, La Reunion, 7-8 January 1966 (WMO Archive of Weather and Climate Extremes)."""
+MOST_IN_A_MONTH_MM = 9300.0
+"""The most measured in a month: Cherrapunji, July 1861 (from memory)."""
 RARE_IN_A_DAY_MM = 500.0
 """A day above this is rare anywhere, and in dry country mostly a wrong unit or a sum of days (assumption)."""
 LEAST_YEAR_MM = 15.0
 """A mean year below this looks like inches or metres (common practice)."""
+SPARSE_DAYS = 5
+"""Rows this many days apart are totals, not days."""
+LEAST_MONTH_DAYS = 28
 
 
-def read_rain(path: Path, *, unit: str | None = None, notes: Notes) -> Rain:
+def read_rain(path: Path, *, unit: str | None = None, generator: RainGenerator | None = None, notes: Notes) -> Rain:
     """
-    Read a daily rain record.
+    Read the daily rain record of one gauge.
 
     Parameters
     ----------
@@ -40,6 +46,8 @@ def read_rain(path: Path, *, unit: str | None = None, notes: Notes) -> Rain:
         where the comma does not separate the columns.
     unit
         "mm" or "inch"; None takes it from the column's name, else assumes mm and notes it.
+    generator
+        Draws days where the file holds monthly totals, each that of the month of its date; None refuses them.
 
     Returns
     -------
@@ -49,111 +57,156 @@ def read_rain(path: Path, *, unit: str | None = None, notes: Notes) -> Rain:
     Raises
     ------
     InputError
-        Monthly totals, repeated days, depths below zero or beyond the most ever measured, lines with more fields than
-        columns, days that cannot be told.
+        Totals of several days, repeated days, depths below zero or beyond the most ever measured, lines with more fields
+        than columns, days that cannot be told; a generator for a file of days.
     """
     table = read_table(path, setting="rain.daily")
-    dates = read_dates(path, table, setting="rain.daily")
-    name = _column(path, table, RAIN_NAMES, "rain", "rain.daily")
-    depth = read_numbers(path, table[name], setting="rain.daily")
-    depth = depth * _millimetres(name, unit, notes)
-    _check(path, dates, depth, unit_given=unit is not None)
-    series = pd.Series(depth.to_numpy(), index=dates).sort_index()
-    whole = series.reindex(pd.date_range(series.index[0], series.index[-1], freq="D"))
-    _note_rare_days(whole, notes)
-    _note_gaps(whole, notes)
+    dates = read_dates(path, table, setting="rain.daily", months=True)
+    name = column_named(path, table, RAIN_NAMES, "rain", "rain.daily")
+    depth = _depths(path, table[name], _millimetres(name, unit, notes))
+    what = f"rain.daily {path.name}"
+    monthly = _monthly(dates)
+    _check(what, dates, depth, most_mm=MOST_IN_A_MONTH_MM if monthly else MOST_IN_A_DAY_MM)
+    if generator is not None:
+        if not monthly:
+            msg = f"rain.generator is true, but {what} holds no monthly totals; take rain.generator out"
+            raise InputError(msg)
+        return _drawn(dates, depth, generator, notes)
+    _refuse_totals(what, dates, monthly)
+    if unit is None:
+        _refuse_odd_years(what, depth)
+    whole = _whole(dates, depth)
+    _note_rare_days(whole, "The rain record", notes)
+    _note_gaps(whole, "The rain record", notes)
     return Rain(whole.index.to_numpy().astype("datetime64[D]"), np.asarray(whole, dtype=np.float64))
 
 
-def read_table(path: Path, *, setting: str) -> pd.DataFrame:
-    """Read a daily table as text, whatever its separator."""
-    if not path.exists():
-        msg = f"{setting} {path.name} does not exist; give the path of a CSV"
-        raise InputError(msg)
-    try:
-        text = path.read_text(encoding="utf-8-sig", errors="strict")
-        separator = max(";\t,", key=text.partition("\n")[0].count)
-        reader = csv.reader(io.StringIO(text, newline=""), delimiter=separator, skipinitialspace=True)
-        lines = [(reader.line_num, fields) for fields in reader if any(field.strip() for field in fields)]
-    except (UnicodeDecodeError, csv.Error) as error:
-        msg = f"{setting} {path.name} cannot be read as a table; save it as CSV (UTF-8) with a date column"
-        raise InputError(msg) from error
-    names = _names(path, lines[0][1] if lines else [], setting)
-    rows = [_row(path, fields, number, len(names), separator, setting) for number, fields in lines[1:]]
-    if not rows or len(names) < 2:
-        msg = f"{setting} {path.name} has {len(rows)} rows and {len(names)} columns; it needs dates and values"
-        raise InputError(msg)
-    return pd.DataFrame(rows, columns=names, dtype=str)
+def read_rain_stations(
+    path: Path,
+    stations: Sequence[str] | None,
+    *,
+    unit: str | None = None,
+    generator: RainGenerator | None = None,
+    notes: Notes,
+) -> StationRain:
+    """
+    Read daily rain of several stations onto one calendar, from the first day of any to the last of any.
 
+    Parameters
+    ----------
+    path
+        CSV with a date column and either a station and a rain column, or one column of rain named as each station
+        (a unit may follow, as in "Rehm_mm").
+    stations
+        The names to read, in this order; others in the file are passed over, and said. None, or one name beside a
+        column of rain, reads the record of one gauge as `read_rain` does.
+    unit, generator
+        As in `read_rain`; days are drawn for one gauge alone.
 
-def _names(path: Path, header: list[str], setting: str) -> list[str]:
-    """Return the names of the columns, by place where the file names none."""
-    names = [name.strip() or f"column {place}" for place, name in enumerate(header, 1)]
-    for name in names:
-        if names.count(name) > 1:
-            msg = f"{setting} {path.name} has the column {name} twice; keep one"
+    Returns
+    -------
+    StationRain
+        NaN where a station has no reading; the missing days of each are said.
+
+    Raises
+    ------
+    InputError
+        As `read_rain`; and where a station named is not in the file.
+    """
+    table = read_table(path, setting="rain.daily")
+    station_column = _station_column(table)
+    if stations is None or (len(stations) == 1 and station_column is None and _has_rain(table)):
+        if station_column is not None and table[station_column].str.strip().nunique() > 1:
+            msg = f"rain.daily {path.name} holds several stations; say where they lie in rain.stations"
             raise InputError(msg)
-    return names
+        rain = read_rain(path, unit=unit, generator=generator, notes=notes)
+        return StationRain(rain.days, rain.rain_mm[None, :], (stations[0] if stations else path.stem,))
+    if generator is not None:
+        msg = "rain.generator draws the days of one gauge, not of several together; give daily rain or one station"
+        raise InputError(msg)
+    dates = read_dates(path, table, setting="rain.daily", months=True)
+    if station_column is None:
+        found = _by_column(path, table, dates, stations, unit, notes)
+    else:
+        found = _by_row(path, table, dates, station_column, unit, notes)
+    lacking = [name for name in stations if name not in found]
+    if lacking:
+        has = ", ".join(map(repr, table.columns if station_column is None else found))
+        msg = f"rain.daily {path.name} has no rain of the station {lacking[0]!r}; it has {has}"
+        raise InputError(msg)
+    _note_unused(path, [name for name in found if name not in stations], notes)
+    return _one_calendar(path, {name: found[name] for name in stations}, unit, notes)
 
 
-def _row(path: Path, fields: list[str], number: int, columns: int, separator: str, setting: str) -> list[str]:
-    """Return one line's fields, empty where it is short; refuse more fields than columns: nobody can tell which is which."""
-    if any(field.strip() for field in fields[columns:]):
-        way_out = (
-            "if that is a decimal comma, separate the columns with semicolons" if separator == "," else "mend that line"
+def _station_column(table: pd.DataFrame) -> str | None:
+    columns = [str(column) for column in table.columns if plain_name(str(column)).split("_")[0] in STATION_NAMES]
+    return columns[0] if len(columns) == 1 else None
+
+
+def _has_rain(table: pd.DataFrame) -> bool:
+    return any(plain_name(str(column)).split("_")[0] in RAIN_NAMES for column in table.columns)
+
+
+def _by_row(
+    path: Path, table: pd.DataFrame, dates: pd.DatetimeIndex, station: str, unit: str | None, notes: Notes
+) -> dict[str, Readings]:
+    """Return dates and depths of each station of a table with a station column."""
+    name = column_named(path, table, RAIN_NAMES, "rain", "rain.daily")
+    depth = _depths(path, table[name], _millimetres(name, unit, notes))
+    names = table[station].str.strip()
+    return {
+        str(one): (dates[rows], depth[rows]) for one in dict.fromkeys(names) if (rows := (names == one).to_numpy()).any()
+    }
+
+
+def _by_column(
+    path: Path, table: pd.DataFrame, dates: pd.DatetimeIndex, stations: Sequence[str], unit: str | None, notes: Notes
+) -> dict[str, Readings]:
+    """Return dates and depths of each station that has a column of its own."""
+    wanted = {plain_name(name): name for name in stations}
+    found: dict[str, Readings] = {}
+    for column in map(str, table.columns):
+        plain = plain_name(column)
+        start, _, ending = plain.rpartition("_")
+        key = plain if plain in wanted or ending not in UNIT_ENDINGS else start
+        if key in wanted:
+            found[wanted[key]] = (dates, _depths(path, table[column], _millimetres(column, unit, notes)))
+    return found
+
+
+def _one_calendar(path: Path, found: dict[str, Readings], unit: str | None, notes: Notes) -> StationRain:
+    """Check each station's readings, and lay them side by side."""
+    series = {}
+    for name, (dates, depth) in found.items():
+        what = f"rain.daily {path.name} at {name!r}"
+        _check(what, dates, depth, most_mm=MOST_IN_A_DAY_MM)
+        _refuse_totals(what, dates, _monthly(dates))
+        if unit is None:
+            _refuse_odd_years(what, depth)
+        series[name] = pd.Series(depth, index=dates)
+    first, last = min(dates.min() for dates, _ in found.values()), max(dates.max() for dates, _ in found.values())
+    frame = pd.DataFrame(series).reindex(pd.date_range(first, last, freq="D"))
+    for name in found:
+        _note_rare_days(frame[name], f"The rain record of {name!r}", notes)
+        _note_gaps(frame[name], f"The rain record of {name!r}", notes)
+    days = frame.index.to_numpy().astype("datetime64[D]")
+    return StationRain(days, frame.to_numpy(dtype=np.float64).T.copy(), tuple(found))
+
+
+def _note_unused(path: Path, names: Sequence[str], notes: Notes) -> None:
+    if names:
+        listed = ", ".join(map(repr, names))
+        notes.warn(
+            "rain_station_unplaced", f"rain.daily {path.name} holds stations that rain.stations does not place: {listed}."
         )
-        msg = f"{setting} {path.name} has {len(fields)} fields in line {number} under {columns} columns; {way_out}"
-        raise InputError(msg)
-    return [*fields[:columns], *[""] * (columns - len(fields))]
 
 
-def _plain(name: str) -> str:
-    return name.strip().lower().replace(" ", "_").replace("(", "_").replace(")", "").replace("__", "_")
-
-
-def _column(path: Path, table: pd.DataFrame, names: tuple[str, ...], what: str, setting: str) -> str:
-    found = [str(column) for column in table.columns if _plain(str(column)).split("_")[0] in names]
-    if len(found) == 1:
-        return found[0]
-    columns = ", ".join(repr(str(column)) for column in table.columns)
-    why = "no" if not found else "more than one"
-    msg = f"{setting} {path.name} has {why} {what} column among {columns}; name it '{names[0]}'"
-    raise InputError(msg)
-
-
-def read_dates(path: Path, table: pd.DataFrame, *, setting: str) -> pd.DatetimeIndex:
-    """Read the date column; refuse dates that could be read in two ways."""
-    text = table[_column(path, table, DATE_NAMES, "date", setting)].str.strip()
-    readings = [pd.to_datetime(text, format=pattern, errors="coerce") for pattern in DATE_PATTERNS]
-    whole = [dates for dates in readings if dates.notna().all()]
-    if len(whole) == 1:
-        return pd.DatetimeIndex(whole[0]).normalize()
-    unread = min(readings, key=lambda dates: dates.isna().sum()).isna()
-    example = text.iloc[0] if whole else text[unread].iloc[0]
-    why = "could be day or month first" if whole else "cannot be read"
-    msg = f"dates in {setting} {path.name} such as {example!r} {why}; write them as 2001-12-31"
-    raise InputError(msg)
-
-
-def read_numbers(path: Path, text: "pd.Series[str]", *, setting: str) -> "pd.Series[float]":
-    """Read a column of numbers with decimal points or commas; empty cells and the usual marks are missing."""
-    grouped = text.str.strip().str.fullmatch(r"\d{1,3}(,\d{3})+(\.\d+)?").fillna(False).astype(bool)
-    if grouped.any():
-        example = text[grouped].iloc[0]
-        msg = f"{setting} {path.name} has {example!r}, a decimal or a thousands comma; write numbers with a point"
-        raise InputError(msg)
-    plain = text.str.strip().str.replace(",", ".", regex=False)
-    missing = plain.isna() | plain.str.lower().isin(["", "na", "nan", "-", "-99", "-999", "-9999", "-99.9", "m"])
-    depth = pd.to_numeric(plain.where(~missing), errors="coerce")
-    strange = depth.isna() & ~missing
-    if strange.any():
-        msg = f"{setting} {path.name} has {text[strange].iloc[0]!r} for a number; leave missing days empty"
-        raise InputError(msg)
-    return depth.astype(float)
+def _depths(path: Path, text: "pd.Series[str]", millimetres: float) -> FloatArray:
+    return np.asarray(read_numbers(path, text, setting="rain.daily"), dtype=np.float64) * millimetres
 
 
 def _millimetres(name: str, unit: str | None, notes: Notes) -> float:
-    ending = _plain(name).rsplit("_", maxsplit=1)[-1]
+    ending = plain_name(name).rsplit("_", maxsplit=1)[-1]
     known = unit or UNIT_ENDINGS.get(ending)
     if known is None:
         notes.assume("rain.unit", "mm", "", "the file names no unit", "all water")
@@ -164,54 +217,87 @@ def _millimetres(name: str, unit: str | None, notes: Notes) -> float:
     return 25.4 if known == "inch" else 1.0
 
 
-def _check(path: Path, dates: pd.DatetimeIndex, depth: "pd.Series[float]", *, unit_given: bool) -> None:
+def _monthly(dates: pd.DatetimeIndex) -> bool:
+    """Tell whether there is one row a month."""
+    months = dates.to_numpy().astype("datetime64[M]")
+    return np.unique(months).size == months.size and _usual_step(dates) >= LEAST_MONTH_DAYS
+
+
+def _usual_step(dates: pd.DatetimeIndex) -> float:
+    """Return the usual number of days from row to row; 1 for a single row."""
+    steps = np.diff(np.sort(dates.to_numpy()).astype("datetime64[D]").astype(np.int64))
+    return float(np.median(steps)) if steps.size else 1.0
+
+
+def _check(what: str, dates: pd.DatetimeIndex, depth: FloatArray, *, most_mm: float) -> None:
     if dates.has_duplicates:
         day = dates[dates.duplicated()][0].date()
-        msg = f"rain.daily {path.name} has {day} more than once; keep one row a day"
+        msg = f"{what} has {day} more than once; keep one row a day"
         raise InputError(msg)
-    if depth.notna().sum() == 0:
-        msg = f"rain.daily {path.name} holds no depth at all; give a file with readings"
+    if np.isnan(depth).all():
+        msg = f"{what} holds no depth at all; give a file with readings"
         raise InputError(msg)
-    if depth.min() < 0:
-        msg = f"rain.daily {path.name} has a depth of {depth.min():g} mm; leave missing days empty"
+    if np.nanmin(depth) < 0:
+        msg = f"{what} has a depth of {np.nanmin(depth):g} mm; leave missing days empty"
         raise InputError(msg)
-    if depth.max() > MOST_IN_A_DAY_MM:
+    if np.nanmax(depth) > most_mm:
         msg = (
-            f"rain.daily {path.name} has {depth.max():g} mm on {dates[int(depth.argmax())].date()}, beyond the most ever "
-            f"measured, {MOST_IN_A_DAY_MM:g} mm; correct that day, or the unit of all in rain.unit"
+            f"{what} has {np.nanmax(depth):g} mm on {dates[int(np.nanargmax(depth))].date()}, beyond the most ever "
+            f"measured, {most_mm:g} mm; correct that day, or the unit of all in rain.unit"
         )
         raise InputError(msg)
-    steps = np.diff(np.sort(dates.to_numpy()).astype("datetime64[D]").astype(np.int64))
-    if steps.size and np.median(steps) >= 5:
-        msg = (
-            f"rain.daily {path.name} has one row in {np.median(steps):g} days: totals; runoff comes from single "
-            "events, so give daily rain"
-        )
+
+
+def _refuse_totals(what: str, dates: pd.DatetimeIndex, monthly: bool) -> None:
+    step = _usual_step(dates)
+    if step >= SPARSE_DAYS:
+        way_out = ", or let days be drawn from the totals with rain.generator = true" if monthly else ""
+        msg = f"{what} has one row in {step:g} days: totals; runoff comes from single events, so give daily rain{way_out}"
         raise InputError(msg)
-    if not unit_given and depth.mean() * 365.25 < LEAST_YEAR_MM and depth.size > 365:
+
+
+def _refuse_odd_years(what: str, depth: FloatArray) -> None:
+    mean = np.nanmean(depth) * 365.25
+    if mean < LEAST_YEAR_MM and depth.size > 365:
         msg = (
-            f"rain.daily {path.name} sums to {depth.mean() * 365.25:.1f} mm in a mean year; if it is in inches, say "
+            f"{what} sums to {mean:.1f} mm in a mean year; if it is in inches, say "
             "rain.unit = 'inch', and if it is right, say rain.unit = 'mm'"
         )
         raise InputError(msg)
 
 
-def _note_rare_days(series: "pd.Series[float]", notes: Notes) -> None:
+def _whole(dates: pd.DatetimeIndex, depth: FloatArray) -> "pd.Series[float]":
+    """Lay readings on consecutive days; NaN where there is none."""
+    series = pd.Series(depth, index=dates).sort_index()
+    return series.reindex(pd.date_range(series.index[0], series.index[-1], freq="D"))
+
+
+def _drawn(dates: pd.DatetimeIndex, total_mm: FloatArray, generator: RainGenerator, notes: Notes) -> Rain:
+    """Draw days from monthly totals in any order; a month without a row stays missing."""
+    month = dates.to_numpy().astype("datetime64[M]")
+    months = np.arange(month.min(), month.max() + 1)
+    totals = np.full(months.size, np.nan)
+    totals[(month - months[0]).astype(np.int64)] = total_mm
+    notes.assume("rain.month_of_total", "that of its date", "", "common practice", "seasons and years of the drawn days")
+    return daily_from_monthly(months, totals, generator=generator, notes=notes)
+
+
+def _note_rare_days(series: "pd.Series[float]", what: str, notes: Notes) -> None:
     rare = int((series > RARE_IN_A_DAY_MM).sum())
     if rare:
         notes.warn(
             "rain_rare_days",
-            f"The rain record has {rare} days above {RARE_IN_A_DAY_MM:g} mm, the largest {series.max():g} mm on "
+            f"{what} has {rare} days above {RARE_IN_A_DAY_MM:g} mm, the largest {series.max():g} mm on "
             f"{series.index[int(series.argmax())].date()}: check the unit, and that it is the rain of one day.",
         )
 
 
-def _note_gaps(series: "pd.Series[float]", notes: Notes) -> None:
+def _note_gaps(series: "pd.Series[float]", what: str, notes: Notes) -> None:
     missing = series.isna().to_numpy()
     if not missing.any():
         return
     after = int(np.count_nonzero(missing[:-1] & ~missing[1:] & (series.to_numpy()[1:] > 0)))
     notes.warn(
         "rain_gaps",
-        f"The rain record lacks {int(missing.sum())} days; {after} readings right after a gap may be sums of several days.",
+        f"{what} lacks {int(missing.sum())} days; {after} readings right after a gap may be sums of several days.",
     )

@@ -59,6 +59,29 @@ def test_polygons_give_each_cell_the_value_over_its_centre(grid: Grid, tmp_path:
         np.testing.assert_array_equal(got.code, np.tile(expected, (20, 1)))
 
 
+@pytest.mark.parametrize("dtype", ["float32", "float64", "int16", "int32", "uint8", "uint16"])
+@pytest.mark.parametrize("nodata", [None, 9])
+def test_cells_beyond_a_raster_are_unknown_whatever_its_numbers(
+    grid: Grid, tmp_path: Path, dtype: str, nodata: int | None
+) -> None:
+    path = tmp_path / "map.tif"
+    with rasterio.open(
+        path,
+        "w",
+        driver="GTiff",
+        count=1,
+        height=2,
+        width=2,
+        dtype=dtype,
+        nodata=nodata,
+        crs="EPSG:32636",
+        transform=Affine(100, 0, WEST, 0, -100, NORTH),
+    ) as file:
+        file.write(np.full((2, 2), 80, dtype=dtype), 1)
+    got = inputs.read_raster_on_grid(path, grid, setting="cover.curve_number")
+    np.testing.assert_array_equal(got, np.tile(np.where(np.arange(30) < 20, 80.0, np.nan), (20, 1)))
+
+
 def test_a_raster_of_another_cell_size_and_crs_is_read_by_its_nearest_cell(grid: Grid, tmp_path: Path) -> None:
     path = tmp_path / "cover.tif"
     values = np.array([[1, 2, 2], [1, 2, 7]], dtype=np.uint8)
