@@ -13,7 +13,7 @@ from siting.layers import LAYERS, RASTERS, Classes, Column, Layer, RasterDefinit
 DOCS = Path(__file__).parent
 
 LEFT_EMPTY = {
-    "plots": ("rank_low", "rank_high", "set_order", "set_yield_median_m3"),
+    "plots": ("rank_low", "rank_high"),
     "villages": (
         *("rank", "rank_low", "rank_high", "plots_in_reach", "plots_shared", "supported_dry_m2"),
         *("supported_dry_m2_per_person", "best_plot_id", "runoff_lost_dry_pct", "runoff_lost_median_pct"),
