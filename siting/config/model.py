@@ -192,6 +192,8 @@ class Ranking(_Section):
 
     order: Literal["score", "supply"]
     dependable: Share
+    draws: Annotated[int, Field(ge=0, le=10_000)]
+    seed: Annotated[int, Field(ge=0)]
     set_area_m2: Above0 | None = None
     set_plots: Annotated[int, Field(ge=1)] | None = None
     weight_water: AtLeast0

@@ -8,6 +8,7 @@ import pandas as pd
 
 from siting.config import Project
 from siting.layers.codes import SOIL_GROUPS
+from siting.pipeline.doubt import RankDoubt
 from siting.pipeline.floods import Floods
 from siting.pipeline.order import UNRANKED, Order
 from siting.pipeline.read import Place
@@ -46,6 +47,7 @@ def plots_frame(
     place: Place,
     curve_number: FloatArray,
     order: Order,
+    doubt: RankDoubt | None,
     together: Together | None,
     project: Project,
 ) -> pd.DataFrame:
@@ -80,6 +82,8 @@ def plots_frame(
         "given_name": [place.given_names[label - 1] if label else None for label in plots.given_label],
         "rank": _or_null(order.rank, order.rank > UNRANKED),
         "supply_rank": _or_null(order.supply_rank, order.supply_rank > UNRANKED),
+        "rank_low": _rank_of_draws(None if doubt is None else doubt.ranks.rank_low, plots.count),
+        "rank_high": _rank_of_draws(None if doubt is None else doubt.ranks.rank_high, plots.count),
         "score": order.score,
         **{f"score_{name}": values for name, values in order.components.items()},
         **_set_columns(together, plots.count),
@@ -89,6 +93,11 @@ def plots_frame(
     frame = pd.DataFrame(columns)
     frame["cautions"] = _cautions(frame, sites, weather, ground, place, project)
     return frame.assign(x=x, y=y, open_bits=own.open_sides)
+
+
+def _rank_of_draws(rank: FloatArray | None, count: int) -> "pd.Series[Any]":
+    known = np.zeros(count) if rank is None else np.nan_to_num(rank)
+    return _or_null(known.astype(np.int64), known > 0)
 
 
 def _set_columns(together: Together | None, count: int) -> dict[str, Any]:

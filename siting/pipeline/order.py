@@ -31,6 +31,7 @@ class Order:
     rank: Integers
     score: FloatArray
     components: dict[str, FloatArray]
+    follows_score: bool
 
 
 def order_plots(
@@ -47,7 +48,7 @@ def order_plots(
     """Rank the plots whose water is known, by supply and, as the settings say, by score."""
     count = sites.plots.count
     unknown = np.full(count, np.nan)
-    nothing = Order(np.zeros(count, np.int64), np.zeros(count, np.int64), unknown, dict.fromkeys(COMPONENTS, unknown))
+    nothing = Order(np.zeros(count, np.int64), np.zeros(count, np.int64), unknown, dict.fromkeys(COMPONENTS, unknown), False)
     if water is None or water.crop is None or floods is None or weather is None:
         return nothing
     by_supply, known = _supply_rank(water.crop, floods, sites, project.settings.ranking.dependable)
@@ -64,7 +65,7 @@ def order_plots(
     total[judged] = found.score
     follows_score = project.settings.ranking.order == "score" and "water" in found.used
     components = {name: getattr(parts, name) if name in found.used else unknown for name in COMPONENTS}
-    return Order(by_supply, by_score if follows_score else by_supply, total, components)
+    return Order(by_supply, by_score if follows_score else by_supply, total, components, follows_score)
 
 
 def _supply_rank(crop: CropResults, floods: Floods, sites: Sites, share: float) -> tuple[Integers, npt.NDArray[np.bool_]]:

@@ -28,15 +28,19 @@ from siting.terrain import Terrain
 WITH_LOSSES, GROSS = 0, 1
 """Places of the effective areas: with the loss on the way in use, and without any."""
 
+DRAWN_LOSSES = (0.1, 0.2, 0.3, 0.5, 0.8)
+"""Losses between which the draws of the doubt lie, 1/km: areas are summed once, and no draw routes again."""
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Sites:
-    """The plots of a run, their cells, and their catchments at the loss in use."""
+    """The plots of a run, their cells, and their catchments, whose effective areas are summed at each `loss_per_km`."""
 
     plots: PlotLabels
     cells: PlotCells
     catchments: Catchments
     channel_in_plot: npt.NDArray[np.bool_]
+    loss_per_km: npt.NDArray[np.float64]
 
     @property
     def plot_id(self) -> npt.NDArray[np.int64]:
@@ -62,6 +66,7 @@ def find_sites(place: Place, ground: Terrain, classes: RunoffClasses, project: P
     )
     _tell(plots, place, notes)
     cells = plot_cells(plots.label, plots.count)
+    losses = (settings.runoff.conveyance_loss_per_km, 0.0, *DRAWN_LOSSES)
     catchments = trace_catchments(
         cells,
         label=plots.label,
@@ -74,12 +79,12 @@ def find_sites(place: Place, ground: Terrain, classes: RunoffClasses, project: P
         inside=place.inside,
         class_of_cell=classes.class_of_cell,
         classes=classes.count,
-        loss_per_km=(settings.runoff.conveyance_loss_per_km, 0.0),
+        loss_per_km=losses,
         cell_area_m2=grid.cell_area_m2,
         **size,
     )
-    channel_cells = np.bincount(cells.plot, weights=ground.channel.ravel()[cells.cell], minlength=plots.count)
-    return Sites(plots, cells, catchments, channel_cells > 0)
+    in_plot = np.bincount(cells.plot, weights=ground.channel.ravel()[cells.cell], minlength=plots.count)
+    return Sites(plots, cells, catchments, in_plot > 0, np.array(losses))
 
 
 def _cell_size(ground: Terrain) -> dict[str, Any]:

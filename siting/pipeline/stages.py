@@ -13,6 +13,7 @@ from siting.parallel import usable_threads
 from siting.pipeline import frames, shapes, write
 from siting.pipeline.clock import Clock
 from siting.pipeline.crop import choose_crop
+from siting.pipeline.doubt import doubt_ranks
 from siting.pipeline.floods import plot_floods
 from siting.pipeline.forecast import refuse_what_does_not_fit
 from siting.pipeline.order import order_plots
@@ -57,11 +58,12 @@ def run(project: Project, *, out: Path, overwrite: bool, threads: int | None, pr
                 floods = plot_floods(sites, classes, number, weather, project, notes)
         with clock.stage("ranking"):
             order = order_plots(sites, own, soil, water, floods, weather, ground, project, notes)
+            doubt = doubt_ranks(sites, own, soil, classes, water, floods, weather, order, project, workers, notes)
             together = choose_together(sites, water, order, project)
             frame = frames.plots_frame(
-                sites, own, soil, water, floods, weather, ground, place, number, order, together, project
+                sites, own, soil, water, floods, weather, ground, place, number, order, doubt, together, project
             )
-        summary = summarise(frame, sites, place, notes, str(out))
+        summary = summarise(frame, sites, place, doubt, notes, str(out))
         with clock.stage("layers"):
             tables = _tables(frame, sites, ground, place, water)
             tables |= write.notes_tables(notes, write.run_info(project, place, sites, weather, together))

@@ -12,6 +12,7 @@ from siting.config import Project
 from siting.demand import (
     CropRecord,
     FieldRules,
+    Seasons,
     SeasonTable,
     SeasonYields,
     complete_seasons,
@@ -56,6 +57,13 @@ class Weather:
     years: Years
     record: CropRecord | None
     rain_trend: bool
+
+    @property
+    def fixed_seasons(self) -> Seasons:
+        """Seasons of the seasonal method: within a sowing window it counts from the first day."""
+        assert self.record is not None  # there is a crop
+        seasons = self.record.seasons
+        return replace(seasons, end=seasons.sowing + sum(self.record.crop.stage_days))
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -182,16 +190,23 @@ def _known_area(sites: Sites, classes: RunoffClasses, notes: Notes) -> FloatArra
     if classes.count == 0:
         notes.warn("no_curve_number", "Neither cover nor curve numbers are given: how much runs off is unknown.")
         return np.full((sites.plots.count, 1), np.nan)
-    area = catchments.effective_area_m2[WITH_LOSSES].copy()
-    unclassed = catchments.unclassed_m2 > MOST_UNCLASSED_SHARE * catchments.area_m2
+    unclassed = _unclassed(sites)
     if unclassed.any():
         notes.warn(
             "curve_number_unknown",
             f"For {int(unclassed.sum())} of {unclassed.size} plots more than {100 * MOST_UNCLASSED_SHARE:.0f} % of the "
             "catchment has no curve number: their run-on is unknown; extend the maps of soil and cover.",
         )
-    area[unclassed] = np.nan
-    return np.asarray(area)
+    return np.asarray(known_areas(sites, catchments.effective_area_m2)[WITH_LOSSES])
+
+
+def _unclassed(sites: Sites) -> npt.NDArray[np.bool_]:
+    return np.asarray(sites.catchments.unclassed_m2 > MOST_UNCLASSED_SHARE * sites.catchments.area_m2)
+
+
+def known_areas(sites: Sites, effective_area_m2: FloatArray) -> FloatArray:
+    """Return areas by loss, plot and class, unknown (NaN) for plots of whose catchment too much has no class."""
+    return np.where(_unclassed(sites)[:, None], np.nan, effective_area_m2)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -238,13 +253,11 @@ class _Simulation:
 
     def _seasonal(self, record: CropRecord, volume: FloatArray, part: slice) -> SeasonTable:
         crop = record.crop
-        # within a window the seasonal method counts from its first day
-        seasons = replace(record.seasons, end=record.seasons.sowing + sum(crop.stage_days))
         return seasonal_supply(
             runon_m3=volume,
             rain_mm=record.rain_mm,
             et0_mm=record.et0_mm,
-            seasons=seasons,
+            seasons=self.weather.fixed_seasons,
             stage_days=crop.stage_days,
             kc=crop.kc,
             plot_area_m2=self.sites.plots.area_m2[part],

@@ -7,6 +7,7 @@ from siting.ranking.ledger import LostShares, Reaches, lost_downstream, lost_sha
 from siting.ranking.ratio import SufficientRatio, catchment_ratio, sufficient_ratio
 from siting.ranking.reliability import Reliability, reliability, wilson_interval
 from siting.ranking.score import COMPONENTS, Components, Score, score, score_components, score_order
+from siting.ranking.score_doubt import ScoreBasis, score_doubt
 from siting.ranking.supply import mean_capped_ratio, supply_order
 from siting.ranking.supply_model import Inputs, PlotInputs, SupplyModel, supply_model
 from siting.ranking.supported_area import SupportedArea, supported_area
@@ -26,6 +27,7 @@ __all__ = [
     "Reaches",
     "Reliability",
     "Score",
+    "ScoreBasis",
     "SetWater",
     "Spread",
     "SufficientRatio",
@@ -49,6 +51,7 @@ __all__ = [
     "return_period_years",
     "score",
     "score_components",
+    "score_doubt",
     "score_order",
     "set_water",
     "sufficient_ratio",

@@ -151,7 +151,7 @@ def rank_doubt(
     """
     check_loss(model.plots, *spread.loss_per_km)
     rank = partial(_ranks_of_draw, model, spread)
-    return _collected(rank, _seeds(draws, seed), confidence, usable_threads(threads))
+    return collected(rank, seeds_of(draws, seed), confidence, usable_threads(threads))
 
 
 def _ranks_of_draw(model: SupplyModel, spread: Spread, seed: np.random.SeedSequence) -> tuple[Ranks, Ranks, Ranks]:
@@ -229,7 +229,7 @@ def weight_doubt(
         msg = f"a factor of {factor:g} on the weights: it must be at least 1; 2 halves and doubles them"
         raise ConfigError(msg)
     rank = partial(_ranks_of_weights, components, weights, factor)
-    return _collected(rank, _seeds(draws, seed), confidence, usable_threads(threads))
+    return collected(rank, seeds_of(draws, seed), confidence, usable_threads(threads))
 
 
 def _ranks_of_weights(
@@ -245,14 +245,15 @@ def _ranks_of_weights(
     return best, worst, best
 
 
-def _seeds(draws: int, seed: int) -> list[np.random.SeedSequence]:
+def seeds_of(draws: int, seed: int) -> list[np.random.SeedSequence]:
+    """Give every draw a seed of its own, so that threads change nothing."""
     if draws < 1 or seed < 0:
         msg = f"{draws} draws from seed {seed}: give at least 1 draw and a seed of at least 0"
         raise ConfigError(msg)
     return np.random.SeedSequence(seed).spawn(draws)
 
 
-def _collected(rank: Any, seeds: list[np.random.SeedSequence], confidence: float, threads: int) -> Doubt:
+def collected(rank: Any, seeds: list[np.random.SeedSequence], confidence: float, threads: int) -> Doubt:
     """Rank in every draw, and leave out the ends."""
     if not 0 < confidence < 1:
         msg = f"confidence {confidence:g} is outside 0 to 1; give a share, so 90 % is 0.9"

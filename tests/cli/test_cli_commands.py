@@ -24,6 +24,8 @@ SUMMARY = {
         {
             "plot_id": number,
             "rank": number,
+            "rank_low": number,
+            "rank_high": number + 9,
             "supply_rank": number,
             "area_m2": 12_300.0,
             "x": 694_321.4,
@@ -183,7 +185,8 @@ def test_the_screen_of_a_run_shows_plots_reasons_assumptions_and_cautions(capsys
     assert "7 plots, the best 5" in out
     rows = [line.split() for line in out.splitlines() if "694321" in line]
     assert [row[0] for row in rows] == ["1", "2", "3", "4", "5"]
-    assert rows[0][4:] == ["1.23", "0.9", "841", "5200", "0.6123", "8.2", "-", "open_catchment"]
+    assert rows[0][1:4] == ["1", "to", "10"]
+    assert rows[0][7:] == ["1.23", "0.9", "841", "5200", "0.6123", "8.2", "-", "open_catchment"]
     assert "99.9 %  too steep (999000)" in out
     assert "< 0.1 %  pan (1)" in out
     assert "no data" not in out

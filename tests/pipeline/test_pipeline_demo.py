@@ -48,6 +48,16 @@ def test_ranks_follow_the_score_and_supply_ranks_the_supply_ratio(demo: Demo) ->
     assert sorted(plots["supply_rank"]) == sorted(plots["plot_id"]) == list(range(1, len(plots) + 1))
 
 
+def test_the_interval_of_a_rank_holds_it_and_is_narrow_only_where_plots_differ(demo: Demo) -> None:
+    plots = read(demo[0], "plots")
+    inside = (plots["rank_low"] <= plots["rank"]) & (plots["rank"] <= plots["rank_high"])
+    assert inside.mean() > 0.95
+    width = plots["rank_high"] - plots["rank_low"]
+    assert width.iloc[:10].median() < width.median()
+    assert plots["rank_low"].min() == 1
+    assert plots["rank_high"].max() == len(plots)
+
+
 def test_the_score_is_the_weighted_geometric_mean_of_its_components(demo: Demo) -> None:
     plots = read(demo[0], "plots")
     weights = {"water": 0.40, "gain": 0.15, "soil": 0.10, "ease": 0.10, "safety": 0.15, "certainty": 0.10}

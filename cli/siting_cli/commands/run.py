@@ -97,6 +97,7 @@ def _plot_row(row: Mapping[str, Any]) -> dict[str, object]:
     in_degrees = abs(row["x"]) <= 360 and abs(row["y"]) <= 90
     return {
         "rank": row["rank"],
+        "likely": _interval(row["rank_low"], row["rank_high"]),
         "plot": row["plot_id"],
         "x": _coordinate(row["x"], in_degrees),
         "y": _coordinate(row["y"], in_degrees),
@@ -109,6 +110,11 @@ def _plot_row(row: Mapping[str, Any]) -> dict[str, object]:
         "on_rain_alone": _in_ten(row["rain_only_reliability_pct"]),
         "cautions": (row["cautions"] or "").replace(";", "; ") or None,
     }
+
+
+def _interval(low: int | None, high: int | None) -> str | None:
+    """Write the ranks that the doubt leaves."""
+    return None if low is None or high is None else f"{low} to {high}"
 
 
 def _coordinate(value: float, in_degrees: bool) -> str:

@@ -1,0 +1,162 @@
+"""How sure the ranks are: the same order under many draws of what is not known for sure."""
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from siting.config import Project
+from siting.notes import Notes
+from siting.pipeline.floods import Floods
+from siting.pipeline.order import Order
+from siting.pipeline.sites import Sites
+from siting.pipeline.soil import SoilOfPlots
+from siting.pipeline.surface import PlotGround
+from siting.pipeline.water import Water, Weather, known_areas
+from siting.ranking import (
+    COMPONENTS,
+    Components,
+    Doubt,
+    PlotInputs,
+    Spread,
+    SupplyModel,
+    Swaps,
+    neighbour_swaps,
+    rank_doubt,
+    reliability,
+    score_doubt,
+    supply_model,
+)
+from siting.ranking.score_doubt import ScoreBasis
+from siting.runoff import RunoffClasses
+
+FloatArray = npt.NDArray[np.float64]
+
+TOLD_PAIRS = 5
+"""Neighbours, from the best, of which is told what would swap them."""
+
+SPREAD = Spread()
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class RankDoubt:
+    """Interval of each rank, share of draws in which a plot is among the best five, and what swaps the best neighbours."""
+
+    ranks: Doubt
+    swaps: Swaps
+
+
+def doubt_ranks(
+    sites: Sites,
+    own: PlotGround,
+    soil: SoilOfPlots,
+    classes: RunoffClasses,
+    water: Water | None,
+    floods: Floods | None,
+    weather: Weather | None,
+    order: Order,
+    project: Project,
+    threads: int,
+    notes: Notes,
+) -> RankDoubt | None:
+    """Draw what is in doubt, rank by the order in use each time, and keep the middle 90 % of the ranks."""
+    draws, seed = project.settings.ranking.draws, project.settings.ranking.seed
+    if draws == 0 or water is None or water.crop is None or floods is None or weather is None:
+        return None
+    if classes.count == 0 or weather.record is None or not weather.record.demand_known or not (order.rank > 0).any():
+        return None
+    model = _model(sites, own, soil, classes, floods, weather, project)
+    _note(notes)
+    if order.follows_score:
+        basis = _basis(water, order, project)
+        ranks = score_doubt(model, SPREAD, basis, draws=draws, seed=seed, threads=threads)
+    else:
+        ranks = rank_doubt(model, SPREAD, draws=draws, seed=seed, threads=threads)
+    return RankDoubt(ranks, neighbour_swaps(model, SPREAD, pairs=TOLD_PAIRS, threads=threads))
+
+
+def _model(
+    sites: Sites,
+    own: PlotGround,
+    soil: SoilOfPlots,
+    classes: RunoffClasses,
+    floods: Floods,
+    weather: Weather,
+    project: Project,
+) -> SupplyModel:
+    """Make the seasonal method ready to be run again with other inputs."""
+    settings, record = project.settings, weather.record
+    assert record is not None  # the caller has asked
+    losses, at = np.unique(sites.loss_per_km, return_index=True)
+    plots = PlotInputs(
+        effective_area_m2=known_areas(sites, sites.catchments.effective_area_m2)[at],
+        loss_per_km=losses,
+        bed_area_m2=settings.terrain.channel_width_m * sites.catchments.bed_length_m,
+        plot_area_m2=sites.plots.area_m2,
+        available_water_mm=soil.available_water_mm,
+        ponding_mm=soil.soil.ponding_mm,
+        infiltration_mm=soil.soil.infiltration_mm_h * settings.plots.event_hours,
+        soil_class=own.texture,
+        open_catchment=own.open_sides != 0,
+        peak_flow_10y_m3s=floods.peak_10y_m3s,
+        plot_id=sites.plot_id,
+    )
+    return supply_model(
+        plots=plots,
+        classes=classes,
+        cover_of_class=np.arange(classes.count),
+        rain_mm=record.rain_mm,
+        et0_mm=record.et0_mm,
+        seasons=weather.fixed_seasons,
+        stage_days=record.crop.stage_days,
+        kc=record.crop.kc,
+        abstraction_ratio=settings.runoff.abstraction_ratio,
+        loss_per_km=settings.runoff.conveyance_loss_per_km,
+        channel_wetting_mm=settings.runoff.channel_wetting_mm,
+        efficiency=settings.plots.efficiency,
+        dependable_share=settings.ranking.dependable,
+    )
+
+
+def _basis(water: Water, order: Order, project: Project) -> ScoreBasis:
+    assert water.crop is not None  # the caller has asked
+    settings = project.settings
+    share = reliability(water.crop.yields.relative_yield, target_yield=settings.crop.target_yield).share
+    used = {name: getattr(settings.ranking, f"weight_{name}") for name in COMPONENTS}
+    return ScoreBasis(
+        Components(**order.components),
+        used,
+        np.where(order.rank > 0, share, np.nan),
+        water.crop.yields.relative_yield.mean(axis=1),
+        water.crop.rain_alone.relative_yield.mean(axis=1),
+        settings.crop.target_yield,
+    )
+
+
+def _note(notes: Notes) -> None:
+    """List how far each input is taken to be off."""
+    source, effect = "assumption: errors drawn as nature shares them, see docs/methods", "rank_low and rank_high"
+    for name, value, unit in (
+        ("doubt.curve_number", f"{SPREAD.region_cn_sd:g} for all, {SPREAD.cover_cn_sd:g} by class", "sd"),
+        ("doubt.conveyance_loss_per_km", "{:g} to {:g}".format(*SPREAD.loss_per_km), "1/km"),
+        ("doubt.channel_wetting", "x {:g} to {:g}".format(*SPREAD.wetting_factor), ""),
+        ("doubt.crop_demand", "x {:g} to {:g}, for Kc and for ET0".format(*SPREAD.kc_factor), ""),
+        ("doubt.available_water", "x {:g} to {:g} by soil".format(*SPREAD.available_water_factor), ""),
+        ("doubt.infiltration", "x {:g} to {:g} by soil".format(*SPREAD.infiltration_factor), ""),
+    ):
+        notes.assume(name, value, unit, source, effect)
+
+
+def told_swaps(swaps: Swaps) -> list[dict[str, object]]:
+    """Return what would swap the best neighbours, one mapping for each pair."""
+    return [
+        {
+            "upper_plot_id": int(swaps.upper_id[pair]),
+            "lower_plot_id": int(swaps.lower_id[pair]),
+            "input": str(swaps.input[pair]) or None,
+            "change": None if np.isnan(swaps.change[pair]) else float(swaps.change[pair]),
+            "unit": str(swaps.unit[pair]),
+            "change_sd": None if np.isnan(swaps.change_sd[pair]) else float(swaps.change_sd[pair]),
+        }
+        for pair in range(swaps.upper_id.size)
+    ]
