@@ -204,16 +204,21 @@ def test_a_plot_that_is_not_chosen_lets_all_pass() -> None:
 
 def test_no_plot_misses_more_than_came_to_it() -> None:
     # 50 m3 taken above; the bed would have drunk all but 10 before the second plot, so 10 are missing there and 5 below
-    forest = ranking.PlotForest(np.array([1, 2, -1]), np.array([1.0, 0.5, np.nan]))
-    runon, room = np.array([[50.0], [10.0], [100.0]]), np.full((3, 1), 60.0)
-    water = ranking.set_water(forest, np.array([True, True, False]), runon_m3=runon, room_m3=room)
-    np.testing.assert_allclose(water.left_m3[:, 0], [50.0, 0.0, 95.0])
+    forest = ranking.PlotForest(np.array([1, 2, -1, -1]), np.array([1.0, 0.5, np.nan, np.nan]))
+    runon, room = np.array([[50.0], [10.0], [100.0], [100.0]]), np.full((4, 1), 100.0)
+    water = ranking.set_water(forest, np.array([True, True, False, False]), runon_m3=runon, room_m3=room)
+    np.testing.assert_allclose(water.left_m3[:, 0], [50.0, 0.0, 95.0, 100.0])
     got = ranking.choose_set(
-        forest, runon_m3=runon, room_m3=room, worth=np.ones(3), rank=np.array([1, 2, 3]), plot_area_m2=np.ones(3)
+        forest,
+        runon_m3=runon,
+        room_m3=room,
+        worth=np.array([1.0, 0.9, 0.9, 0.8]),
+        rank=np.array([1, 2, 3, 4]),
+        plot_area_m2=np.ones(4),
     )
-    # the second adds nothing behind the first, which ties with it and has the better rank
-    assert got.order.tolist() == [1, 0, 2]
-    np.testing.assert_allclose(got.left_m3[:, 0], [50.0, 0.0, 95.0])
+    # the second adds nothing behind the first; the third keeps 95 %, 0.855, and comes before the last
+    assert got.order.tolist() == [1, 0, 2, 3]
+    np.testing.assert_allclose(got.left_m3[:, 0], [50.0, 0.0, 95.0, 100.0])
 
 
 def test_area_and_number_limit_the_set_and_a_smaller_plot_may_still_fit() -> None:
@@ -237,13 +242,14 @@ def test_area_and_number_limit_the_set_and_a_smaller_plot_may_still_fit() -> Non
 
 
 def test_plots_that_add_the_same_come_by_rank() -> None:
-    forest = ranking.PlotForest(np.full(4, -1), np.full(4, np.nan))
-    # sevenths and thirds do not add up alike in binary: the tie must hold all the same
-    runon = np.array([[1 / 3, 2 / 3, 1 / 7], [3.0, 6.0, 7.0], [0.1, 0.2, 0.3], [1.0, 1.0, 1.0]])
+    # all take all of their water, but their sums of shares differ in the last digits: the tie must hold all the same
+    draw = np.random.default_rng(5)
+    runon, rank = draw.gamma(1.0, 100.0, (60, 7)), draw.permutation(60) + 1
+    forest = ranking.PlotForest(np.full(60, -1), np.full(60, np.nan))
     got = ranking.choose_set(
-        forest, runon_m3=runon, room_m3=runon, worth=np.full(4, 0.7), rank=np.array([3, 1, 4, 2]), plot_area_m2=np.ones(4)
+        forest, runon_m3=runon, room_m3=runon, worth=np.full(60, 0.7), rank=rank, plot_area_m2=draw.uniform(1e3, 1e4, 60)
     )
-    assert got.order.tolist() == [3, 1, 4, 2]
+    assert got.order.tolist() == rank.tolist()
 
 
 def test_unknown_water_keeps_a_plot_out_and_lets_what_is_missing_pass() -> None:
@@ -326,14 +332,22 @@ def test_a_village_that_gets_nothing_loses_nothing_and_one_unknown_is_promised_n
     assert guarded(0.9, [np.nan]).order.tolist() == [0, 0]
 
 
-def test_a_plot_refused_for_a_village_leaves_no_trace_below() -> None:
-    given = pair(room=100.0)
-    years = {name: np.repeat(given[name], 4, axis=1) for name in ("runon_m3", "room_m3")}
+def test_a_plot_refused_for_a_village_leaves_no_trace() -> None:
+    # 3 drains to 0, 0 to 1; 0 is refused first. Were it still thought to take its water when 3 has been chosen, 1 would be
+    # worth 0.5 x 20 / 90, less than 2, which lies elsewhere
     guard = ranking.Guard(np.full((1, 4), 100.0), ranking.Reaches(np.array([0]), np.array([0]), np.array([1.0])), 0.5)
-    got = ranking.choose_set(**(given | years), guard=guard)
-    assert got.order.tolist() == [0, 1]
-    np.testing.assert_allclose(got.left_m3[1], 100.0)
-    np.testing.assert_allclose(got.taken_m3[1], 90.0)
+    got = ranking.choose_set(
+        ranking.PlotForest(np.array([1, -1, -1, 0]), np.array([0.8, np.nan, np.nan, 0.1])),
+        runon_m3=np.full((4, 4), 100.0),
+        room_m3=np.array([[100.0], [90.0], [90.0], [10.0]]) * np.ones(4),
+        worth=np.array([0.9, 0.5, 0.4, 0.8]),
+        rank=np.array([1, 3, 4, 2]),
+        plot_area_m2=np.ones(4),
+        guard=guard,
+    )
+    assert got.order.tolist() == [0, 2, 3, 1]
+    np.testing.assert_allclose(got.left_m3[:, 0], [99.0, 99.2, 100.0, 100.0])
+    np.testing.assert_allclose(got.taken_m3[:, 0], [0.0, 90.0, 90.0, 10.0])
 
 
 def test_without_plots_the_set_is_empty() -> None:
