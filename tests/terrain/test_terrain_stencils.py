@@ -8,6 +8,7 @@ import pytest
 from made_ground import Heights, kinds_of_ground
 
 from siting.terrain import landscape_position, profile_curvature
+from siting.terrain._kernels.sorting import ascending
 
 KINDS = kinds_of_ground(150)
 
@@ -62,3 +63,11 @@ def test_positions_equal_the_rules_on_arrays() -> None:
     expected = np.select([rule for rule, _ in rules], [code for _, code in rules], default=3)
     assert set(np.unique(expected)) == {0, 1, 2, 3, 4, 5, 255}
     np.testing.assert_array_equal(landscape_position(**measured, vertical_error_m=1.0), expected)
+
+
+@pytest.mark.parametrize("size", [0, 1, 5, 3000])
+def test_sorted_heights_ascend_and_equals_stay_in_order(size: int) -> None:
+    rng = np.random.default_rng(size)
+    heights = rng.choice(np.array([-1e30, -7.5, -1e-30, 0.0, 1e-40, 3.0, 8848.0, np.inf], dtype=np.float32), size)
+    heights[: size // 2] = rng.normal(0.0, 500.0, size // 2)
+    np.testing.assert_array_equal(ascending(heights), np.argsort(heights, kind="stable"))

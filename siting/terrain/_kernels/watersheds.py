@@ -7,10 +7,14 @@ and maxima of heights alone, so neither blocks nor threads can change a bit of t
 
 import numpy as np
 
-from siting.terrain._kernels.jit import kernel
+from siting.terrain._kernels.jit import at, kernel
+from siting.terrain._kernels.sorting import ascending
 
 OCEAN = 0
 """The label of voids, of ends of flow and of all that descends to them."""
+
+SEEN = 4096
+"""Size of the table of pairs seen last, a power of two."""
 
 
 @kernel
@@ -38,7 +42,7 @@ def flood_levels(first, second, height, has_name, name_of, forest_first, forest_
     last = np.arange(nodes)
     level = np.full(nodes, -np.inf, np.float32)
     kept = 0
-    for place in np.argsort(height, kind="mergesort"):
+    for place in ascending(height):
         one = _root(parent, first[place])
         two = _root(parent, second[place])
         if one == two:
@@ -84,71 +88,92 @@ def _copy_block(z, sinks, row0, row1, col0, col1, heights, ends):
 
 @kernel
 def _lowest_neighbours(heights, ends, pointer):
-    """Point each cell at its lowest neighbour, at an equal one only if that comes earlier; ends at themselves."""
+    """
+    Point each cell at its lowest neighbour, at an equal one only if that comes earlier, else at itself.
+
+    Ends and cells beside a void point at the corner of the ring, which stands for the ocean. Selects in the order of
+    rows, so that the loop vectorises.
+    """
     rows, cols = heights.shape
     for row in range(1, rows - 1):
+        north, middle, south = heights[row - 1], heights[row], heights[row + 1]
+        end, out = ends[row], pointer[row]
         for col in range(1, cols - 1):
-            here = row * cols + col
-            best, target = heights[row, col], here
-            for step_row in range(-1, 2):
-                for step_col in range(-1, 2):
-                    there = here + step_row * cols + step_col
-                    height = heights[row + step_row, col + step_col]
-                    if height < best or (height == best and there < target):
-                        best, target = height, there
-            pointer[here] = here if ends[row, col] else target
+            best, step = north[col - 1], -cols - 1
+            best, step = (north[col], -cols) if north[col] < best else (best, step)
+            best, step = (north[col + 1], -cols + 1) if north[col + 1] < best else (best, step)
+            best, step = (middle[col - 1], -1) if middle[col - 1] < best else (best, step)
+            best, step = (middle[col], 0) if middle[col] < best else (best, step)
+            best, step = (middle[col + 1], 1) if middle[col + 1] < best else (best, step)
+            best, step = (south[col - 1], cols - 1) if south[col - 1] < best else (best, step)
+            best, step = (south[col], cols) if south[col] < best else (best, step)
+            best, step = (south[col + 1], cols + 1) if south[col + 1] < best else (best, step)
+            ocean = end[col] | (best == -np.inf)
+            out[col] = 0 if ocean else row * cols + col + step
 
 
 @kernel
-def _label(heights, ends, pointer, label, stack):
-    """Label watersheds from 1, the ocean (voids, ends, what descends to them) 0; return the count with it."""
-    rows, cols = heights.shape
-    size = rows * cols
-    flat_heights, flat_ends, flat = heights.reshape(size), ends.reshape(size), label.reshape(size)
-    flat[:] = -1
+def _label(heights, pointer, label):
+    """
+    Label watersheds from 1, the ocean (voids, ends, what descends to them) 0, cells out of it -1; return the count.
+
+    All three are flat. A walk goes down to a cell whose label is known; then all cells on the way get it.
+    """
+    label[:] = -1
     count = 1
-    for row in range(1, rows - 1):
-        for col in range(1, cols - 1):
-            node, depth = row * cols + col, 0
-            if not np.isfinite(flat_heights[node]):
-                continue
-            while flat[node] < 0:
-                stack[depth] = node
-                depth += 1
-                below = pointer[node]
-                if flat_ends[node] or flat_heights[below] == -np.inf:
-                    flat[node] = OCEAN
-                elif below == node:
-                    flat[node] = count
-                    count += 1
-                else:
-                    node = below
-            for place in range(depth):
-                flat[stack[place]] = flat[node]
+    for first in range(label.size):
+        if not np.isfinite(heights[first]) or label[first] >= 0:
+            continue
+        place = first
+        below = np.int64(at(pointer, place))
+        while at(label, place) < 0 and below != 0 and below != place:
+            place = below
+            below = np.int64(at(pointer, place))
+        found = np.int64(at(label, place))
+        if found < 0 and below == 0:
+            found = OCEAN
+        elif found < 0:
+            found = count
+            count += 1
+        last, place = place, first
+        while place != last:
+            label[np.uint64(place)] = found
+            place = np.int64(at(pointer, place))
+        label[np.uint64(last)] = found
     return count
+
+
+@kernel
+def _mark_differing(label, row, differs):
+    """Mark the columns of a row whose neighbour E, SW, S or SE bears another label."""
+    middle, south = label[row], label[row + 1]
+    for col in range(1, label.shape[1] - 1):
+        one = middle[col]
+        other = (middle[col + 1] != one) | (south[col - 1] != one) | (south[col] != one) | (south[col + 1] != one)
+        differs[col] = other & (one >= 0)
 
 
 @kernel
 def _passes(heights, label, first, second, height):
     """List the passes between watersheds; a table of the last pairs seen drops most repeats."""
     rows, cols = heights.shape
-    size = 4096
-    seen = np.full(size, -1, np.int64)
+    seen = np.full(SEEN, -1, np.int32)
+    differs = np.zeros(cols, np.bool_)
     count = 0
     for row in range(1, rows - 1):
+        _mark_differing(label, row, differs)
         for col in range(1, cols - 1):
-            one = label[row, col]
-            if one < 0:
+            if not differs[col]:
                 continue
+            one = label[row, col]
             for turn in range(4):  # E, SW, S, SE: each pair once
-                step_row = 0 if turn == 0 else 1
-                step_col = 1 if turn == 0 else turn - 2
-                two = label[row + step_row, col + step_col]
+                to_row, to_col = row + (turn > 0), col + (1 if turn == 0 else turn - 2)
+                two = label[to_row, to_col]
                 if two < 0 or two == one:
                     continue
                 low, high = min(one, two), max(one, two)
-                top = max(heights[row, col], heights[row + step_row, col + step_col])
-                slot = (low * 7919 + high) % size
+                top = max(heights[row, col], heights[to_row, to_col])
+                slot = (low * 7919 + high) & (SEEN - 1)
                 old = seen[slot]
                 if old >= 0 and first[old] == low and second[old] == high:
                     height[old] = min(height[old], top)
@@ -189,11 +214,11 @@ def fill_block(z, sinks, row0, row1, col0, col1, filled, name):
     rows, cols = row1 - row0 + 2, col1 - col0 + 2
     heights = np.empty((rows, cols), np.float32)
     ends = np.empty((rows, cols), np.bool_)
-    pointer = np.zeros(rows * cols, np.int64)
+    pointer = np.empty((rows, cols), np.int32)
     label = np.empty((rows, cols), np.int32)
     _copy_block(z, sinks, row0, row1, col0, col1, heights, ends)
     _lowest_neighbours(heights, ends, pointer)
-    count = _label(heights, ends, pointer, label, np.empty(rows * cols, np.int64))
+    count = _label(heights.reshape(rows * cols), pointer.reshape(rows * cols), label.reshape(rows * cols))
     first = np.empty(4 * rows * cols, np.int32)
     second = np.empty(4 * rows * cols, np.int32)
     height = np.empty(4 * rows * cols, np.float32)
