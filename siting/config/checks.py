@@ -32,6 +32,7 @@ NEEDS = (
     ("place.setback_m", ("place.exclude",)),
     ("villages.people", ("villages.file",)),
     ("villages.walk_km", ("villages.file",)),
+    ("villages.most_lost_pct", ("villages.file",)),
     ("villages.name", ("villages.file",)),
     ("crop.planting", ("crop.name", "crop.kc")),
     ("crop.planting_until", ("crop.planting",)),

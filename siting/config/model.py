@@ -211,6 +211,7 @@ class Villages(_Section):
     name: Text
     people: Text | None = None
     walk_km: Above0
+    most_lost_pct: Annotated[float, Field(ge=0, le=100)] | None = None
 
 
 class Output(_Section):

@@ -157,6 +157,47 @@ def read_pan_layer(path: Path, grid: Grid) -> npt.NDArray[np.int8]:
     return burn(shapes, grid, fill=0).astype(np.int8)
 
 
+def cells_of_shapes(shapes: list[Any], grid: Grid) -> tuple[npt.NDArray[np.int64], npt.NDArray[np.int64]]:
+    """
+    Return the flat cells in or under each shape, and the number of the shape (from 0) that each belongs to.
+
+    An area has the cells whose centre it covers; one too small for any, a point or a line has the cell in its middle.
+    Shapes off the grid, empty or missing have none.
+    """
+    cells: list[npt.NDArray[np.int64]] = [np.zeros(0, dtype=np.int64)]
+    numbers: list[npt.NDArray[np.int64]] = [np.zeros(0, dtype=np.int64)]
+    for number, shape in enumerate(shapes):
+        found = np.zeros(0, dtype=np.int64)
+        if shape is None or shape.is_empty:
+            continue
+        if shape.area > 0:
+            found = _covered(shape, grid)
+        if found.size == 0:
+            middle = shape.representative_point()
+            row, col = grid.cell(middle.x, middle.y)
+            if 0 <= row < grid.rows and 0 <= col < grid.cols:
+                found = np.array([row * grid.cols + col], dtype=np.int64)
+        cells.append(found)
+        numbers.append(np.full(found.size, number, dtype=np.int64))
+    return np.concatenate(cells), np.concatenate(numbers)
+
+
+def _covered(shape: Any, grid: Grid) -> npt.NDArray[np.int64]:
+    """Return the flat cells whose centre an area covers, looking no farther than its own extent."""
+    a, _, c, _, e, f = grid.affine
+    west, south, east, north = shape.bounds
+    (top, left), (low, right) = grid.cell(west, north), grid.cell(east, south)
+    top, left, low, right = max(top, 0), max(left, 0), min(low, grid.rows - 1), min(right, grid.cols - 1)
+    if top > low or left > right:
+        return np.zeros(0, dtype=np.int64)
+    window = (low - top + 1, right - left + 1)
+    inside = rasterize(
+        [(shape, 1)], out_shape=window, transform=Affine(a, 0, c + left * a, 0, e, f + top * e), dtype="uint8"
+    )
+    row, col = np.nonzero(inside)
+    return ((row + top) * grid.cols + col + left).astype(np.int64)
+
+
 def read_villages(path: Path, grid: Grid, *, name: str, people: str | None) -> gpd.GeoDataFrame:
     """
     Read villages: any vector file, or a CSV with the columns lon and lat in degrees. All their columns are kept as they are.

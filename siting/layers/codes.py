@@ -134,6 +134,16 @@ ORIGINS = Classes(
     (Class("found", "found", "", "found by the search"), Class("given", "given", "", "drawn by the user")),
 )
 
+BELOW_KINDS = Classes(
+    "below",
+    (
+        Class("plot", "plot", "", "the next plot below"),
+        Class("village", "village", "", "the first channel within 500 m below a village"),
+        Class("property_exit", "exit of the property", "", "where the water leaves the boundary given"),
+        Class("pan", "pan", "", "a closed depression in which flow ends"),
+    ),
+)
+
 FAILURES = Classes(
     "failure",
     (

@@ -1,6 +1,7 @@
 """Every vector layer and table of the GeoPackage, in order."""
 
 from siting.layers.codes import (
+    BELOW_KINDS,
     CHANNEL_SIZES,
     FAILURES,
     OPEN_CATCHMENT,
@@ -176,6 +177,20 @@ SEASONS = Layer(
     ),
 )
 
+DOWNSTREAM = Layer(
+    "downstream",
+    "none",
+    "What is lost below",
+    "share of the water that no longer reaches each place below, by plot alone and by the whole set",
+    (
+        Column("plot_id", "", "int64", "Plot", "plot that takes the water, alone; NULL: all plots of the set together"),
+        Column("below", "", "text", "Below", "what lies below", BELOW_KINDS),
+        Column("below_id", "", "int64", "Number below", "plot_id, village_id or pan_id; NULL for an exit of the property"),
+        Column("lost_dry_pct", "%", "float64", "Lost, dry year", "share that no longer arrives in the dependable year"),
+        Column("lost_median_pct", "%", "float64", "Lost, median year", "share that no longer arrives in the median year"),
+    ),
+)
+
 ASSUMPTIONS = Layer(
     "assumptions",
     "none",
@@ -198,7 +213,7 @@ RUN_INFO = Layer(
     (Column("key", "", "text", "Key", "what is said"), Column("value", "", "text", "Value", "what it is")),
 )
 
-LAYERS = (PLOTS, CATCHMENTS, INTAKES, OVERFLOW_PATHS, CHANNELS, PANS, VILLAGES, SEASONS, ASSUMPTIONS, RUN_INFO)
+LAYERS = (PLOTS, CATCHMENTS, INTAKES, OVERFLOW_PATHS, CHANNELS, PANS, VILLAGES, SEASONS, DOWNSTREAM, ASSUMPTIONS, RUN_INFO)
 """All layers and tables in the order of the file; `villages` is written only when villages were given."""
 
 

@@ -89,7 +89,7 @@ def _model(
     assert record is not None  # the caller has asked
     losses, at = np.unique(sites.loss_per_km, return_index=True)
     plots = PlotInputs(
-        effective_area_m2=known_areas(sites, sites.catchments.effective_area_m2)[at],
+        effective_area_m2=known_areas(sites.catchments)[at],
         loss_per_km=losses,
         bed_area_m2=settings.terrain.channel_width_m * sites.catchments.bed_length_m,
         plot_area_m2=sites.plots.area_m2,

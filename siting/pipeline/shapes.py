@@ -16,8 +16,6 @@ from siting.terrain import Terrain, channel_lines
 from siting.terrain.downstream import step_lengths
 from siting.terrain.edges import SIDES
 
-VILLAGES_NOT_RANKED = "villages are carried over but not ranked by this version"
-
 
 def plots_layer(frame: pd.DataFrame, sites: Sites, ground: Terrain) -> gpd.GeoDataFrame:
     """Outline the plots along their cells; best rank first."""
@@ -102,12 +100,3 @@ def pans_layer(ground: Terrain) -> gpd.GeoDataFrame:
     }
     shapes = [outlines[int(number)] for number in pans.pan_id]
     return gpd.GeoDataFrame(columns, geometry=shapes, crs=ground.grid.crs)
-
-
-def villages_layer(place: Place) -> gpd.GeoDataFrame | None:
-    """Carry the villages over with all their columns; none is ranked yet, and each says so."""
-    if place.villages is None:
-        return None
-    own = {column.name for column in layer("villages").columns}
-    found = place.villages.rename(columns={name: f"given_{name}" for name in place.villages.columns if name in own})
-    return found.assign(village_id=np.arange(1, len(found) + 1), status="unknown", reason=VILLAGES_NOT_RANKED)

@@ -67,9 +67,23 @@ def find_sites(place: Place, ground: Terrain, classes: RunoffClasses, project: P
     _tell(plots, place, notes)
     cells = plot_cells(plots.label, plots.count)
     losses = (settings.runoff.conveyance_loss_per_km, 0.0, *DRAWN_LOSSES)
-    catchments = trace_catchments(
+    catchments = trace(cells, plots.label, place, ground, classes, losses)
+    in_plot = np.bincount(cells.plot, weights=ground.channel.ravel()[cells.cell], minlength=plots.count)
+    return Sites(plots, cells, catchments, in_plot > 0, np.array(losses))
+
+
+def trace(
+    cells: PlotCells,
+    label: npt.NDArray[np.int32],
+    place: Place,
+    ground: Terrain,
+    classes: RunoffClasses,
+    loss_per_km: tuple[float, ...],
+) -> Catchments:
+    """Trace what drains onto plots, or onto places that are reckoned as plots of one cell."""
+    return trace_catchments(
         cells,
-        label=plots.label,
+        label=label,
         direction=ground.direction,
         contributing_area_m2=ground.contributing_area_m2,
         elevation=ground.filled,
@@ -79,12 +93,10 @@ def find_sites(place: Place, ground: Terrain, classes: RunoffClasses, project: P
         inside=place.inside,
         class_of_cell=classes.class_of_cell,
         classes=classes.count,
-        loss_per_km=losses,
-        cell_area_m2=grid.cell_area_m2,
-        **size,
+        loss_per_km=loss_per_km,
+        cell_area_m2=ground.grid.cell_area_m2,
+        **_cell_size(ground),
     )
-    in_plot = np.bincount(cells.plot, weights=ground.channel.ravel()[cells.cell], minlength=plots.count)
-    return Sites(plots, cells, catchments, in_plot > 0, np.array(losses))
 
 
 def _cell_size(ground: Terrain) -> dict[str, Any]:

@@ -14,6 +14,7 @@ from siting.pipeline import frames, shapes, write
 from siting.pipeline.clock import Clock
 from siting.pipeline.crop import choose_crop
 from siting.pipeline.doubt import doubt_ranks
+from siting.pipeline.downstream import ledger, places_below, village_channels
 from siting.pipeline.floods import plot_floods
 from siting.pipeline.forecast import refuse_what_does_not_fit
 from siting.pipeline.order import order_plots
@@ -23,6 +24,7 @@ from siting.pipeline.sites import Sites, find_sites
 from siting.pipeline.soil import soil_of_plots
 from siting.pipeline.surface import plot_ground
 from siting.pipeline.together import choose_together
+from siting.pipeline.villages import village_cells, villages_layer
 from siting.pipeline.water import Water, plot_water, weather_of
 from siting.progress import Progress
 from siting.runoff import RunoffClasses, classify
@@ -59,13 +61,25 @@ def run(project: Project, *, out: Path, overwrite: bool, threads: int | None, pr
         with clock.stage("ranking"):
             order = order_plots(sites, own, soil, water, floods, weather, ground, project, notes)
             doubt = doubt_ranks(sites, own, soil, classes, water, floods, weather, order, project, workers, notes)
-            together = choose_together(sites, water, order, project)
+        with clock.stage("together"):
+            cells = village_cells(place, ground)
+            below = None
+            if weather is not None and water is not None:
+                channels = village_channels(cells.cell, cells.village, cells.count, ground)
+                below = places_below(sites, place, channels, ground, classes, weather, project)
+            together = choose_together(sites, water, order, below, project)
+            lost = None
+            if together is not None and below is not None and water is not None:
+                lost = ledger(below, together.forest, together.chosen, water, sites, cells.count, project)
+            chosen = None if together is None else together.chosen
+            villages = villages_layer(place, cells, sites, ground, water, order, chosen, lost, project, workers, notes)
             frame = frames.plots_frame(
                 sites, own, soil, water, floods, weather, ground, place, number, order, doubt, together, project
             )
         summary = summarise(frame, sites, place, doubt, notes, str(out))
         with clock.stage("layers"):
             tables = _tables(frame, sites, ground, place, water)
+            tables |= {"villages": villages, "downstream": None if lost is None else lost.table}
             tables |= write.notes_tables(notes, write.run_info(project, place, sites, weather, together))
             write.write_layers(folder, tables, ground.grid.crs, ground)
         if project.settings.output.rasters:
@@ -142,7 +156,6 @@ def _tables(frame: pd.DataFrame, sites: Sites, ground: Terrain, place: Place, wa
         "overflow_paths": shapes.overflow_layer(sites, ground, place),
         "channels": shapes.channels_layer(ground),
         "pans": shapes.pans_layer(ground),
-        "villages": shapes.villages_layer(place),
     }
     if water is not None and water.crop is not None:
         tables["seasons"] = frames.seasons_frame(sites, water.crop)

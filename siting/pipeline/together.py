@@ -6,10 +6,11 @@ import numpy as np
 import numpy.typing as npt
 
 from siting.config import Project
+from siting.pipeline.downstream import VILLAGE, Below
 from siting.pipeline.order import Order
 from siting.pipeline.sites import Sites
 from siting.pipeline.water import Water
-from siting.ranking import ChosenSet, PlotForest, choose_set, dependable
+from siting.ranking import ChosenSet, Guard, PlotForest, Reaches, choose_set, dependable
 
 FloatArray = npt.NDArray[np.float64]
 
@@ -23,9 +24,11 @@ class Together:
     set_yield_median_m3: FloatArray
 
 
-def choose_together(sites: Sites, water: Water | None, order: Order, project: Project) -> Together | None:
+def choose_together(
+    sites: Sites, water: Water | None, order: Order, below: Below | None, project: Project
+) -> Together | None:
     """Choose the set by the score of its plots and the water that those above leave; None without a score."""
-    if water is None or np.isnan(order.score).all():
+    if water is None or below is None or np.isnan(order.score).all():
         return None
     settings, catchments = project.settings, sites.catchments
     loss_per_m = settings.runoff.conveyance_loss_per_km / 1000.0
@@ -40,8 +43,21 @@ def choose_together(sites: Sites, water: Water | None, order: Order, project: Pr
         plot_area_m2=sites.plots.area_m2,
         most_area_m2=settings.ranking.set_area_m2,
         most_plots=settings.ranking.set_plots,
+        guard=_guard(below, settings.villages.most_lost_pct),
     )
     return Together(forest, chosen, dependable(chosen.left_m3, probability=0.5))
+
+
+def _guard(below: Below, most_lost_pct: float | None) -> Guard | None:
+    """Let no village lose more than the community has said."""
+    if most_lost_pct is None:
+        return None
+    villages = below.of(VILLAGE)
+    number = np.full(len(below.kind), -1, dtype=np.int64)
+    number[villages] = np.arange(villages.size)
+    theirs = number[below.reaches.place] >= 0
+    reaches = Reaches(below.reaches.plot[theirs], number[below.reaches.place[theirs]], below.reaches.passing[theirs])
+    return Guard(below.came_m3[villages], reaches, most_lost_pct / 100.0)
 
 
 def told_set(together: Together, sites: Sites) -> str:

@@ -27,6 +27,7 @@ from siting.pipeline.crop import CropChoice
 from siting.pipeline.read import Place
 from siting.pipeline.sites import WITH_LOSSES, Sites
 from siting.pipeline.soil import SoilOfPlots
+from siting.plots import Catchments
 from siting.ranking import SufficientRatio, SupportedArea, dependable, sufficient_ratio, supported_area
 from siting.runoff import Rain, RunoffClasses, Years, class_runoff_mm, delivered_m3, hydrological_years, yearly_totals
 
@@ -190,23 +191,36 @@ def _known_area(sites: Sites, classes: RunoffClasses, notes: Notes) -> FloatArra
     if classes.count == 0:
         notes.warn("no_curve_number", "Neither cover nor curve numbers are given: how much runs off is unknown.")
         return np.full((sites.plots.count, 1), np.nan)
-    unclassed = _unclassed(sites)
+    unclassed = _unclassed(catchments)
     if unclassed.any():
         notes.warn(
             "curve_number_unknown",
             f"For {int(unclassed.sum())} of {unclassed.size} plots more than {100 * MOST_UNCLASSED_SHARE:.0f} % of the "
             "catchment has no curve number: their run-on is unknown; extend the maps of soil and cover.",
         )
-    return np.asarray(known_areas(sites, catchments.effective_area_m2)[WITH_LOSSES])
+    return np.asarray(known_areas(catchments)[WITH_LOSSES])
 
 
-def _unclassed(sites: Sites) -> npt.NDArray[np.bool_]:
-    return np.asarray(sites.catchments.unclassed_m2 > MOST_UNCLASSED_SHARE * sites.catchments.area_m2)
+def _unclassed(catchments: Catchments) -> npt.NDArray[np.bool_]:
+    return np.asarray(catchments.unclassed_m2 > MOST_UNCLASSED_SHARE * catchments.area_m2)
 
 
-def known_areas(sites: Sites, effective_area_m2: FloatArray) -> FloatArray:
+def known_areas(catchments: Catchments) -> FloatArray:
     """Return areas by loss, plot and class, unknown (NaN) for plots of whose catchment too much has no class."""
-    return np.where(_unclassed(sites)[:, None], np.nan, effective_area_m2)
+    return np.where(_unclassed(catchments)[:, None], np.nan, catchments.effective_area_m2)
+
+
+def yearly_volumes(catchments: Catchments, classes: RunoffClasses, weather: Weather, project: Project) -> FloatArray:
+    """Return the run-on of each catchment by complete year, m3, under the abstraction ratio in use; NaN unknown."""
+    settings = project.settings
+    ratio = settings.runoff.abstraction_ratio
+    volume = delivered_m3(
+        known_areas(catchments)[WITH_LOSSES],
+        settings.terrain.channel_width_m * catchments.bed_length_m,
+        class_runoff_mm(weather.rain.as_dry_mm, classes, abstraction_ratio=ratio),
+        channel_wetting_mm=settings.runoff.channel_wetting_mm,
+    )
+    return yearly_totals(volume, weather.rain.days, weather.years)
 
 
 @dataclass(frozen=True, slots=True, eq=False)

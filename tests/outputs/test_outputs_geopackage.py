@@ -117,6 +117,7 @@ PROMISED = {
         "standing_water_days",
         "failure",
     ],
+    "downstream": ["plot_id", "below", "below_id", "lost_dry_pct", "lost_median_pct"],
     "assumptions": ["id", "value", "unit", "source", "effect"],
     "run_info": ["key", "value"],
 }

@@ -1,0 +1,181 @@
+"""Villages: which plots people can walk to, and what the set would support for each person."""
+
+from dataclasses import dataclass
+
+import geopandas as gpd
+import numpy as np
+import numpy.typing as npt
+import pandas as pd
+
+from siting.config import Project
+from siting.inputs import cells_of_shapes
+from siting.layers import layer
+from siting.notes import Notes
+from siting.pipeline.downstream import Ledger
+from siting.pipeline.order import Order
+from siting.pipeline.read import Place
+from siting.pipeline.sites import Sites
+from siting.pipeline.water import Water
+from siting.ranking import ChosenSet, VillageRanks, dependable, rank_villages
+from siting.terrain import Terrain
+from siting.terrain.walking import WALKING_CELL_M, walks
+
+FloatArray = npt.NDArray[np.float64]
+Integers = npt.NDArray[np.int64]
+
+MUCH_LOST_PCT = 20.0
+"""A village that would lose more of its water is named in a warning (our assumption)."""
+
+NOT_RANKED = "no plot could be ranked: rain, crop or cover is missing"
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class VillageCells:
+    """Cells (flat) with heights in or under each village, and the village each belongs to, from 0."""
+
+    cell: Integers
+    village: Integers
+    count: int
+
+    @property
+    def located(self) -> npt.NDArray[np.bool_]:
+        """Tell which villages lie on the data at all."""
+        return np.bincount(self.village, minlength=self.count) > 0
+
+
+def village_cells(place: Place, ground: Terrain) -> VillageCells:
+    """Find the cells of each village; none for one that lies off the data."""
+    count = 0 if place.villages is None else len(place.villages)
+    none = np.zeros(0, dtype=np.int64)
+    if place.villages is None:
+        return VillageCells(none, none, 0)
+    cell, village = cells_of_shapes(list(place.villages.geometry), ground.grid)
+    known = ground.direction.ravel()[cell] != 255
+    return VillageCells(cell[known], village[known], count)
+
+
+def villages_layer(
+    place: Place,
+    cells: VillageCells,
+    sites: Sites,
+    ground: Terrain,
+    water: Water | None,
+    order: Order,
+    chosen: ChosenSet | None,
+    lost: Ledger | None,
+    project: Project,
+    threads: int,
+    notes: Notes,
+) -> gpd.GeoDataFrame | None:
+    """Rank the villages by the area that the set supports for each person; their own columns stand first."""
+    if place.villages is None:
+        return None
+    own = {column.name for column in layer("villages").columns}
+    found = place.villages.rename(columns={name: f"given_{name}" for name in place.villages.columns if name in own})
+    found = found.assign(village_id=np.arange(1, cells.count + 1))
+    if water is None or water.crop is None or chosen is None or lost is None:
+        return found.assign(status="unknown", reason=NOT_RANKED)
+    _warn_of_losses(place.villages, lost, project, notes)
+    people = _people(place.villages, project, notes)
+    ranks = _ranks(cells, sites, ground, water, order, chosen, people, project, threads, notes)
+    per_person = ranks.supported_dry_m2_per_person if project.settings.villages.people else np.full(cells.count, np.nan)
+    return found.assign(
+        rank=_whole(ranks.rank),
+        rank_low=ranks.rank_low,
+        rank_high=ranks.rank_high,
+        plots_in_reach=_whole(ranks.plots_in_reach),
+        plots_shared=_whole(ranks.plots_shared),
+        supported_dry_m2=ranks.supported_dry_m2,
+        supported_dry_m2_per_person=per_person,
+        best_plot_id=_whole(np.where(ranks.best_plot < 0, np.nan, ranks.best_plot + 1.0)),
+        runoff_lost_dry_pct=lost.village_dry_pct,
+        runoff_lost_median_pct=lost.village_median_pct,
+        status=list(ranks.status),
+        reason=[reason or None for reason in ranks.reason],
+    )
+
+
+def _warn_of_losses(villages: gpd.GeoDataFrame, lost: Ledger, project: Project, notes: Notes) -> None:
+    """Name the villages from which the set would take much of what they have in a dry year."""
+    most = lost.village_dry_pct
+    hit = np.flatnonzero(np.nan_to_num(most) > MUCH_LOST_PCT)
+    if hit.size:
+        names = villages[project.settings.villages.name].astype(str).to_numpy()
+        told = ", ".join(
+            f"{names[village]} ({most[village]:.0f} %)" for village in hit[np.argsort(-most[hit], kind="stable")]
+        )
+        notes.warn(
+            "village_loses",
+            f"The set would take more than {MUCH_LOST_PCT:g} % of the dry year's water in the nearest channel from: {told}. "
+            "Ask first; villages.most_lost_pct sets a limit.",
+        )
+
+
+def _whole(values: FloatArray) -> "pd.Series[int]":
+    known = ~np.isnan(values)
+    numbers = pd.Series(np.where(known, values, 0).astype(np.int64), dtype="Int64")
+    return numbers.where(pd.Series(known))
+
+
+def _people(villages: gpd.GeoDataFrame, project: Project, notes: Notes) -> FloatArray:
+    """Return the number of people by village, NaN unknown; one each where no column is named, so that area alone ranks."""
+    column = project.settings.villages.people
+    if column is None:
+        notes.warn("no_people", "No column of people is named: villages are ranked by their area in all, not per person.")
+        return np.ones(len(villages))
+    return np.asarray(pd.to_numeric(villages[column], errors="coerce"), dtype=np.float64)
+
+
+def _ranks(
+    cells: VillageCells,
+    sites: Sites,
+    ground: Terrain,
+    water: Water,
+    order: Order,
+    chosen: ChosenSet,
+    people: FloatArray,
+    project: Project,
+    threads: int,
+    notes: Notes,
+) -> VillageRanks:
+    walk_km = project.settings.villages.walk_km
+    found = walks(
+        ground.elevation,
+        start_cell=cells.cell,
+        start=cells.village,
+        starts=cells.count,
+        goal_cell=sites.cells.cell,
+        goal=sites.cells.plot,
+        reach_m=1000.0 * walk_km,
+        cell_width_m=ground.grid.cell_width_m,
+        cell_height_m=ground.grid.cell_height_m,
+        threads=threads,
+    )
+    source = f"Tobler (1993), there and back, over cells of {WALKING_CELL_M:g} m or more"
+    notes.assume("villages.walking", f"{walk_km:g} km of level ground", "", source, "which plots a village reaches")
+    supported = _supported_dry_m2(sites, water, chosen, project)
+    source = "assumption: its area x the supply ratio (at most 1) x the share of its water that the set leaves, dry year"
+    notes.assume("villages.supported_area", "of each plot of the set", "m2", source, "the order of villages")
+    return rank_villages(
+        village=found.start,
+        plot=found.goal,
+        distance_m=found.distance_m,
+        reach_cut=found.reach_cut,
+        located=cells.located,
+        people=people,
+        in_set=chosen.order > 0,
+        supported_dry_m2=supported,
+        plot_area_m2=sites.plots.area_m2,
+        plot_rank=np.where(order.rank > 0, order.rank, order.rank.size + 1),
+    )
+
+
+def _supported_dry_m2(sites: Sites, water: Water, chosen: ChosenSet, project: Project) -> FloatArray:
+    """Return the area that each plot supports in the dependable year on the water that the set leaves it; NaN unknown."""
+    assert water.crop is not None  # the caller has asked
+    share = project.settings.ranking.dependable
+    ratio = np.minimum(dependable(water.crop.seasons.supply_ratio, probability=share), 1.0)
+    alone = dependable(np.minimum(water.yearly_m3, water.room_m3), probability=share)
+    taken = dependable(chosen.taken_m3, probability=share)
+    left = np.divide(taken, alone, out=np.zeros_like(alone), where=alone > 0)
+    return np.where(np.isnan(ratio) | np.isnan(alone), np.nan, sites.plots.area_m2 * ratio * left)
