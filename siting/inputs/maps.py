@@ -155,7 +155,8 @@ def read_meanings(path: Path, *, needed: tuple[str, ...], setting: str) -> dict[
     try:
         table = pd.read_csv(path, dtype=str, keep_default_na=False, encoding="utf-8-sig", skipinitialspace=True)
     except (OSError, UnicodeDecodeError, ValueError) as error:
-        msg = f"{setting} {path.name} cannot be read as a table; give a CSV with the columns map_value, {', '.join(needed)}"
+        columns = ", ".join(("map_value", *needed))
+        msg = f"{setting} {path.name} cannot be read as a table; give a CSV with the columns {columns}"
         raise InputError(msg) from error
     missing = [name for name in ("map_value", *needed) if name not in table.columns]
     if missing:

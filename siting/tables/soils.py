@@ -10,6 +10,9 @@ from siting.tables._rows import Row, nearest, number, rows
 TEXTURES = tuple(row["texture_class"] for row in rows("soils"))
 """Texture classes in the order of their codes."""
 
+MOST_CLAY_PCT = 60.0
+"""Soils with more clay were left out of the fit of Saxton & Rawls (from memory)."""
+
 DRY_COUNTRY_ORGANIC_MATTER_PCT = 0.5
 """Organic matter of bare dryland soil, % (common practice); used where a class has no FAO-56 row."""
 
@@ -54,6 +57,12 @@ def soil_water(sand_pct: float, clay_pct: float, organic_matter_pct: float) -> S
     """
     Estimate soil water from sand, clay and organic matter, each in % by weight.
 
+    Raises
+    ------
+    ConfigError
+        Where the shares are impossible, organic matter is above 8 % or clay above 60 %, and where the equations give
+        no possible soil (almost pure sand without organic matter).
+
     References
     ----------
     Saxton & Rawls (2006), Soil Sci. Soc. Am. J. 70:1569, table 1.
@@ -61,6 +70,9 @@ def soil_water(sand_pct: float, clay_pct: float, organic_matter_pct: float) -> S
     _check_fractions(sand_pct, 100.0 - sand_pct - clay_pct, clay_pct)
     if not 0.0 <= organic_matter_pct <= 8.0:
         msg = f"organic matter is {organic_matter_pct} %; the equations hold from 0 to 8 %"
+        raise ConfigError(msg)
+    if clay_pct > MOST_CLAY_PCT:
+        msg = f"clay is {clay_pct} %; the equations of soil water hold to {MOST_CLAY_PCT:g} %"
         raise ConfigError(msg)
     sand, clay, om = sand_pct / 100.0, clay_pct / 100.0, organic_matter_pct
 
@@ -84,6 +96,10 @@ def soil_water(sand_pct: float, clay_pct: float, organic_matter_pct: float) -> S
     x = first("theta_sat_minus_33_first")
     above = x + (0.636 * x - 0.107)
     saturation = capacity + above - 0.097 * sand + 0.043
+    if not 0.0 < wilting < capacity < saturation:
+        msg = f"sand {sand_pct}, clay {clay_pct}, organic matter {organic_matter_pct} % give no possible soil water by the "
+        msg += "equations; give soil.field_capacity and soil.wilting_point"
+        raise ConfigError(msg)
     slope = (math.log(1500.0) - math.log(33.0)) / (math.log(capacity) - math.log(wilting))
     ksat = 1930.0 * (saturation - capacity) ** (3.0 - 1.0 / slope)
     return SoilWater(wilting, capacity, saturation, ksat, 2.65 * (1.0 - saturation))
@@ -167,6 +183,18 @@ def soil(texture: str) -> Soil:
     msg = f"texture {texture!r} is unknown; did you mean {nearest(wanted, list(TEXTURES))}? "
     msg += "`siting soils` lists all"
     raise ConfigError(msg)
+
+
+def nearest_printed_rew_mm(tew_mm: float) -> float:
+    """
+    Return the readily evaporable water of the texture of FAO-56 table 19 whose evaporable water is nearest, mm.
+
+    For soils without a printed value (assumption); at most `tew_mm`. NaN stays NaN.
+    """
+    if math.isnan(tew_mm):
+        return math.nan
+    printed = [(row.tew_mm, row.rew_mm) for row in soils() if row.tew_mm is not None and row.rew_mm is not None]
+    return min(tew_mm, min(printed, key=lambda pair: abs(pair[0] - tew_mm))[1])
 
 
 def soil_group(*, layer_depth_cm: float, water_table_cm: float, ksat_um_s: float) -> str:

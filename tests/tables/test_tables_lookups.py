@@ -1,5 +1,7 @@
 """Published values come back as printed, and unknown names are refused with a way out."""
 
+import math
+
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
@@ -200,3 +202,24 @@ def test_soil_groups_follow_conductivity_and_depth(layer: float, water: float, k
 def test_an_unknown_depth_gets_no_soil_group() -> None:
     with pytest.raises(ConfigError, match="must be a number"):
         tables.soil_group(layer_depth_cm=float("nan"), water_table_cm=100, ksat_um_s=1)
+
+
+@pytest.mark.parametrize(
+    ("sizes", "message"),
+    [
+        ((20.0, 65.0, 1.0), "clay is 65.0 %; the equations of soil water hold to 60 %"),
+        ((95.0, 0.0, 0.0), "sand 95.0, clay 0.0, organic matter 0.0 % give no possible soil water"),
+        ((40.0, 60.0, 8.0), "give no possible soil water"),
+    ],
+)
+def test_soils_beyond_the_equations_are_refused(sizes: tuple[float, float, float], message: str) -> None:
+    with pytest.raises(ConfigError, match=message):
+        tables.soil_water(*sizes)
+
+
+def test_readily_evaporable_water_is_that_of_the_nearest_printed_soil() -> None:
+    # FAO-56 (1998) Table 19: loamy sand REW 4-8 of TEW 9-14 mm, clay REW 8-12 of TEW 22-29 mm
+    assert tables.nearest_printed_rew_mm(11.0) == 6.0
+    assert tables.nearest_printed_rew_mm(40.0) == 10.0
+    assert tables.nearest_printed_rew_mm(2.0) == 2.0
+    assert math.isnan(tables.nearest_printed_rew_mm(math.nan))
