@@ -12,7 +12,16 @@ from siting.grid import Grid, Raster
 from siting.parallel import run_all
 from siting.terrain.area import accumulate, multiple_flow_area
 from siting.terrain.channels import channel_cells, height_above_channel_m, landscape_position
-from siting.terrain.condition import Conditioned, Directions, FloatArray, Heights, Mask, condition, row_bands
+from siting.terrain.condition import (
+    Conditioned,
+    Directions,
+    FloatArray,
+    Heights,
+    Mask,
+    condition,
+    end_in_pans,
+    row_bands,
+)
 from siting.terrain.downstream import highest_above
 from siting.terrain.edges import Sides, enclosed_voids, open_sides
 from siting.terrain.given import follow, inner_ends
@@ -180,7 +189,7 @@ def _drainage(
     else:
         conditioned = follow(elevation, flow_direction)
         plain = condition(elevation, sinks=None, threads=threads, **size)
-        pans = find_pans(plain, elevation, pan_layer=inner_ends(conditioned.direction), **pan_rule)
+        pans = find_pans(plain, elevation, pan_layer=inner_ends(conditioned.direction), threads=threads, **pan_rule)
         pans = replace(pans, status=tuple(DOUBTFUL if one == KEPT else one for one in pans.status))
     return np.ascontiguousarray(conditioned.filled), conditioned.direction, conditioned.flat_cells, pans
 
@@ -192,16 +201,22 @@ def _conditioned(
     pan_layer: npt.NDArray[np.int8] | None,
     threads: int,
 ) -> tuple[Conditioned, Pans]:
-    """Fill once to find the pans; where any is kept, fill again with their lowest cells as ends of flow."""
+    """Fill to find the pans; where any is kept, condition again with their lowest cells as ends of flow."""
     plain = condition(elevation, sinks=None, threads=threads, **size)
-    pans = find_pans(plain, elevation, pan_layer=pan_layer, **pan_rule)
+    pans = find_pans(plain, elevation, pan_layer=pan_layer, threads=threads, **pan_rule)
     kept = np.array([status != DOUBTFUL for status in pans.status], dtype=np.bool_)
     if not kept.any():
         return plain, pans
-    del plain
-    sinks = np.zeros(elevation.shape, dtype=np.bool_)
-    sinks.ravel()[pans.bottom_cell[kept]] = True
-    return condition(elevation, sinks=sinks, threads=threads, **size), pans
+    ended = end_in_pans(
+        plain,
+        elevation,
+        label=pans.label,
+        pan_id=pans.pan_id[kept],
+        bottom_cell=pans.bottom_cell[kept],
+        threads=threads,
+        **size,
+    )
+    return ended, pans
 
 
 def _positions(

@@ -7,6 +7,7 @@ import numpy as np
 import numpy.typing as npt
 
 from siting.parallel import run_all
+from siting.terrain._kernels.depressions import PLACE_MASK, drain_pans
 from siting.terrain._kernels.direction import steepest
 from siting.terrain._kernels.flats import cross_flats, direct_flats, start_flats
 from siting.terrain._kernels.watersheds import fill_block, flood_levels, raise_block, seam_passes
@@ -68,9 +69,61 @@ def condition(
     ends = np.zeros(heights.shape, dtype=np.bool_) if sinks is None else np.ascontiguousarray(sinks)
     side = min(max(1, block), LARGEST_BLOCK)
     padded = fill(heights, ends, threads=threads, block=side)
-    direction = np.empty(heights.shape, dtype=np.uint8)
-    bands = row_bands(heights.shape[0], 64)
-    inverse = inverse_distances(cell_width_m, cell_height_m)
+    return _directed(padded, ends, inverse_distances(cell_width_m, cell_height_m), side, threads)
+
+
+def end_in_pans(
+    plain: Conditioned,
+    elevation: Heights,
+    *,
+    label: npt.NDArray[np.int32],
+    pan_id: npt.NDArray[np.int64],
+    bottom_cell: npt.NDArray[np.int64],
+    cell_width_m: FloatArray,
+    cell_height_m: FloatArray,
+    threads: int,
+    block: int = 256,
+) -> Conditioned:
+    """
+    Condition again with the bottoms of some depressions as ends of flow: what `condition` gives for them as sinks.
+
+    Any way out of a depression passes a cell at least as high as its level, so the filled surface changes inside these
+    depressions only, and only there it is worked out anew.
+
+    Parameters
+    ----------
+    plain
+        What `condition` gives for `elevation` without sinks.
+    label
+        Number of the depression that each raised cell belongs to.
+    pan_id, bottom_cell
+        Numbers and lowest cells (flat indices) of the depressions in which flow is to end. A bottom may also be a cell
+        that was not raised.
+    """
+    rows, cols = elevation.shape
+    padded = np.full((rows + 2, cols + 2), np.nan, dtype=np.float32)
+    filled = np.array(plain.filled, order="C")
+    ends = np.zeros(elevation.shape, dtype=np.bool_)
+    ends.ravel()[bottom_cell] = True
+    if filled.size <= PLACE_MASK:
+        most = np.count_nonzero(label) + 1  # far too many for one pan, but memory never touched costs nothing
+
+        def drain(first: int, last: int) -> None:
+            heap = np.empty(most, dtype=np.int64)
+            some = slice(first, last)
+            drain_pans(elevation.ravel(), filled.ravel(), label.ravel(), pan_id[some], bottom_cell[some], cols, heap)
+
+        run_all(drain, row_bands(pan_id.size, 64), threads)
+        padded[1:-1, 1:-1] = filled
+    else:
+        padded = fill(elevation, ends, threads=threads, block=block)
+    return _directed(padded, ends, inverse_distances(cell_width_m, cell_height_m), block, threads)
+
+
+def _directed(padded: Heights, ends: Mask, inverse: npt.NDArray[np.float32], side: int, threads: int) -> Conditioned:
+    """Direct every cell of a filled surface."""
+    direction = np.empty(ends.shape, dtype=np.uint8)
+    bands = row_bands(ends.shape[0], 64)
     run_all(lambda r0, r1: steepest(padded, ends, inverse, direction, r0, r1), bands, threads)
     flat_cells = _across_flats(padded, direction, side, threads)
     return Conditioned(padded[1:-1, 1:-1], direction, flat_cells)

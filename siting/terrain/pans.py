@@ -6,7 +6,8 @@ import numpy as np
 import numpy.typing as npt
 
 from siting.errors import GridError
-from siting.terrain._kernels.depressions import label_patches, measure_patches
+from siting.parallel import run_all
+from siting.terrain._kernels.depressions import label_patches, measure_patches, renumber
 from siting.terrain.condition import Conditioned, FloatArray, Heights, Mask, row_bands
 
 Integers = npt.NDArray[np.int64]
@@ -56,6 +57,7 @@ def find_pans(
     vertical_error_m: float,
     pan_min_area_m2: float,
     pan_layer: npt.NDArray[np.int8] | None,
+    threads: int = 1,
 ) -> Pans:
     """
     Choose among the raised patches of a plain fill.
@@ -78,6 +80,8 @@ def find_pans(
         Standard deviation e of the local error of the heights, m.
     pan_min_area_m2, pan_layer
         As above; the layer is (rows, columns) or None.
+    threads
+        How to compute; cannot change the result.
 
     Raises
     ------
@@ -87,9 +91,9 @@ def find_pans(
     if pan_layer is not None and pan_layer.shape != elevation.shape:
         msg = f"pan_layer has shape {pan_layer.shape}, the heights {elevation.shape}: give both on one grid"
         raise GridError(msg)
-    raised = conditioned.filled > elevation
+    raised = conditioned.filled > elevation  # never at voids
     label = np.zeros(elevation.shape, dtype=np.int32)
-    count = label_patches(raised, label, np.empty(int(raised.sum()) + 8, dtype=np.int64))
+    count = label_patches(raised, label, np.empty(np.count_nonzero(raised) + 1, dtype=np.int64))
     if pan_layer is not None:
         count = _label_kept_ground((pan_layer > 0) & np.isfinite(elevation), label, count)
     area, volume, depth = (np.zeros(count + 1) for _ in range(3))
@@ -105,10 +109,9 @@ def find_pans(
             status[patch] = GIVEN
     status[0] = ""
     listed = np.flatnonzero(status != "")
-    number = np.zeros(count + 1, dtype=np.int32)
+    number = np.zeros(count + 1, dtype=np.int64)
     number[listed] = np.arange(1, listed.size + 1)
-    for first, last in row_bands(elevation.shape[0], 64):  # in place: one raster of labels, not two
-        label[first:last] = number[label[first:last]]
+    run_all(lambda row0, row1: renumber(label, number, row0, row1), row_bands(elevation.shape[0], 64), threads)
     return Pans(
         np.arange(1, listed.size + 1, dtype=np.int64),
         tuple(str(status[patch]) for patch in listed),
@@ -124,7 +127,7 @@ def find_pans(
 def _label_kept_ground(keep: Mask, label: npt.NDArray[np.int32], count: int) -> int:
     """Add to the labels each kept patch of ground that touches no depression; return how many labels there are."""
     ground = np.zeros(label.shape, dtype=np.int32)
-    patches = label_patches(keep, ground, np.empty(int(keep.sum()) + 8, dtype=np.int64))
+    patches = label_patches(keep, ground, np.empty(np.count_nonzero(keep) + 1, dtype=np.int64))
     new = np.ones(patches + 1, dtype=np.bool_)
     new[ground[label > 0]] = False
     new[0] = False

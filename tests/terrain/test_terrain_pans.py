@@ -1,14 +1,21 @@
 """Closed depressions: the tests that keep or doubt them, the user's word, and what ends there."""
 
+import sys
+from typing import Any
+
 import numpy as np
 import pytest
 from ground import bowl, box, terrain_of
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from made_ground import kinds_of_ground
 
 from siting.errors import ConfigError, GridError
 from siting.terrain import accumulate
-from siting.terrain.pans import DOUBTFUL, GIVEN, KEPT
+from siting.terrain.condition import condition, end_in_pans
+from siting.terrain.pans import DOUBTFUL, GIVEN, KEPT, find_pans
+
+KINDS = kinds_of_ground(211)
 
 
 def test_a_pan_has_the_area_depth_and_volume_of_its_box() -> None:
@@ -146,6 +153,41 @@ def test_pans_neither_make_nor_lose_water(seed: int, error_m: float) -> None:
     assert np.nansum(count[ends]) == np.isfinite(z).sum()
     assert np.all(got.filled[np.isfinite(z)] >= got.elevation[np.isfinite(z)])
     assert not np.any(got.height_above_channel_m < 0)
+
+
+@pytest.mark.parametrize("kind", KINDS)
+@pytest.mark.parametrize("most_cells", [2**32, 10], ids=["inside pans", "all anew"])
+def test_what_is_worked_out_inside_pans_equals_working_it_all_out(
+    kind: str, most_cells: int, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    # a raster of more cells than a heap can number is filled anew as a whole
+    z = KINDS[kind]
+    z[30:33, 100:104] = z[30:33, 100:104].mean()  # ground that is kept, though no depression
+    given_ground = np.zeros(z.shape, dtype=np.int8)
+    given_ground[30:33, 100:104] = 1
+    size: dict[str, Any] = {"cell_width_m": np.full(len(z), 10.0), "cell_height_m": np.full(len(z), 12.0), "threads": 2}
+    plain = condition(z, sinks=None, **size)
+    rule: dict[str, Any] = {"cell_area_m2": np.full(len(z), 120.0), "vertical_error_m": 0.5, "pan_min_area_m2": 500.0}
+    pans = find_pans(plain, z, pan_layer=given_ground, **rule)
+    ends = np.array(pans.status) != DOUBTFUL
+    assert ends.sum() > 10
+    sinks = np.zeros(z.shape, dtype=np.bool_)
+    sinks.flat[pans.bottom_cell[ends]] = True
+    whole = condition(z, sinks=sinks, **size)
+    monkeypatch.setattr(sys.modules[condition.__module__], "PLACE_MASK", most_cells)
+    for block in (37, 256):
+        got = end_in_pans(
+            plain,
+            z,
+            label=pans.label,
+            pan_id=pans.pan_id[ends],
+            bottom_cell=pans.bottom_cell[ends],
+            block=block,
+            **size,
+        )
+        np.testing.assert_array_equal(got.filled.copy().view(np.uint32), whole.filled.copy().view(np.uint32))
+        np.testing.assert_array_equal(got.direction, whole.direction)
+        assert got.flat_cells == whole.flat_cells
 
 
 def test_settings_out_of_range_are_refused_by_name() -> None:
