@@ -5,6 +5,7 @@ from typing import Any
 import click
 
 from siting_cli.commands.check import check
+from siting_cli.commands.compare import compare
 from siting_cli.commands.demo import demo
 from siting_cli.commands.new import new
 from siting_cli.commands.run import run
@@ -36,7 +37,7 @@ def group() -> None:
     """Find small low plots that could be cropped on run-on in dry country. Screening, not design."""
 
 
-for command in (demo, run, check, new, why, crops, covers, soils):
+for command in (demo, run, check, new, why, compare, crops, covers, soils):
     group.add_command(command)
 
 

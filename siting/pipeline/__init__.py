@@ -11,7 +11,7 @@ if TYPE_CHECKING:
     from siting.config import Project
     from siting.pipeline.results import Results
 
-__all__ = ["check", "run", "why"]
+__all__ = ["check", "compare", "run", "why"]
 
 
 def run(
@@ -95,3 +95,23 @@ def why(
     """
     judge: Callable[..., dict[str, Any]] = import_module("siting.pipeline.why").why
     return judge(project, x, y, lonlat=lonlat, threads=threads, progress=progress or Silent())
+
+
+def compare(before: Path, after: Path, *, threads: int | None = None, progress: Progress | None = None) -> dict[str, Any]:
+    """
+    Set two results folders side by side.
+
+    Returns
+    -------
+    dict
+        "inputs" (settings and files that differ), "plots" (pairs on the same ground with their ranks, those gone and
+        new, most moved first), "sum", "effects" (what each group of inputs, taken alone from the later run into the
+        earlier one, does) and "effects_unknown_because" (None, or why they could not be found).
+
+    Raises
+    ------
+    InputError
+        Where a folder holds no results of a run.
+    """
+    side_by_side: Callable[..., dict[str, Any]] = import_module("siting.pipeline.compare").compare
+    return side_by_side(before, after, threads=threads, progress=progress or Silent())
