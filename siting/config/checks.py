@@ -19,11 +19,19 @@ PAIRS_AT_ODDS = (
     ("soil.texture", "soil.map", "keep one of them"),
     ("cover.cover", "cover.map", "keep one of them"),
     ("soil.column", "soil.table", "a column goes with polygons, a table with a raster: keep one of them"),
+    ("soil.texture", "soil.sand_pct", "the texture follows from the sizes: keep one of them"),
+    ("soil.map", "soil.sand_pct", "a map has columns of its own: keep one of them"),
+    ("soil.depth_m", "soil.depth_map", "keep one of them"),
+    ("soil.depth_m", "soil.depth_column", "keep one of them"),
+    ("soil.depth_map", "soil.depth_column", "keep one of them"),
 )
 NEEDS = (
     ("soil.column", ("soil.map",)),
     ("soil.table", ("soil.map",)),
-    ("soil.map", ("soil.column", "soil.table")),
+    ("soil.depth_column", ("soil.map",)),
+    ("soil.sand_pct", ("soil.clay_pct",)),
+    ("soil.clay_pct", ("soil.sand_pct",)),
+    ("soil.organic_matter_pct", ("soil.sand_pct", "soil.map")),
     ("cover.table", ("cover.map",)),
     ("cover.column", ("cover.map",)),
     ("cover.map", ("cover.table",)),
@@ -37,6 +45,13 @@ NEEDS = (
     ("crop.planting", ("crop.name", "crop.kc")),
     ("crop.planting_until", ("crop.planting",)),
     ("crop.onset_mm", ("crop.planting_until",)),
+    ("runoff.growing_from", ("runoff.growing_until",)),
+    ("runoff.growing_until", ("runoff.growing_from",)),
+    ("rain.stations", ("rain.daily",)),
+    ("rain.map", ("rain.daily",)),
+    ("rain.generator", ("rain.daily",)),
+    ("rain.wet_day_mm", ("rain.generator",)),
+    ("rain.seed", ("rain.generator",)),
     ("rain.unit", ("rain.daily",)),
     ("rain.year_starts", ("rain.daily",)),
 )
@@ -67,7 +82,16 @@ def mistakes_across(settings: "Settings", given: Collection[str]) -> Iterator[st
     for key, needed in NEEDS:
         if key in given and not any(other in given for other in needed):
             yield f"{key} is given without {' or '.join(needed)}; give it too, or take {key} out"
+    yield from _sizes_and_seasons(settings)
     yield from _water_and_plots(settings)
+
+
+def _sizes_and_seasons(settings: "Settings") -> Iterator[str]:
+    sand, clay = settings.soil.sand_pct, settings.soil.clay_pct
+    if sand is not None and clay is not None and sand + clay > 100:
+        yield f"soil.sand_pct and soil.clay_pct sum to {sand + clay:g}; they must not exceed 100"
+    if settings.runoff.growing_from is not None and settings.runoff.antecedent != "rule":
+        yield 'runoff.growing_from changes nothing without runoff.antecedent = "rule"; say that too, or take it out'
 
 
 def _water_and_plots(settings: "Settings") -> Iterator[str]:

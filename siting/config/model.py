@@ -11,6 +11,7 @@ Text = Annotated[str, StringConstraints(min_length=1, strip_whitespace=True)]
 Above0 = Annotated[float, Field(gt=0)]
 AtLeast0 = Annotated[float, Field(ge=0)]
 Share = Annotated[float, Field(gt=0, lt=1)]
+Percent = Annotated[float, Field(ge=0, le=100)]
 CurveNumber = Annotated[float, Field(gt=0, le=100)]
 Days = Annotated[int, Field(ge=1, le=365)]
 StageDays = Annotated[tuple[Days, Days, Days, Days], Strict(False)]
@@ -81,11 +82,19 @@ class Soil(_Section):
     """Soil, uniform or by map."""
 
     texture: Text | None = None
+    sand_pct: Percent | None = None
+    clay_pct: Percent | None = None
+    organic_matter_pct: Annotated[float, Field(ge=0, le=8)] | None = None
     map: Path | None = None
     column: Text | None = None
     table: Path | None = None
     depth_m: Above0 | None = None
+    depth_column: Text | None = None
+    depth_map: Path | None = None
     soil_group: SoilGroup | None = None
+    ksat_mm_h: Above0 | None = None
+    restrictive_depth_m: AtLeast0 | None = None
+    water_table_m: AtLeast0 | None = None
     field_capacity: Share | None = None
     wilting_point: Share | None = None
     infiltration_mm_h: Above0 | None = None
@@ -109,6 +118,10 @@ class Runoff(_Section):
     """From rain to run-on."""
 
     abstraction_ratio: Annotated[float, AfterValidator(_ratio)]
+    antecedent: Literal["II", "rule"]
+    growing_from: Day | None = None
+    growing_until: Day | None = None
+    slope_adjusted: bool
     conveyance_loss_per_km: AtLeast0
     channel_wetting_mm: AtLeast0
     rain_distribution: Literal["I", "IA", "II", "III"]
@@ -118,6 +131,11 @@ class Rain(_Section):
     """The rain record."""
 
     daily: Path | None = None
+    stations: Path | None = None
+    map: Path | None = None
+    generator: bool
+    wet_day_mm: Annotated[float, Field(ge=3)]
+    seed: Annotated[int, Field(ge=0)]
     unit: Literal["mm", "inch"] | None = None
     year_starts: Annotated[int, Field(ge=1, le=12)] | None = None
     max_missing_share: Annotated[float, Field(ge=0, lt=1)]

@@ -86,12 +86,14 @@ def test_the_record_of_the_settings_holds_no_absolute_path(project_file: Path, t
         ("[plots]\nmax_slope = 3", "unknown setting plots.max_slope; did you mean plots.max_slope_pct?"),
         ("[terrain]\nponding_mm = 3", "unknown setting terrain.ponding_mm; did you mean plots.ponding_mm?"),
         ("[plot]\nponding_mm = 3", "unknown section [plot]; did you mean [plots]?"),
-        ("[rain]\nqqq = 3", "unknown setting rain.qqq; [rain] knows daily, unit, year_starts, max_missing_share"),
+        ("[rain]\nqqq = 3", "unknown setting rain.qqq; [rain] knows daily, stations, map, generator"),
     ],
 )
 def test_an_unknown_key_is_refused_with_the_nearest(project_file: Path, written: str, expected: str) -> None:
     project_file.write_text(project_file.read_text() + written + "\n")
-    assert complaints(project_file) == [expected]
+    got = complaints(project_file)
+    assert len(got) == 1
+    assert got[0].startswith(expected)
 
 
 def test_a_key_outside_any_section_is_sent_to_its_place(project_file: Path) -> None:
@@ -147,7 +149,22 @@ def test_a_day_of_sowing_must_be_a_day_of_every_year(project_file: Path, text: s
         (["plots.min_area_m2=20000"], "plots.min_area_m2 is 20000; it must be at most plots.target_area_m2, 10000"),
         (["plots.search=false"], "plots.search is false and plots.given is not set"),
         (["soil.texture=loam", "soil.map=dem.tif", "soil.column=t"], "soil.texture and soil.map are both given"),
-        (["soil.map=dem.tif"], "soil.map is given without soil.column or soil.table"),
+        (["soil.sand_pct=60"], "soil.sand_pct is given without soil.clay_pct"),
+        (["soil.sand_pct=60", "soil.clay_pct=50"], "soil.sand_pct and soil.clay_pct sum to 110; they must not exceed 100"),
+        (["soil.texture=loam", "soil.sand_pct=60", "soil.clay_pct=10"], "soil.texture and soil.sand_pct are both given"),
+        (["soil.organic_matter_pct=2"], "soil.organic_matter_pct is given without soil.sand_pct or soil.map"),
+        (["soil.depth_m=1", "soil.depth_map=dem.tif"], "soil.depth_m and soil.depth_map are both given"),
+        (["soil.depth_column=z"], "soil.depth_column is given without soil.map"),
+        (["rain.map=dem.tif"], "rain.map is given without rain.daily"),
+        (["rain.wet_day_mm=9"], "rain.wet_day_mm is given without rain.generator"),
+        (
+            ["runoff.growing_from=11-01", "runoff.antecedent=rule"],
+            "runoff.growing_from is given without runoff.growing_until",
+        ),
+        (
+            ["runoff.growing_from=11-01", "runoff.growing_until=04-30"],
+            "runoff.growing_from changes nothing without runoff.ant",
+        ),
         (["cover.map=dem.tif"], "cover.map is given without cover.table"),
         (["place.setback_m=10"], "place.setback_m is given without place.exclude"),
         (["rain.unit=inch"], "rain.unit is given without rain.daily"),
