@@ -28,7 +28,7 @@ from siting.terrain.given import follow, inner_ends
 from siting.terrain.pans import DOUBTFUL, KEPT, Pans, find_pans
 from siting.terrain.surface import BAND_ROWS, profile_curvature, slope, wetness_index
 
-STAGES = ("drainage", "areas", "slope and wetness", "channels and position", "open catchments")
+STAGES = ("drainage", "open catchments", "areas", "slope and position", "wetness")
 """What a listener hears of, in this order."""
 
 
@@ -39,7 +39,8 @@ class Terrain:
 
     `open_sides` tells from which sides each catchment may go on beyond the data, see `siting.terrain.edges`.
     `flat_share` is the share of cells whose direction had to be invented on level ground, `enclosed_voids` the
-    number of holes in the data. Missing is NaN, code 255 or False.
+    number of holes in the data. Missing is NaN, code 255 or False. `elevation` is the DEM's own array where that is
+    32-bit and without infinities, so neither is to be written to.
     """
 
     grid: Grid
@@ -106,27 +107,34 @@ def analyse(
     grid = dem.grid
     size: dict[str, Any] = {"cell_width_m": grid.cell_width_m, "cell_height_m": grid.cell_height_m}
     heard = _Heard(progress)
-    elevation = np.array(dem.values, dtype=np.float32)
-    elevation[np.isinf(elevation)] = np.nan
+    elevation = _finite(dem.values)
     pan_rule: dict[str, Any] = {
         "cell_area_m2": grid.cell_area_m2,
         "vertical_error_m": vertical_error_m,
         "pan_min_area_m2": pan_min_area_m2,
+        "threads": threads,
     }
-    filled, direction, flat_cells, pans = _drainage(elevation, size, pan_rule, pan_layer, flow_direction, threads)
+    # in this order, and with what is no longer needed dropped, no stage needs more memory than the results
+    drained, pans = _drainage(elevation, size, pan_rule, pan_layer, flow_direction, threads)
+    direction, flat_cells = drained.direction, drained.flat_cells
+    heard.next()
+    valid = direction != 255
+    enclosed, voids = enclosed_voids(valid)
+    sides = open_sides(direction, enclosed, threads=threads)
+    flat_share = flat_cells / max(1, int(np.count_nonzero(valid)))
+    del valid, enclosed
     heard.next()
     area = accumulate(direction, grid.cell_area_m2, threads=threads)
-    shared = multiple_flow_area(filled, direction, cell_area_m2=grid.cell_area_m2, threads=threads, **size)
+    shared = multiple_flow_area(drained.filled, direction, cell_area_m2=grid.cell_area_m2, threads=threads, **size)
+    filled = np.ascontiguousarray(drained.filled)
+    del drained
     heard.next()
     tangent = slope(elevation, threads=threads, **size)
-    wetness = wetness_index(shared, tangent, threads=threads, **size)
-    heard.next()
     channel = channel_cells(area, channel_area_m2=channel_area_m2)
     height = height_above_channel_m(filled, direction, channel, threads=threads)
     position = _positions(elevation, filled, direction, height, tangent, size, vertical_error_m, threads)
     heard.next()
-    enclosed, voids = enclosed_voids(~np.isnan(elevation))
-    sides = open_sides(direction, enclosed, threads=threads)
+    wetness = wetness_index(shared, tangent, threads=threads, **size)
     heard.next()
     return Terrain(
         grid,
@@ -142,10 +150,17 @@ def analyse(
         position,
         sides,
         pans,
-        flat_cells / max(1, int(np.count_nonzero(direction != 255))),
+        flat_share,
         voids,
         vertical_error_m,
     )
+
+
+def _finite(values: npt.NDArray[Any]) -> Heights:
+    """Return heights in 32 bits with NaN for infinities: the values themselves where they are that already."""
+    heights = np.ascontiguousarray(values, dtype=np.float32)
+    infinite = np.isinf(heights)
+    return np.where(infinite, np.float32(np.nan), heights) if infinite.any() else heights
 
 
 def _check(vertical_error_m: float, channel_area_m2: float, pan_min_area_m2: float) -> None:
@@ -179,19 +194,18 @@ def _drainage(
     pan_layer: npt.NDArray[np.int8] | None,
     flow_direction: Directions | None,
     threads: int,
-) -> tuple[Heights, Directions, int, Pans]:
-    """Return filled heights, directions, the number of cells directed on level ground, and the pans."""
+) -> tuple[Conditioned, Pans]:
+    """Return the conditioned surface and the pans."""
     if flow_direction is None:
-        conditioned, pans = _conditioned(elevation, size, pan_rule, pan_layer, threads)
-    elif pan_layer is not None:
+        return _conditioned(elevation, size, pan_rule, pan_layer, threads)
+    if pan_layer is not None:
         msg = "flow_direction and pan_layer both say where flow ends: give one of them"
         raise ConfigError(msg)
-    else:
-        conditioned = follow(elevation, flow_direction)
-        plain = condition(elevation, sinks=None, threads=threads, **size)
-        pans = find_pans(plain, elevation, pan_layer=inner_ends(conditioned.direction), threads=threads, **pan_rule)
-        pans = replace(pans, status=tuple(DOUBTFUL if one == KEPT else one for one in pans.status))
-    return np.ascontiguousarray(conditioned.filled), conditioned.direction, conditioned.flat_cells, pans
+    conditioned = follow(elevation, flow_direction)
+    plain = condition(elevation, sinks=None, threads=threads, **size)
+    pans = find_pans(plain, elevation, pan_layer=inner_ends(conditioned.direction), **pan_rule)
+    pans = replace(pans, status=tuple(DOUBTFUL if one == KEPT else one for one in pans.status))
+    return conditioned, pans
 
 
 def _conditioned(
@@ -203,7 +217,7 @@ def _conditioned(
 ) -> tuple[Conditioned, Pans]:
     """Fill to find the pans; where any is kept, condition again with their lowest cells as ends of flow."""
     plain = condition(elevation, sinks=None, threads=threads, **size)
-    pans = find_pans(plain, elevation, pan_layer=pan_layer, threads=threads, **pan_rule)
+    pans = find_pans(plain, elevation, pan_layer=pan_layer, **pan_rule)
     kept = np.array([status != DOUBTFUL for status in pans.status], dtype=np.bool_)
     if not kept.any():
         return plain, pans

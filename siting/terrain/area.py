@@ -8,7 +8,7 @@ from siting.parallel import run_all
 from siting.terrain._kernels.accumulate import count_astray
 from siting.terrain._kernels.direction import VOID
 from siting.terrain._kernels.share import FINAL, count_donors, find_pourers, release_outside, share_in_block
-from siting.terrain.condition import Directions, FloatArray, Heights, blocks_of, row_bands
+from siting.terrain.condition import Directions, FloatArray, Heights, blocks_of, row_bands, with_ring
 from siting.terrain.gather import gather, unfinished
 
 CONTOUR_CARDINAL, CONTOUR_DIAGONAL = 0.5, 0.354
@@ -81,20 +81,18 @@ def multiple_flow_area(
     _refuse_astray(direction, threads)
     rows, cols = direction.shape
     padded = (rows + 2, cols + 2)
-    heights = np.empty(padded, dtype=np.float32)
+    heights = with_ring(np.asarray(filled, dtype=np.float32))
     pours = np.zeros(padded, dtype=np.uint8)
     state = np.full(padded, FINAL, dtype=np.uint8)
     total = np.empty(direction.shape, dtype=np.float64)
-    heights[[0, -1]], heights[:, [0, -1]] = np.nan, np.nan
 
-    def begin(first: int, last: int) -> None:
-        heights[first + 1 : last + 1, 1:-1] = filled[first:last]
-        total[first:last] = np.nan
+    def begin(row0: int, row1: int) -> None:
+        count_donors(heights, pours, direction, state, row0, row1)
+        total[row0:row1] = np.nan
 
     bands = row_bands(rows, 64)
-    run_all(begin, bands, threads)
     run_all(lambda row0, row1: find_pourers(heights, direction, pours, row0, row1), bands, threads)
-    run_all(lambda row0, row1: count_donors(heights, pours, direction, state, row0, row1), bands, threads)
+    run_all(begin, bands, threads)
     _share(
         heights.ravel(),
         pours.ravel(),

@@ -129,6 +129,18 @@ def _directed(padded: Heights, ends: Mask, inverse: npt.NDArray[np.float32], sid
     return Conditioned(padded[1:-1, 1:-1], direction, flat_cells)
 
 
+def with_ring(filled: Heights) -> Heights:
+    """Return a surface padded by a ring of NaN: the array it is the inside of, as `condition` makes it, else a copy."""
+    rows, cols = filled.shape
+    ring = filled.base
+    if isinstance(ring, np.ndarray) and ring.shape == (rows + 2, cols + 2) and ring.flags.c_contiguous:
+        inside = ring[1:-1, 1:-1]
+        same = inside.ctypes.data == filled.ctypes.data and inside.strides == filled.strides
+        if same and all(np.isnan(edge).all() for edge in (ring[0], ring[-1], ring[:, 0], ring[:, -1])):
+            return ring
+    return np.pad(filled, 1, constant_values=np.nan)
+
+
 def row_bands(rows: int, height: int) -> list[tuple[int, int]]:
     """Divide rows into bands for threads."""
     return [(first, min(rows, first + height)) for first in range(0, rows, height)]

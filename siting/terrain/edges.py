@@ -35,8 +35,10 @@ def beside_void(valid: Mask) -> Mask:
 
 def enclosed_voids(valid: Mask) -> tuple[Mask, int]:
     """Mark the void cells that no 8-connected path of voids joins to the raster's edge; count their patches."""
-    label = np.zeros(valid.shape, dtype=np.int32)
     void = ~valid
+    if not void.any():
+        return void, 0
+    label = np.zeros(valid.shape, dtype=np.int32)
     count = label_patches(void, label, np.empty(np.count_nonzero(void) + 1, dtype=np.int64))
     enclosed = np.ones(count + 1, dtype=np.bool_)
     enclosed[0] = False

@@ -284,3 +284,15 @@ def test_a_listener_hears_every_stage_once_in_order() -> None:
     assert [done for _, done, _ in heard] == list(range(1, len(heard) + 1))
     assert {total for _, _, total in heard} == {len(heard)}
     assert heard[0][0] == "drainage"
+
+
+@pytest.mark.parametrize("kind", [np.float32, np.float64])
+def test_the_heights_that_are_handed_in_are_never_written_to(kind: type[np.floating[Any]]) -> None:
+    z = bowl(3.0).astype(kind)
+    z[3, 4], z[50, 7] = np.inf, np.nan
+    before = z.copy()
+    raster = Raster(Grid(60, 60, (20.0, 0, 0, 0, -20.0, 0), "EPSG:32636", np.full(60, 20.0), np.full(60, 20.0)), z)
+    rule: dict[str, Any] = {"vertical_error_m": 1.0, "channel_area_m2": 4000.0, "pan_min_area_m2": 1000.0}
+    got = analyse(raster, pan_layer=None, threads=2, **rule)
+    np.testing.assert_array_equal(z, before)
+    assert np.isnan(got.elevation[3, 4])
