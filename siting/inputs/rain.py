@@ -32,7 +32,8 @@ LEAST_YEAR_MM = 15.0
 """A mean year below this looks like inches or metres (common practice)."""
 SPARSE_DAYS = 5
 """Rows this many days apart are totals, not days."""
-LEAST_MONTH_DAYS = 28
+MONTH_DAYS = (28, 31)
+"""Days from one monthly total to the next."""
 
 
 def read_rain(path: Path, *, unit: str | None = None, generator: RainGenerator | None = None, notes: Notes) -> Rain:
@@ -71,6 +72,8 @@ def read_rain(path: Path, *, unit: str | None = None, generator: RainGenerator |
         if not monthly:
             msg = f"rain.generator is true, but {what} holds no monthly totals; take rain.generator out"
             raise InputError(msg)
+        if unit is None:
+            _refuse_odd_years(what, depth, rows_a_year=12.0)
         return _drawn(dates, depth, generator, notes)
     _refuse_totals(what, dates, monthly)
     if unit is None:
@@ -220,7 +223,8 @@ def _millimetres(name: str, unit: str | None, notes: Notes) -> float:
 def _monthly(dates: pd.DatetimeIndex) -> bool:
     """Tell whether there is one row a month."""
     months = dates.to_numpy().astype("datetime64[M]")
-    return np.unique(months).size == months.size and _usual_step(dates) >= LEAST_MONTH_DAYS
+    least, most = MONTH_DAYS
+    return np.unique(months).size == months.size and least <= _usual_step(dates) <= most
 
 
 def _usual_step(dates: pd.DatetimeIndex) -> float:
@@ -256,9 +260,9 @@ def _refuse_totals(what: str, dates: pd.DatetimeIndex, monthly: bool) -> None:
         raise InputError(msg)
 
 
-def _refuse_odd_years(what: str, depth: FloatArray) -> None:
-    mean = np.nanmean(depth) * 365.25
-    if mean < LEAST_YEAR_MM and depth.size > 365:
+def _refuse_odd_years(what: str, depth: FloatArray, rows_a_year: float = 365.25) -> None:
+    mean = np.nanmean(depth) * rows_a_year
+    if mean < LEAST_YEAR_MM and depth.size > rows_a_year:
         msg = (
             f"{what} sums to {mean:.1f} mm in a mean year; if it is in inches, say "
             "rain.unit = 'inch', and if it is right, say rain.unit = 'mm'"

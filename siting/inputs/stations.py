@@ -11,7 +11,7 @@ from pyproj import CRS, Transformer
 
 from siting.errors import InputError
 from siting.grid import Grid
-from siting.inputs.daily_csv import read_numbers, read_table
+from siting.inputs.daily_csv import read_table
 
 FloatArray = npt.NDArray[np.float64]
 Integers = npt.NDArray[np.int64]
@@ -58,7 +58,7 @@ def read_stations(path: Path, grid: Grid) -> Stations:
                 f"{SETTING} {path.name} has the station {name!r} {'without a name' if not name else 'twice'}; mend that row"
             )
             raise InputError(msg)
-    first, second = (np.asarray(read_numbers(path, table[columns[axis]], setting=SETTING)) for axis in axes)
+    first, second = (np.array([_degrees_or_metres(text) for text in table[columns[axis]]]) for axis in axes)
     if axes == ("x", "y"):
         first, second = Transformer.from_crs(grid.crs, "EPSG:4326", always_xy=True).transform(first, second)
     wrong = np.flatnonzero(~((np.abs(first) <= 180) & (np.abs(second) <= 90)))
@@ -68,6 +68,14 @@ def read_stations(path: Path, grid: Grid) -> Stations:
         msg = f"{SETTING} {path.name} places {names[int(wrong[0])]!r} at {at}, which is no place; correct it"
         raise InputError(msg)
     return Stations(names, np.asarray(first, dtype=np.float64), np.asarray(second, dtype=np.float64))
+
+
+def _degrees_or_metres(text: str) -> float:
+    """Read a coordinate; NaN where it is none. A longitude of -99 is no mark of a missing value."""
+    try:
+        return float(text.strip().replace(",", "."))
+    except ValueError:
+        return np.nan
 
 
 def nearest_station(grid: Grid, stations: Stations) -> npt.NDArray[np.int16]:

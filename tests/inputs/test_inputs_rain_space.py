@@ -153,6 +153,12 @@ def test_days_are_never_made_up_unasked_nor_over_real_ones(tmp_path: Path) -> No
     weekly = saved(tmp_path, "date,rain_mm\n2001-01-01,1\n2001-01-08,2\n2001-01-15,2\n", "weekly.csv")
     with pytest.raises(InputError, match=r"one row in 7 days: totals; .* so give daily rain$"):
         inputs.read_rain(weekly, notes=Notes())
+    yearly = saved(tmp_path, "date,rain_mm\n2001-01-01,300\n2002-01-01,200\n2003-01-01,250\n", "yearly.csv")
+    with pytest.raises(InputError, match=r"yearly\.csv holds no monthly totals"):
+        inputs.read_rain(yearly, generator=generator, notes=Notes())
+    inches = saved(tmp_path, "date,rain\n" + "\n".join(f"200{y}-{m:02d},0.9" for y in (1, 2) for m in range(1, 13)))
+    with pytest.raises(InputError, match=r"sums to 10\.8 mm in a mean year; if it is in inches"):
+        inputs.read_rain(inches, generator=generator, notes=Notes())
     with pytest.raises(InputError, match="draws the days of one gauge"):
         inputs.read_rain_stations(saved(tmp_path, WIDE), ("Qesh", "Rehm"), generator=generator, notes=Notes())
 
@@ -164,6 +170,11 @@ def test_stations_are_placed_by_degrees_or_by_map_units(grid: Grid, tmp_path: Pa
     by_degrees = inputs.read_stations(saved(tmp_path, f"Station,Lon,Lat\nQesh,{lon:.9f},{lat:.9f}\n"), grid)
     assert by_map.name == by_degrees.name == ("Qesh",)
     np.testing.assert_allclose([by_map.lon[0], by_map.lat[0]], [by_degrees.lon[0], by_degrees.lat[0]], atol=1e-8)
+
+
+def test_a_longitude_that_elsewhere_means_missing_is_a_place(grid: Grid, tmp_path: Path) -> None:
+    got = inputs.read_stations(saved(tmp_path, "station;lon;lat\nQesh;-99;19,5\nRehm;-99.9;20\n"), grid)
+    assert (got.lon.tolist(), got.lat.tolist()) == ([-99.0, -99.9], [19.5, 20.0])
 
 
 @pytest.mark.parametrize(

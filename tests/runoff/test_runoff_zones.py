@@ -44,6 +44,24 @@ def test_cells_are_classed_by_zone_and_by_curve_number() -> None:
     assert classes.label[2] == "CN 77, rain zone 2"
 
 
+@given(
+    number=arrays(np.int64, 40, elements=st.integers(60, 64)),
+    zone=arrays(np.int16, 40, elements=st.integers(-1, 3)),
+)
+def test_zones_divide_the_classes_of_ground_and_change_none(number: np.ndarray, zone: np.ndarray) -> None:
+    valid = np.ones((1, 40), np.bool_)
+    zoned = runoff.classify(
+        curve_number=number.astype(np.float64)[None], runs_after_mm=None, rain_zone=zone[None], valid=valid
+    )
+    known = zone >= 0
+    code = zoned.class_of_cell[0]
+    np.testing.assert_array_equal(code == 65535, ~known)
+    assert zoned.zone is not None
+    np.testing.assert_array_equal(zoned.curve_number[code[known]], number[known])
+    np.testing.assert_array_equal(zoned.zone[code[known]], zone[known])
+    assert zoned.count == len({*zip(number[known], zone[known], strict=True)})
+
+
 def test_an_observed_threshold_keeps_its_zone() -> None:
     zone = np.array([[0, 1]], dtype=np.int16)
     classes = runoff.classify(
