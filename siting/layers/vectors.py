@@ -40,6 +40,13 @@ CATCHMENTS = Layer(
             "Open sides",
             "sides on which it meets the end of the data, such as N;E; NULL where closed",
         ),
+        Column(
+            "extend_m",
+            "m",
+            "float64",
+            "Extend by",
+            "metres by which to extend the data on these sides: as far again as its longest flow path (our assumption)",
+        ),
     ),
     OPEN_CATCHMENT,
     "open_catchment",

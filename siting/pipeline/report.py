@@ -28,6 +28,7 @@ def check(project: Project) -> dict[str, Any]:
     return {
         "Elevation model": _dem(project, place),
         "Outlines": _outlines(place),
+        "Data beyond the boundary": _room_around(place, project, notes),
         "Soil": _soil(place),
         "Cover": _cover(place, project),
         "Rain": None if weather is None else _rain(weather, project),
@@ -73,6 +74,33 @@ def _outlines(place: Place) -> dict[str, Any]:
     if place.villages is not None:
         found["villages"] = len(place.villages)
     return found
+
+
+def _room_around(place: Place, project: Project, notes: Notes) -> dict[str, Any]:
+    """
+    Tell how far the data go beyond the boundary on each side, and warn where catchments will be open.
+
+    A catchment as large as a plot may have reaches about the root of its area beyond it (our assumption).
+    """
+    if place.inside is None:
+        return {}
+    grid, valid = place.dem.grid, ~np.isnan(place.dem.values)
+    found: dict[str, float] = {}
+    for axis, sides in ((1, ("N", "S")), (0, ("W", "E"))):
+        within, known = (np.flatnonzero(mask.any(axis=axis)) for mask in (place.inside, valid))
+        size = grid.cell_height_m if axis else np.full(grid.cols, grid.cell_width_m[grid.rows // 2])
+        found[sides[0]] = float(size[known[0] : within[0]].sum())
+        found[sides[1]] = float(size[within[-1] + 1 : known[-1] + 1].sum())
+    needed = float(np.sqrt(project.settings.plots.max_catchment_m2))
+    short = {side: room for side, room in found.items() if room < needed}
+    if short:
+        told = ", ".join(f"{side} {room:.0f} m" for side, room in sorted(short.items()))
+        notes.warn(
+            "dem_cut_at_boundary",
+            f"The elevation model ends close to the boundary ({told} beyond it): catchments there will be open, their areas "
+            f"lower bounds; extend it to {needed:.0f} m beyond the boundary on these sides, if ground above lies there.",
+        )
+    return {f"{side}, m": found[side] for side in ("N", "E", "S", "W")}
 
 
 def _soil(place: Place) -> dict[str, Any]:

@@ -38,8 +38,14 @@ def catchments_layer(frame: pd.DataFrame, sites: Sites, ground: Terrain) -> gpd.
         "area_m2": frame["catchment_area_m2"],
         "open_catchment": frame["open_catchment"],
         "open_sides": sides,
+        "extend_m": np.where(frame["open_catchment"], _extend_m(sites.catchments.longest_path_m), np.nan),
     }
     return gpd.GeoDataFrame(columns, geometry=shapes, crs=ground.grid.crs)
+
+
+def _extend_m(longest_path_m: npt.NDArray[np.float64]) -> npt.NDArray[np.float64]:
+    """Return how far to extend the data above an open catchment: as far again, in steps of 100 m."""
+    return np.asarray(np.maximum(np.ceil(longest_path_m / 100.0), 1.0) * 100.0)
 
 
 def _outline(cells: npt.NDArray[np.int64], ground: Terrain) -> Any:

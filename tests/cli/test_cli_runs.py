@@ -107,6 +107,22 @@ def test_check_tells_the_inputs_and_writes_nothing(place: Path) -> None:
     assert sorted(path.name for path in place.iterdir()) == before
 
 
+def test_check_says_before_any_work_that_catchments_will_be_open(place: Path, tmp_path: Path) -> None:
+    with rasterio.open(place / "dem.tif") as file:
+        west, south, east, north = file.bounds
+    corners = [[west + 100, south + 300], [east - 1500, south + 300], [east - 1500, north], [west + 100, north]]
+    shape = {"type": "Polygon", "coordinates": [[*corners, corners[0]]]}
+    crs = {"type": "name", "properties": {"name": "urn:ogc:def:crs:EPSG::32636"}}
+    feature = {"type": "Feature", "properties": {}, "geometry": shape}
+    text = json.dumps({"type": "FeatureCollection", "crs": crs, "features": [feature]})
+    (tmp_path / "b.geojson").write_text(text)
+    result = call("check", *flags(place, boundary=str(tmp_path / "b.geojson")))
+    assert result.exit_code == 0, result.output
+    assert "N 0 m, S 300 m, W 100 m beyond it" in result.stderr
+    assert "extend it to 1414 m" in result.stderr
+    assert "E, m: 1500" in result.stdout
+
+
 Spoil = Callable[[Path, Path], dict[str, str]]
 
 

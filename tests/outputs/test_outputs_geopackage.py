@@ -82,7 +82,7 @@ PROMISED_PLOTS = [
 ]
 PROMISED = {
     "plots": PROMISED_PLOTS,
-    "catchments": ["plot_id", "area_m2", "open_catchment", "open_sides"],
+    "catchments": ["plot_id", "area_m2", "open_catchment", "open_sides", "extend_m"],
     "intakes": ["plot_id", "contributing_area_m2"],
     "overflow_paths": ["plot_id", "length_m"],
     "channels": ["contributing_area_m2"],

@@ -148,6 +148,8 @@ def test_an_open_catchment_is_marked_with_its_sides(
     open_ones = catchments[catchments["open_catchment"]]
     assert len(open_ones) > 0
     assert open_ones["open_sides"].notna().all()
+    assert (open_ones["extend_m"] >= 100).all()
+    assert catchments.loc[~catchments["open_catchment"], "extend_m"].isna().all()
     assert catchments.loc[~catchments["open_catchment"], "open_sides"].isna().all()
 
 
