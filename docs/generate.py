@@ -12,9 +12,6 @@ from siting.layers import LAYERS, RASTERS, Classes, Column, Layer, RasterDefinit
 
 DOCS = Path(__file__).parent
 
-LEFT_EMPTY: dict[str, tuple[str, ...]] = {"plots": (), "villages": ()}
-"""Columns that are there and that a run does not fill yet; a test compares them with a run."""
-
 MADE = "*Made from the program by `docs/generate.py`: change it there.*"
 
 LAYERS_HEAD = f"""\
@@ -27,8 +24,7 @@ cells of the elevation model. `styles/` holds the same styles as SLD files. `run
 versions, checksums, assumptions, warnings, and the seconds and memory of each stage.
 
 Unknown is NULL, or the raster's nodata value; it is never 0. Layers are in the CRS of the elevation model. Areas and
-lengths are ground metres whatever the CRS. Columns marked **empty** keep their place for later versions: this one leaves
-them NULL.
+lengths are ground metres whatever the CRS.
 """
 
 SETTINGS_HEAD = f"""\
@@ -65,19 +61,18 @@ def _table(head: tuple[str, ...], rows: Iterable[tuple[str, ...]]) -> str:
 def _layer(layer: Layer) -> str:
     kind = "a table" if layer.geometry == "none" else layer.geometry
     drawn = f", drawn by `{layer.styled_by}`" if layer.styled_by else ""
-    rows = (_column(layer, column) for column in layer.columns)
+    rows = (_column(column) for column in layer.columns)
     return f"\n### {layer.name}\n\n{_sentence(layer.description)} ({kind}{drawn})\n" + _table(
         ("column", "unit", "type", "meaning"), rows
     )
 
 
-def _column(layer: Layer, column: Column) -> tuple[str, ...]:
+def _column(column: Column) -> tuple[str, ...]:
     # a list of codes has its own table below
     meaning = column.description.partition(". ")[0] if column.many else column.description
     if column.classes is not None:
         meaning += f"; see [{column.classes.name}](#{column.classes.name})"
-    empty = " **empty**" if column.name in LEFT_EMPTY.get(layer.name, ()) else ""
-    return f"`{column.name}`", column.unit, column.kind, meaning + empty
+    return f"`{column.name}`", column.unit, column.kind, meaning
 
 
 def _rasters() -> str:
