@@ -9,8 +9,8 @@ import numpy.typing as npt
 
 from siting.errors import ConfigError, InputError
 from siting.grid import Grid
-from siting.inputs.maps import BAND_ROWS, raster_bands, tell_covered
-from siting.inputs.soil_kinds import DEEP_CM, OwnSoil, SoilFacts, SoilKind, note_kinds, soil_kind
+from siting.inputs.maps import raster_bands, tell_covered
+from siting.inputs.soil_kinds import OwnSoil, SoilFacts, SoilKind, note_kinds, soil_kind
 from siting.inputs.soil_rows import DEEPEST_M, read_soil_facts
 from siting.notes import Notes
 from siting.tables.soils import DRY_COUNTRY_ORGANIC_MATTER_PCT
@@ -19,10 +19,9 @@ FloatArray = npt.NDArray[np.float64]
 Depths = npt.NDArray[np.float32]
 
 GROUP_CODES = {"A": 1, "B": 2, "C": 3, "D": 4}
-LAYER_LIMITS_CM = (50.0, 100.0)
-"""Depths of a layer at which the handbook changes tables; 100 itself belongs to the middle (table 7-1)."""
-DEPTH_CLASSES_CM = (25.0, 75.0, DEEP_CM)
-"""A depth that stands for each class: all depths of a class have one group."""
+GROUP_EFFECT = "curve numbers, and with them all runoff"
+SHALLOW_M = 0.5
+"""A layer that holds water up, less deep than this, makes any soil group D; NEH-630 chapter 7, table 7-1."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -73,7 +72,8 @@ def read_soil(given: SoilInputs, grid: Grid, *, notes: Notes) -> SoilMap:
 
     One kind of soil everywhere without `given.map`. A map in polygons has a column of textures named in `given.column`,
     or the columns sand_pct and clay_pct (silt_pct, organic_matter_pct); a raster has a table with them. Either may carry
-    soil_group, ksat_mm_h and depth_m (or the column named in `given.depth_column`). What is given as one value wins.
+    soil_group, ksat_mm_h, restrictive_depth_m, water_table_m and depth_m (or the column named in `given.depth_column`).
+    What is given as one value wins.
 
     Raises
     ------
@@ -86,14 +86,16 @@ def read_soil(given: SoilInputs, grid: Grid, *, notes: Notes) -> SoilMap:
             given.map, grid, column=given.column, depth_column=given.depth_column, table=given.table, notes=notes
         )
     own = OwnSoil(given.field_capacity, given.wilting_point, given.infiltration_mm_h)
-    kinds = tuple(_kind(_over(facts, given), own, given) for facts in rows)
+    facts = [_over(row, given) for row in rows]
+    kinds = tuple(_kind(one, own, given) for one in facts)
     present = _present(code, len(kinds))
     note_kinds([kinds[place] for place in present], notes)
-    if any(_estimates(rows[place], given) for place in present):
+    if given.field_capacity is None and any(_lacks_organic_matter(facts[place]) for place in present):
         source, effect = "common practice: bare dryland soil", "water that the soil can hold"
         notes.assume("soil.organic_matter_pct", f"{DRY_COUNTRY_ORGANIC_MATTER_PCT:g}", "%", source, effect)
     depth = _depth(given, code, kinds, grid, notes)
-    return SoilMap(code, kinds, depth, _groups(given, code, kinds, depth, notes))
+    _note_depths([facts[place] for place in present], depth, notes)
+    return SoilMap(code, kinds, depth, _groups(kinds, code, notes))
 
 
 def _everywhere(value: int, grid: Grid) -> npt.NDArray[np.int16]:
@@ -125,10 +127,9 @@ def _kind(facts: SoilFacts, own: OwnSoil, given: SoilInputs) -> SoilKind:
         raise InputError(msg) from error
 
 
-def _estimates(facts: SoilFacts, given: SoilInputs) -> bool:
+def _lacks_organic_matter(facts: SoilFacts) -> bool:
     """Tell whether water is estimated from particle sizes with an organic matter that nobody gave."""
-    known = _over(facts, given)
-    return known.sand_pct is not None and known.organic_matter_pct is None and given.field_capacity is None
+    return facts.sand_pct is not None and facts.organic_matter_pct is None
 
 
 def _depth(given: SoilInputs, code: npt.NDArray[np.int16], kinds: Sequence[SoilKind], grid: Grid, notes: Notes) -> Depths:
@@ -156,50 +157,30 @@ def _depth_by_map(path: Path, grid: Grid, notes: Notes) -> Depths:
     return depth
 
 
-def _groups(
-    given: SoilInputs, code: npt.NDArray[np.int16], kinds: Sequence[SoilKind], depth_m: Depths, notes: Notes
-) -> npt.NDArray[np.uint8]:
-    """Return the soil group of each cell, by its kind and by the class of depth of the layer below."""
-    water_cm = DEEP_CM if given.water_table_m is None else 100.0 * given.water_table_m
-    letters = [
-        [kind.group_at(layer_depth_cm=layer_cm, water_table_cm=water_cm) for layer_cm in DEPTH_CLASSES_CM] for kind in kinds
-    ]
-    _note_groups(given, kinds, letters, depth_m, notes)
-    codes = [[0 if letter is None else GROUP_CODES[letter.split("/")[-1]] for letter in row] for row in letters]
-    table = np.array([*codes, [0, 0, 0]], dtype=np.uint8)
-    layer_m = depth_m if given.restrictive_depth_m is None else np.float32(given.restrictive_depth_m)
-    if given.map is None and given.depth_map is None:
-        return np.broadcast_to(table[0, _depth_class(layer_m).flat[0]], code.shape)
-    groups = np.empty(code.shape, dtype=np.uint8)
-    layer = np.broadcast_to(layer_m, code.shape)
-    for row in range(0, code.shape[0], BAND_ROWS):
-        band = slice(row, row + BAND_ROWS)
-        groups[band] = table[code[band], _depth_class(layer[band])]
-    return groups
-
-
-def _depth_class(layer_m: npt.ArrayLike) -> npt.NDArray[np.int64]:
-    """Return the class of the depth of a layer, 0 to 2; an unknown depth counts as deep."""
-    layer_cm = 100.0 * np.nan_to_num(np.asarray(layer_m, dtype=np.float64), nan=DEEP_CM / 100.0)
-    shallow, deep = LAYER_LIMITS_CM
-    return np.asarray((layer_cm >= shallow).astype(np.int64) + (layer_cm > deep))
-
-
-def _note_groups(
-    given: SoilInputs, kinds: Sequence[SoilKind], letters: list[list[str | None]], depth_m: Depths, notes: Notes
-) -> None:
-    """Say what stands for depths that were not given, and what dual groups count as."""
-    effect = "curve numbers, and with them all runoff"
-    by_depth = any(kind.ksat_mm_h is not None and not kind.group_given for kind in kinds)
-    if given.water_table_m is None and by_depth:
-        notes.assume("soil.water_table_m", "deeper than 1", "m", "assumption: dry country", effect)
-    if given.restrictive_depth_m is None and any(len(set(row)) > 1 for row in letters):
-        if not np.isnan(depth_m).all():
-            source = "common practice: what stops roots stops water; where unknown, deeper than 1 m"
-            notes.assume("soil.restrictive_depth_m", "the depth of the soil", "m", source, effect)
-        elif by_depth:
-            notes.assume("soil.restrictive_depth_m", "deeper than 1", "m", "assumption", effect)
-    dual = sorted({letter for row in letters for letter in row if letter and "/" in letter})
+def _groups(kinds: Sequence[SoilKind], code: npt.NDArray[np.int16], notes: Notes) -> npt.NDArray[np.uint8]:
+    """Return the soil group of each cell; a dual one counts as its second letter, which is said."""
+    groups = [kind.soil_group for kind in kinds]
+    dual = sorted({group for group in groups if group and "/" in group})
     if dual:
-        counted = ", ".join(f"{letter} as {letter[-1]}" for letter in dual)
-        notes.assume("soil.dual_groups", counted, "", "NEH-630 chapter 7: ground that is not drained", effect)
+        counted = ", ".join(f"{group} as {group[-1]}" for group in dual)
+        notes.assume("soil.dual_groups", counted, "", "NEH-630 chapter 7: ground that is not drained", GROUP_EFFECT)
+    codes = np.array([*(GROUP_CODES[group[-1]] if group else 0 for group in groups), 0], dtype=np.uint8)
+    return np.broadcast_to(codes[0], code.shape) if code.strides == (0, 0) else codes[code]
+
+
+def _note_depths(facts: Sequence[SoilFacts], depth_m: Depths, notes: Notes) -> None:
+    """Say what stands for depths that decide soil groups and were not given."""
+    open_groups = [one for one in facts if one.soil_group is None]
+    measured = [one for one in open_groups if one.ksat_mm_h is not None]
+    for name in ("restrictive_depth_m", "water_table_m"):
+        if any(getattr(one, name) is None for one in measured):
+            notes.assume(f"soil.{name}", "deeper than 1", "m", "assumption where not given", GROUP_EFFECT)
+    if not any(one.restrictive_depth_m is None for one in open_groups):
+        return
+    shallow = float(np.mean(depth_m < SHALLOW_M))
+    if shallow:
+        notes.warn(
+            "shallow_soil_group",
+            f"On {100 * shallow:.1f} % of the cells the soil is less than {SHALLOW_M:g} m deep, which soil groups do not "
+            "heed: where what lies below holds water up, the group is D; say so in soil.restrictive_depth_m.",
+        )

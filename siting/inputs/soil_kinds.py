@@ -17,6 +17,7 @@ UM_S_PER_MM_H = 1.0 / 3.6
 SHALLOW_LAYER_CM, HIGH_WATER_CM = 50.0, 60.0
 """A layer or water table less deep makes any soil group D; NEH-630 chapter 7, table 7-1."""
 BY_TEXTURE = "TR-55 (1986) appendix A, by texture"
+BY_DEPTH = "NEH-630 chapter 7, table 7-1, by depth"
 BY_CONDUCTIVITY = "NEH-630 chapter 7, table 7-1, by conductivity and depth"
 
 MOST_LISTED = 12
@@ -25,7 +26,12 @@ MOST_LISTED = 12
 
 @dataclass(frozen=True, slots=True)
 class SoilFacts:
-    """What is known of one soil; None where it is not. Particle sizes and organic matter in % by weight."""
+    """
+    What is known of one soil; None where it is not.
+
+    Particle sizes and organic matter in % by weight. `depth_m` is what roots can use, `restrictive_depth_m` the depth to
+    rock or a layer that holds water up: fissured rock stops roots and not water, so neither stands for the other.
+    """
 
     texture: str | None = None
     sand_pct: float | None = None
@@ -34,6 +40,8 @@ class SoilFacts:
     soil_group: str | None = None
     ksat_mm_h: float | None = None
     depth_m: float | None = None
+    restrictive_depth_m: float | None = None
+    water_table_m: float | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,9 +58,8 @@ class SoilKind:
     """
     One kind of soil: water contents in m3/m3, depths in mm or m, rates in mm/h; NaN and None where unknown.
 
-    `rew_mm` and `tew_mm` are what the top 0.1 m evaporates readily and in all. `soil_group` is the letter by texture or
-    as given, before depths are looked at; None where `ksat_mm_h` decides, or nothing does. `depth_m` is that of the
-    map's row.
+    `rew_mm` and `tew_mm` are what the top 0.1 m evaporates readily and in all. `soil_group` may be a dual one ("A/D"),
+    which counts as its second letter.
     """
 
     name: str
@@ -63,23 +70,11 @@ class SoilKind:
     rew_mm: float
     tew_mm: float
     soil_group: str | None
-    group_given: bool
-    ksat_mm_h: float | None
     depth_m: float
     water_source: str
     infiltration_source: str
     rew_source: str
     group_source: str
-
-    def group_at(self, *, layer_depth_cm: float, water_table_cm: float) -> str | None:
-        """Return the group (dual ones as in the handbook) above a layer and a water table; None where unknown."""
-        if self.group_given or (self.soil_group is None and self.ksat_mm_h is None):
-            return self.soil_group
-        if self.ksat_mm_h is not None:
-            return soil_group(
-                layer_depth_cm=layer_depth_cm, water_table_cm=water_table_cm, ksat_um_s=self.ksat_mm_h * UM_S_PER_MM_H
-            )
-        return "D" if layer_depth_cm < SHALLOW_LAYER_CM or water_table_cm < HIGH_WATER_CM else self.soil_group
 
 
 def soil_kind(facts: SoilFacts, own: OwnSoil) -> SoilKind:
@@ -88,7 +83,8 @@ def soil_kind(facts: SoilFacts, own: OwnSoil) -> SoilKind:
 
     Texture class from particle sizes where they are given. Water: own values, else Saxton & Rawls (2006) from particle
     sizes, else FAO-56 table 19 by texture. Intake: own, else measured conductivity, else the FAO manual by texture, else
-    Saxton & Rawls. Group: as given, else by measured conductivity, else by texture, else by estimated conductivity.
+    Saxton & Rawls. Group: as given, else by measured conductivity and depths, else by texture (D above a shallow layer or
+    water table), else by estimated conductivity and depths; depths that are not given count as deep.
 
     Raises
     ------
@@ -100,7 +96,7 @@ def soil_kind(facts: SoilFacts, own: OwnSoil) -> SoilKind:
     rate, rate_source = _intake(facts, row, water, own)
     tew = float(total_evaporable_water_mm(field_capacity=capacity, wilting_point=wilting))
     rew, rew_source = _rew(row, tew)
-    group, ksat, group_source = _group(facts, row, water)
+    group, group_source = _group(facts, row, water)
     return SoilKind(
         name,
         None if row is None else row.texture,
@@ -110,8 +106,6 @@ def soil_kind(facts: SoilFacts, own: OwnSoil) -> SoilKind:
         rew,
         tew,
         group,
-        facts.soil_group is not None,
-        ksat,
         math.nan if facts.depth_m is None else facts.depth_m,
         water_source,
         rate_source,
@@ -166,18 +160,24 @@ def _rew(row: Soil | None, tew_mm: float) -> tuple[float, str]:
     return nearest_printed_rew_mm(tew_mm), "assumption: as the texture of FAO-56 Table 19 that is nearest in TEW"
 
 
-def _group(facts: SoilFacts, row: Soil | None, water: SoilWater | None) -> tuple[str | None, float | None, str]:
-    """Return the group, the conductivity that decides it with the depths, and the source."""
+def _group(facts: SoilFacts, row: Soil | None, water: SoilWater | None) -> tuple[str | None, str]:
+    """Return the hydrologic soil group and its source."""
+    layer_cm = DEEP_CM if facts.restrictive_depth_m is None else 100.0 * facts.restrictive_depth_m
+    water_cm = DEEP_CM if facts.water_table_m is None else 100.0 * facts.water_table_m
     if facts.soil_group is not None:
-        return facts.soil_group, facts.ksat_mm_h, AS_GIVEN
-    if facts.ksat_mm_h is not None:
-        return None, facts.ksat_mm_h, BY_CONDUCTIVITY
-    if row is None:
-        return None, None, UNKNOWN
-    if row.soil_group is not None:
-        return row.soil_group, None, BY_TEXTURE
-    estimate = row.infiltration_mm_h if water is None else water.ksat_mm_h
-    return None, estimate, f"{BY_CONDUCTIVITY} estimated by Saxton & Rawls (2006): no group by this texture in print"
+        return facts.soil_group, AS_GIVEN
+    ksat, source = facts.ksat_mm_h, BY_CONDUCTIVITY
+    if ksat is None:
+        if row is None:
+            return None, UNKNOWN
+        if layer_cm < SHALLOW_LAYER_CM or water_cm < HIGH_WATER_CM:
+            return "D", BY_DEPTH
+        if row.soil_group is not None:
+            return row.soil_group, BY_TEXTURE
+        ksat = row.infiltration_mm_h if water is None else water.ksat_mm_h
+        source = f"{BY_CONDUCTIVITY} estimated by Saxton & Rawls (2006): no group by this texture in print"
+    group = soil_group(layer_depth_cm=layer_cm, water_table_cm=water_cm, ksat_um_s=ksat * UM_S_PER_MM_H)
+    return group, source
 
 
 def note_kinds(kinds: list[SoilKind], notes: Notes) -> None:
@@ -192,7 +192,7 @@ def note_kinds(kinds: list[SoilKind], notes: Notes) -> None:
             "how much of a large flow the plot can take",
             lambda kind: f"{kind.infiltration_mm_h:.3g}",
         ),
-        ("group", "", "group_source", "curve numbers, and with them all runoff", lambda kind: kind.soil_group or "by depth"),
+        ("group", "", "group_source", "curve numbers, and with them all runoff", lambda kind: kind.soil_group),
     ):
         told = [kind for kind in kinds if getattr(kind, source) not in (AS_GIVEN, UNKNOWN)]
         if len(told) > MOST_LISTED:

@@ -15,7 +15,8 @@ from siting.notes import Notes
 Row = dict[str, str]
 
 GROUPS = ("A", "B", "C", "D", "A/D", "B/D", "C/D")
-NUMBERS = ("sand_pct", "silt_pct", "clay_pct", "organic_matter_pct", "ksat_mm_h", "depth_m")
+DEPTHS = ("depth_m", "restrictive_depth_m", "water_table_m")
+NUMBERS = ("sand_pct", "silt_pct", "clay_pct", "organic_matter_pct", "ksat_mm_h", *DEPTHS)
 SLACK_PCT = 0.5
 """What rounded particle sizes may lack of 100 %."""
 MOST_KINDS = 32_767
@@ -115,9 +116,8 @@ def _facts(row: Row, what: str) -> SoilFacts | None:
     if sand is not None and clay is not None and silt is not None and abs(sand + silt + clay - 100.0) > SLACK_PCT:
         msg = f"{what} has sand, silt and clay of {sand:g}, {silt:g} and {clay:g} %; they must sum to 100"
         raise InputError(msg)
-    depth = number["depth_m"]
-    if depth is not None and not 0 <= depth <= DEEPEST_M:
-        msg = f"{what} has a soil depth of {depth:g} m; it must be 0 to {DEEPEST_M:g}, give metres"
+    if (number["depth_m"] or 0.0) > DEEPEST_M:
+        msg = f"{what} has a soil depth of {number['depth_m']:g} m; it must be 0 to {DEEPEST_M:g}, give metres"
         raise InputError(msg)
     group = row.get("soil_group", "").upper() or None
     if group is not None and group not in GROUPS:
@@ -128,7 +128,9 @@ def _facts(row: Row, what: str) -> SoilFacts | None:
         texture = None
     if texture is None and sand is None and group is None and number["ksat_mm_h"] is None:
         return None
-    return SoilFacts(texture, sand, clay, number["organic_matter_pct"], group, number["ksat_mm_h"], depth)
+    return SoilFacts(
+        texture, sand, clay, number["organic_matter_pct"], group, number["ksat_mm_h"], *(number[d] for d in DEPTHS)
+    )
 
 
 def _number(text: str, name: str, what: str) -> float | None:

@@ -1,6 +1,7 @@
 """Soil given as one, by polygons or by raster and table: kinds with their sources, depths, and hydrologic groups."""
 
 import warnings
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -139,11 +140,11 @@ def test_polygons_carry_textures_depths_and_groups(grid: Grid, tmp_path: Path) -
     assert [kind.texture for kind in got.kinds] == ["loam", "sand", "loam"]
     assert stripes(got.code) == [0, 1, 2]
     assert stripes(got.depth_m) == pytest.approx([1.2, 0.3, None])
-    # NEH-630 Table 7-1: less than 50 cm of soil is D; a dual group counts as its second letter
-    assert stripes(got.soil_group) == [2, 4, 4]
-    noted = {one.id: one.value for one in notes.assumptions}
-    assert noted["soil.dual_groups"] == "C/D as D"
-    assert noted["soil.restrictive_depth_m"] == "the depth of the soil"
+    # TR-55 (1986) appendix A; a dual group counts as its second letter
+    assert stripes(got.soil_group) == [2, 1, 4]
+    assert {one.id: one.value for one in notes.assumptions}["soil.dual_groups"] == "C/D as D"
+    (warned,) = notes.warnings
+    assert warned.text.startswith("On 33.3 % of the cells the soil is less than 0.5 m deep, which soil groups do not")
     np.testing.assert_allclose(got.values("field_capacity"), [0.25, 0.12, 0.25, np.nan])
 
 
@@ -184,14 +185,30 @@ def test_a_map_of_groups_alone_tells_groups_alone(grid: Grid, tmp_path: Path) ->
     assert np.isnan(got.values("field_capacity")).all()
 
 
-def test_a_depth_map_wins_over_columns_and_moves_the_groups(grid: Grid, tmp_path: Path) -> None:
+def test_rock_and_water_below_are_read_by_soil(grid: Grid, tmp_path: Path) -> None:
+    # NEH-630 Table 7-1: a layer less than 50 cm deep makes group D; 41 um/s over a layer at 80 cm and water at 50 cm: A/D
+    path = polygons(
+        tmp_path / "soil.gpkg",
+        texture=["sand"] * 3,
+        depth_m=[0.4] * 3,
+        restrictive_depth_m=[0.4, 3.0, 0.8],
+        water_table_m=[None, None, 0.5],
+        ksat_mm_h=[None, None, 41 * MM_H],
+    )
+    notes = Notes()
+    got = read(grid, notes, map=path, column="texture")
+    assert [kind.soil_group for kind in got.kinds] == ["D", "A", "A/D"]
+    assert stripes(got.soil_group) == [4, 1, 4]
+    assert not notes.warnings
+
+
+def test_a_depth_map_wins_over_columns(grid: Grid, tmp_path: Path) -> None:
     path = polygons(tmp_path / "soil.gpkg", texture=["sand"] * 3, depth_m=[9.0] * 3)
     depth = raster(tmp_path / "depth.tif", [0.4, 0.8, -1], "float32", nodata=-1)
     notes = Notes()
     got = read(grid, notes, map=path, column="texture", depth_map=depth)
     assert stripes(got.depth_m) == pytest.approx([0.4, 0.8, None])
-    assert stripes(got.soil_group) == [4, 1, 1]
-    assert [warned.code for warned in notes.warnings] == ["soil.depth_map_partial"]
+    assert [warned.code for warned in notes.warnings] == ["soil.depth_map_partial", "shallow_soil_group"]
 
 
 # NEH-630 ch. 7 Table 7-1 (January 2009): Ksat in um/s, depth to a layer and to water in m
@@ -225,7 +242,7 @@ def test_measured_conductivity_and_depths_give_the_group(
         water_table_m=water_m,
     )
     assert stripes(got.soil_group)[0] == " ABCD".index(group[-1])
-    assert got.kinds[0].group_at(layer_depth_cm=100 * layer_m, water_table_cm=100 * water_m) == group
+    assert got.kinds[0].soil_group == group
     assert got.kinds[0].infiltration_mm_h == pytest.approx(ksat_um_s * MM_H)
     assert ("soil.dual_groups" in {noted.id for noted in notes.assumptions}) == ("/" in group)
 
@@ -292,21 +309,9 @@ def test_every_kind_of_soil_can_be(facts: SoilFacts) -> None:
     # FAO-56 eq. 73
     tew = float(total_evaporable_water_mm(field_capacity=kind.field_capacity, wilting_point=kind.wilting_point))
     assert kind.tew_mm == tew
-    groups = [kind.group_at(layer_depth_cm=depth, water_table_cm=200) for depth in (20, 70, 150)]
-    assert groups[0] == "D"
-    assert None not in groups
-
-
-@settings(deadline=None, max_examples=30)
-@given(depth=st.lists(st.floats(0.0, 3.0), min_size=3, max_size=3))
-def test_groups_by_a_depth_map_are_those_cell_by_cell(tmp_path_factory: pytest.TempPathFactory, depth: list[float]) -> None:
-    grid = metric_grid(20, 30, 10.0, west=WEST, north=NORTH)
-    path = raster(tmp_path_factory.mktemp("depth") / "depth.tif", depth, "float32")
-    got = stripes(read(grid, texture="clay", ksat_mm_h=60.0, depth_map=path).soil_group)
-    alone = [
-        stripes(read(grid, texture="clay", ksat_mm_h=60.0, depth_m=float(np.float32(one))).soil_group)[0] for one in depth
-    ]
-    assert got == alone
+    assert kind.soil_group in ("A", "B", "C", "D")
+    assert soil_kind(replace(facts, restrictive_depth_m=0.3), OwnSoil()).soil_group == "D"
+    assert soil_kind(replace(facts, restrictive_depth_m=3.0), OwnSoil()).soil_group == kind.soil_group
 
 
 def test_many_kinds_are_listed_in_one_line(grid: Grid, tmp_path: Path) -> None:
