@@ -8,7 +8,7 @@ import numpy.typing as npt
 import pandas as pd
 
 from siting.errors import InputError
-from siting.inputs.daily_csv import column_named, plain_name, read_dates, read_numbers, read_table
+from siting.inputs.daily_csv import DATE_NAMES, column_named, plain_name, read_dates, read_numbers, read_table
 from siting.notes import Notes
 from siting.runoff.generator import RainGenerator, daily_from_monthly
 from siting.runoff.rain import Rain, StationRain
@@ -137,7 +137,7 @@ def read_rain_stations(
         has = ", ".join(map(repr, table.columns if station_column is None else found))
         msg = f"rain.daily {path.name} has no rain of the station {lacking[0]!r}; it has {has}"
         raise InputError(msg)
-    _note_unused(path, [name for name in found if name not in stations], notes)
+    _note_unplaced(path, [name for name in found if name not in stations], notes)
     return _one_calendar(path, {name: found[name] for name in stations}, unit, notes)
 
 
@@ -168,12 +168,16 @@ def _by_column(
     """Return dates and depths of each station that has a column of its own."""
     wanted = {plain_name(name): name for name in stations}
     found: dict[str, Readings] = {}
+    unplaced = []
     for column in map(str, table.columns):
         plain = plain_name(column)
         start, _, ending = plain.rpartition("_")
         key = plain if plain in wanted or ending not in UNIT_ENDINGS else start
         if key in wanted:
             found[wanted[key]] = (dates, _depths(path, table[column], _millimetres(column, unit, notes)))
+        elif plain.split("_")[0] not in DATE_NAMES:
+            unplaced.append(column)
+    _note_unplaced(path, unplaced, notes)
     return found
 
 
@@ -196,7 +200,7 @@ def _one_calendar(path: Path, found: dict[str, Readings], unit: str | None, note
     return StationRain(days, frame.to_numpy(dtype=np.float64).T.copy(), tuple(found))
 
 
-def _note_unused(path: Path, names: Sequence[str], notes: Notes) -> None:
+def _note_unplaced(path: Path, names: Sequence[str], notes: Notes) -> None:
     if names:
         listed = ", ".join(map(repr, names))
         notes.warn(

@@ -49,7 +49,8 @@ def daily_from_monthly(months: Months, total_mm: FloatArray, *, generator: RainG
     Draw days of rain that sum to the monthly totals.
 
     Wet and dry days follow a two-state Markov chain whose share of wet days is total / mean rain of a wet day; depths
-    are gamma. Of 100 such months the one nearest to the total is scaled to it.
+    are gamma. Of 100 such months the one nearest to the total is scaled to it; so held, depths vary a little less than
+    free ones.
 
     Parameters
     ----------

@@ -94,9 +94,10 @@ def test_inches_of_stations_become_millimetres(tmp_path: Path) -> None:
 
 
 def test_stations_without_a_place_are_said(tmp_path: Path) -> None:
-    notes = Notes()
-    inputs.read_rain_stations(saved(tmp_path, LONG), ("Rehm",), notes=notes)
-    assert "stations that rain.stations does not place: 'Qesh'" in notes.warnings[0].text
+    for text, name in ((LONG, "Qesh"), (WIDE, "Qesh_mm")):
+        notes = Notes()
+        inputs.read_rain_stations(saved(tmp_path, text), ("Rehm",), notes=notes)
+        assert f"stations that rain.stations does not place: '{name}'" in notes.warnings[0].text
 
 
 def test_one_gauge_needs_no_station_column(tmp_path: Path) -> None:
