@@ -190,15 +190,15 @@ def _levels(
     """Solve the graph of all blocks: the level to which each named part is raised."""
     rows, cols = name.shape
     most = 3 * (rows * (cols // block + 1) + cols * (rows // block + 1)) + 1
-    first, second = np.empty(most, dtype=np.int64), np.empty(most, dtype=np.int64)
+    first, second = np.empty((2, most), dtype=np.int32)
     height = np.empty(most, dtype=np.float32)
     count = 0
     for step in ((0, 1), (1, 0), (1, 1), (1, -1)):
         count += seam_passes(padded, name, base, block, *step, first[count:], second[count:], height[count:])
     all_first, all_second, all_height = [first[:count]], [second[:count]], [height[:count]]
     for number, (_, one, two, passes) in enumerate(parts):
-        all_first.append(np.where(one > 0, one + base[number], 0))
-        all_second.append(np.where(two > 0, two + base[number], 0))
+        all_first.append(np.where(one > 0, one + base[number], 0).astype(np.int32))
+        all_second.append(np.where(two > 0, two + base[number], 0).astype(np.int32))
         all_height.append(passes)
     nodes = int(base[-1]) + 1
     marked = np.zeros(nodes, dtype=np.bool_)

@@ -53,7 +53,7 @@ def start_flats(filled, direction, cols, toward, away, limits, outs, highs):
     _spread(away, cols, limits, none, 0, highs, last_high)
 
 
-@part
+@kernel
 def _spread(steps, cols, limits, seeds, seeded, queue, queued):
     """
     Count steps breadth first inside a block from `seeds`, sorted by their steps, and from `queue`.

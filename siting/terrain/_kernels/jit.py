@@ -11,19 +11,22 @@ import numpy as np
 from numba import njit
 
 
+OPTIONS: dict[str, Any] = {"nogil": True, "error_model": "numpy", "no_cfunc_wrapper": True}
+
+
 def kernel(function: Callable[..., Any]) -> Callable[..., Any]:
     """Compile a kernel; where no folder takes its compiled form (a read-only home) go without one."""
     try:
-        compiled: Callable[..., Any] = njit(cache=True, nogil=True, error_model="numpy")(function)
+        compiled: Callable[..., Any] = njit(cache=True, **OPTIONS)(function)
     except RuntimeError:
-        compiled = njit(nogil=True, error_model="numpy")(function)
+        compiled = njit(**OPTIONS)(function)
     return compiled
 
 
 def part(function: Callable[..., Any]) -> Callable[..., Any]:
-    """Make a part of kernels, written into each that calls it: handing arrays to a call costs more than a cell's work."""
-    written_in: Callable[..., Any] = njit(nogil=True, error_model="numpy", inline="always")(function)
-    return written_in
+    """Compile a part of kernels into each that calls it: handing arrays to a call costs more than the work on a cell."""
+    compiled: Callable[..., Any] = njit(forceinline=True, no_cpython_wrapper=True, **OPTIONS)(function)
+    return compiled
 
 
 @part

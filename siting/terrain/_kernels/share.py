@@ -143,9 +143,9 @@ def _release_inside(heights, state, width, stacked, stack, depth):
     return _tell(state, stack, depth, above + 1, ne)
 
 
-@part
+@kernel
 def _release_border(heights, pours, state, width, limits, stacked, stack, depth):
-    """Do the same for a cell that gives to one neighbour, or lies on the border of its block: outside is let be."""
+    """Do the same for any cell on the border of its block; neighbours outside are let be."""
     row0, row1, col0, col1 = limits
     node = stacked & NODE_MASK
     row = stacked >> 40
@@ -187,16 +187,21 @@ def share_in_block(heights, pours, state, weights, own, total, flux, width, limi
                 fed_whole = at(state, node) >= FED_WHOLE
                 state[np.uint64(node)] = FINAL
                 _settle(heights, pours, weights, own, total, flux, width, row, node, fed_whole)
-                gives = at(pours, node)
+                gives = np.int64(at(pours, node))
                 col = node - row * width
                 on_border = row == row0 + 1 or row == row1 or col == col0 + 1 or col == col1
-                if gives == SHARES and not on_border:
-                    depth = _release_inside(heights, state, width, stacked, stack, depth)
-                elif gives != KEEPS:
+                if gives == KEEPS:
+                    continue
+                if on_border:
                     depth = _release_border(heights, pours, state, width, limits, stacked, stack, depth)
-                    if on_border:
-                        pending[waiting] = stacked
-                        waiting += 1
+                    pending[waiting] = stacked
+                    waiting += 1
+                elif gives == SHARES:
+                    depth = _release_inside(heights, state, width, stacked, stack, depth)
+                else:
+                    row_step, col_step = at(STEP_ROW, gives), at(STEP_COL, gives)
+                    receiver = stacked + row_step * (ROW_UNIT + width) + col_step
+                    depth = _tell(state, stack, depth, receiver, True)
     return waiting
 
 
