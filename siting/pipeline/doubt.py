@@ -5,14 +5,13 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from siting.config import Project
+from siting.demand import CropRecord
 from siting.notes import Notes
+from siting.pipeline.case import Case
 from siting.pipeline.floods import Floods
 from siting.pipeline.order import Order
-from siting.pipeline.sites import Sites
-from siting.pipeline.soil import SoilOfPlots
-from siting.pipeline.surface import PlotGround
-from siting.pipeline.water import Water, Weather, known_areas
+from siting.pipeline.water import CropResults, Water, known_areas
+from siting.pipeline.weather import Weather
 from siting.ranking import (
     COMPONENTS,
     Components,
@@ -28,7 +27,6 @@ from siting.ranking import (
     supply_model,
 )
 from siting.ranking.score_doubt import ScoreBasis
-from siting.runoff import RunoffClasses
 
 FloatArray = npt.NDArray[np.float64]
 
@@ -46,47 +44,27 @@ class RankDoubt:
     swaps: Swaps
 
 
-def doubt_ranks(
-    sites: Sites,
-    own: PlotGround,
-    soil: SoilOfPlots,
-    classes: RunoffClasses,
-    water: Water | None,
-    floods: Floods | None,
-    weather: Weather | None,
-    order: Order,
-    project: Project,
-    threads: int,
-    notes: Notes,
-) -> RankDoubt | None:
+def doubt_ranks(case: Case, water: Water | None, floods: Floods | None, order: Order) -> RankDoubt | None:
     """Draw what is in doubt, rank by the order in use each time, and keep the middle 90 % of the ranks."""
-    draws, seed = project.settings.ranking.draws, project.settings.ranking.seed
-    if draws == 0 or water is None or water.crop is None or floods is None or weather is None:
+    draws, seed = case.settings.ranking.draws, case.settings.ranking.seed
+    if draws == 0 or water is None or water.crop is None or floods is None or case.weather is None:
         return None
-    if classes.count == 0 or weather.record is None or not weather.record.demand_known or not (order.rank > 0).any():
+    record = case.weather.record
+    if case.classes.count == 0 or record is None or not record.demand_known or not (order.rank > 0).any():
         return None
-    model = _model(sites, own, soil, classes, floods, weather, project)
-    _note(notes)
+    model = _model(case, case.weather, record, floods)
+    _note(case.notes)
     if order.follows_score:
-        basis = _basis(water, order, project)
-        ranks = score_doubt(model, SPREAD, basis, draws=draws, seed=seed, threads=threads)
+        basis = _basis(case, water.crop, order)
+        ranks = score_doubt(model, SPREAD, basis, draws=draws, seed=seed, threads=case.threads)
     else:
-        ranks = rank_doubt(model, SPREAD, draws=draws, seed=seed, threads=threads)
-    return RankDoubt(ranks, neighbour_swaps(model, SPREAD, pairs=TOLD_PAIRS, threads=threads))
+        ranks = rank_doubt(model, SPREAD, draws=draws, seed=seed, threads=case.threads)
+    return RankDoubt(ranks, neighbour_swaps(model, SPREAD, pairs=TOLD_PAIRS, threads=case.threads))
 
 
-def _model(
-    sites: Sites,
-    own: PlotGround,
-    soil: SoilOfPlots,
-    classes: RunoffClasses,
-    floods: Floods,
-    weather: Weather,
-    project: Project,
-) -> SupplyModel:
+def _model(case: Case, weather: Weather, record: CropRecord, floods: Floods) -> SupplyModel:
     """Make the seasonal method ready to be run again with other inputs."""
-    settings, record = project.settings, weather.record
-    assert record is not None  # the caller has asked
+    settings, sites, soil = case.settings, case.sites, case.soil
     losses, at = np.unique(sites.loss_per_km, return_index=True)
     plots = PlotInputs(
         effective_area_m2=known_areas(sites.catchments)[at],
@@ -96,15 +74,15 @@ def _model(
         available_water_mm=soil.available_water_mm,
         ponding_mm=soil.soil.ponding_mm,
         infiltration_mm=soil.soil.infiltration_mm_h * settings.plots.event_hours,
-        soil_class=own.texture,
-        open_catchment=own.open_sides != 0,
+        soil_class=case.own.texture,
+        open_catchment=case.own.open_sides != 0,
         peak_flow_10y_m3s=floods.peak_10y_m3s,
         plot_id=sites.plot_id,
     )
     return supply_model(
         plots=plots,
-        classes=classes,
-        cover_of_class=np.arange(classes.count),
+        classes=case.classes,
+        cover_of_class=np.arange(case.classes.count),
         rain_mm=record.rain_mm,
         et0_mm=record.et0_mm,
         seasons=weather.fixed_seasons,
@@ -118,17 +96,16 @@ def _model(
     )
 
 
-def _basis(water: Water, order: Order, project: Project) -> ScoreBasis:
-    assert water.crop is not None  # the caller has asked
-    settings = project.settings
-    share = reliability(water.crop.yields.relative_yield, target_yield=settings.crop.target_yield).share
+def _basis(case: Case, crop: CropResults, order: Order) -> ScoreBasis:
+    settings = case.settings
+    share = reliability(crop.yields.relative_yield, target_yield=settings.crop.target_yield).share
     used = {name: getattr(settings.ranking, f"weight_{name}") for name in COMPONENTS}
     return ScoreBasis(
         Components(**order.components),
         used,
         np.where(order.rank > 0, share, np.nan),
-        water.crop.yields.relative_yield.mean(axis=1),
-        water.crop.rain_alone.relative_yield.mean(axis=1),
+        crop.yields.relative_yield.mean(axis=1),
+        crop.rain_alone.relative_yield.mean(axis=1),
         settings.crop.target_yield,
     )
 

@@ -6,13 +6,13 @@ import numpy as np
 import numpy.typing as npt
 import pandas as pd
 
-from siting.config import Project
+from siting.pipeline.case import Case
 from siting.pipeline.read import Place
-from siting.pipeline.sites import Sites, trace
-from siting.pipeline.water import Water, Weather, yearly_volumes
+from siting.pipeline.sites import trace
+from siting.pipeline.water import Water, yearly_volumes
+from siting.pipeline.weather import Weather
 from siting.plots import overflow_path, plot_cells
 from siting.ranking import ChosenSet, PlotForest, Reaches, lost_downstream, lost_share
-from siting.runoff import RunoffClasses
 from siting.terrain import Terrain
 from siting.terrain.downstream import step_lengths
 
@@ -44,34 +44,27 @@ class Below:
         return np.flatnonzero([one == kind for one in self.kind])
 
 
-def places_below(
-    sites: Sites,
-    place: Place,
-    village_cell: Integers,
-    ground: Terrain,
-    classes: RunoffClasses,
-    weather: Weather,
-    project: Project,
-) -> Below:
+def places_below(case: Case, weather: Weather, village_cell: Integers) -> Below:
     """Follow the water from every plot's exit to the end, and find what it meets; then what comes to each place."""
     found: dict[tuple[str, int, int], int] = {}
     met: dict[tuple[int, int], float] = {}
+    ground = case.ground
     lengths = step_lengths(ground.grid.cell_width_m, ground.grid.cell_height_m)
     nowhere = np.zeros(ground.grid.shape, dtype=np.bool_)
-    for plot, exit_cell in enumerate(sites.catchments.exit_cell):
+    for plot, exit_cell in enumerate(case.sites.catchments.exit_cell):
         path = overflow_path(int(exit_cell), direction=ground.direction, stop=nowhere)
         far = _distances(path, ground.grid.cols, lengths)
-        for key, at in _met_by(path, place, village_cell, ground):
+        for key, at in _met_by(path, case.place, village_cell, ground):
             number = found.setdefault(key, len(found))
             met.setdefault((plot, number), float(far[at]))
     for village, cell in enumerate(village_cell):
         if cell >= 0:
             found.setdefault((VILLAGE, village, int(cell)), len(found))
-    loss_per_m = project.settings.runoff.conveyance_loss_per_km / 1000.0
+    loss_per_m = case.settings.runoff.conveyance_loss_per_km / 1000.0
     pairs = np.array(list(met), dtype=np.int64).reshape(-1, 2)
     passing = np.exp(-loss_per_m * np.array(list(met.values())))
     cells = np.array([cell for _, _, cell in found], dtype=np.int64)
-    came = _came(cells, ground, place, classes, weather, project)
+    came = _came(case, weather, cells)
     numbers = np.array([number for _, number, _ in found], dtype=np.int64)
     return Below([kind for kind, _, _ in found], numbers, cells, came, Reaches(pairs[:, 0], pairs[:, 1], passing))
 
@@ -101,21 +94,18 @@ def _met_by(path: Integers, place: Place, village_cell: Integers, ground: Terrai
     return met
 
 
-def _came(
-    cells: Integers, ground: Terrain, place: Place, classes: RunoffClasses, weather: Weather, project: Project
-) -> FloatArray:
+def _came(case: Case, weather: Weather, cells: Integers) -> FloatArray:
     """Return what comes to each cell by year with nothing taken above, m3; reckoned as for plots of one cell."""
     years = weather.years.labels.size
-    if cells.size == 0 or classes.count == 0:
+    if cells.size == 0 or case.classes.count == 0:
         return np.full((cells.size, years), np.nan)
     unique, at = np.unique(cells, return_inverse=True)
-    label = np.zeros(ground.grid.shape, dtype=np.int32)
+    label = np.zeros(case.ground.grid.shape, dtype=np.int32)
     label.ravel()[unique] = np.arange(1, unique.size + 1)
-    catchments = trace(
-        plot_cells(label, unique.size), label, place, ground, classes, (project.settings.runoff.conveyance_loss_per_km,)
-    )
-    volume = yearly_volumes(catchments, classes, weather, project)
-    return np.asarray(volume[at])
+    loss = (case.settings.runoff.conveyance_loss_per_km,)
+    cell_list = plot_cells(label, unique.size)
+    catchments = trace(cell_list, label, case.place, case.ground, case.classes, loss)
+    return np.asarray(yearly_volumes(case, weather, catchments)[at])
 
 
 def village_channels(start_cell: Integers, start: Integers, villages: int, ground: Terrain) -> Integers:
@@ -141,12 +131,10 @@ class Ledger:
     village_median_pct: FloatArray
 
 
-def ledger(
-    below: Below, forest: PlotForest, chosen: ChosenSet, water: Water, sites: Sites, villages: int, project: Project
-) -> Ledger:
+def ledger(case: Case, water: Water, below: Below, forest: PlotForest, chosen: ChosenSet, villages: int) -> Ledger:
     """Tell of each plot alone, and of the set, which share of the water no longer reaches each place below."""
     alone = np.minimum(water.yearly_m3, water.room_m3)
-    shares = (project.settings.ranking.dependable, 0.5)
+    shares = (case.settings.ranking.dependable, 0.5)
     places = [
         lost_downstream(
             came_m3=below.came_m3,
@@ -171,12 +159,11 @@ def ledger(
     kind, number = np.array(below.kind, dtype=object), below.number + 1
     reached, next_reaches = below.reaches, forest.reaches()
     fed = np.unique(next_reaches.place)
+    plot_id, alone_below = case.sites.plot_id, [one.by_plot for one in next_plots]
     parts = [
-        _rows(
-            sites.plot_id[next_reaches.plot], PLOT, sites.plot_id[next_reaches.place], [one.by_plot for one in next_plots]
-        ),
-        _rows(sites.plot_id[reached.plot], kind[reached.place], number[reached.place], [one.by_plot for one in places]),
-        _rows(None, PLOT, sites.plot_id[fed], [one[fed] for one in from_plots]),
+        _rows(plot_id[next_reaches.plot], PLOT, plot_id[next_reaches.place], alone_below),
+        _rows(plot_id[reached.plot], kind[reached.place], number[reached.place], [one.by_plot for one in places]),
+        _rows(None, PLOT, plot_id[fed], [one[fed] for one in from_plots]),
         _rows(None, kind, number, [one.by_set for one in places]),
     ]
     table = pd.concat([part for part in parts if len(part)], ignore_index=True) if any(map(len, parts)) else parts[0]

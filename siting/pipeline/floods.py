@@ -5,12 +5,10 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from siting.config import Project
-from siting.notes import Notes
-from siting.pipeline.sites import GROSS, Sites
-from siting.pipeline.water import Weather
+from siting.pipeline.case import Case
+from siting.pipeline.sites import GROSS
+from siting.pipeline.weather import Weather
 from siting.runoff import (
-    RunoffClasses,
     annual_max_mm,
     design_rain_mm,
     few_years_for_design,
@@ -36,15 +34,13 @@ class Floods:
     spillway_width_m: FloatArray
 
 
-def plot_floods(
-    sites: Sites, classes: RunoffClasses, curve_number: FloatArray, weather: Weather, project: Project, notes: Notes
-) -> Floods:
+def plot_floods(case: Case, weather: Weather) -> Floods:
     """
     Estimate flood peaks by the lag and the graphical method, from design rain of the record.
 
     Runoff is summed by class; the mean curve number serves the lag and Ia/P alone. Open catchments give at least this.
     """
-    settings, catchments = project.settings, sites.catchments
+    settings, catchments, notes, curve_number = case.settings, case.sites.catchments, case.notes, case.curve_number
     maxima = annual_max_mm(weather.rain, weather.years)
     rains = design_rain_mm(maxima, return_period_years=np.array(PERIODS_YEARS))
     if not np.isnan(rains).any():
@@ -61,7 +57,7 @@ def plot_floods(
             slope_pct=slope_pct,
         )
     )
-    peaks = [_peak(sites, classes, float(rain), curve_number, hours, project) for rain in rains]
+    peaks = [_peak(case, float(rain), hours) for rain in rains]
     held = peak_flow_limits(rain_mm=rains[0], curve_number=curve_number, time_of_concentration_h=hours)
     count = int(np.count_nonzero((held.ia_over_p | held.time_of_concentration)[fed]))
     if count:
@@ -73,13 +69,11 @@ def plot_floods(
     return Floods(peaks[0], peaks[1], width)
 
 
-def _peak(
-    sites: Sites, classes: RunoffClasses, rain_mm: float, curve_number: FloatArray, hours: FloatArray, project: Project
-) -> FloatArray:
+def _peak(case: Case, rain_mm: float, hours: FloatArray) -> FloatArray:
     """Return the peak of one storm at each plot; 0 where nothing drains to it, NaN where unknown."""
-    area, ratio = sites.catchments.area_m2, project.settings.runoff.abstraction_ratio
-    by_class = sites.catchments.effective_area_m2[GROSS]
-    depth = runoff_depth_mm(rain_mm, classes.retention_mm(abstraction_ratio=ratio), abstraction_ratio=ratio)
+    area, ratio = case.sites.catchments.area_m2, case.settings.runoff.abstraction_ratio
+    by_class = case.sites.catchments.effective_area_m2[GROSS]
+    depth = runoff_depth_mm(rain_mm, case.classes.retention_mm(abstraction_ratio=ratio), abstraction_ratio=ratio)
     known = by_class.sum(axis=1)
     with np.errstate(invalid="ignore", divide="ignore"):
         runoff_mm = (by_class * depth).sum(axis=1) / known
@@ -87,8 +81,8 @@ def _peak(
         area_m2=area,
         runoff_mm=runoff_mm,
         rain_mm=rain_mm,
-        curve_number=curve_number,
+        curve_number=case.curve_number,
         time_of_concentration_h=hours,
-        rain_distribution=project.settings.runoff.rain_distribution,
+        rain_distribution=case.settings.runoff.rain_distribution,
     )
     return np.where(area > 0, peak, 0.0)

@@ -1,25 +1,23 @@
 """Results as tables: the names of the columns are those that siting.layers declares."""
 
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 import pandas as pd
 
-from siting.config import Project
 from siting.layers.codes import SOIL_GROUPS
+from siting.pipeline.case import Case
 from siting.pipeline.doubt import RankDoubt
 from siting.pipeline.floods import Floods
 from siting.pipeline.order import UNRANKED, Order
-from siting.pipeline.read import Place
-from siting.pipeline.sites import GROSS, Sites
-from siting.pipeline.soil import SoilOfPlots
-from siting.pipeline.surface import POSITION_TERMS, PlotGround
+from siting.pipeline.sites import Sites
+from siting.pipeline.surface import POSITION_TERMS
 from siting.pipeline.together import Together
-from siting.pipeline.water import MOST_UNCLASSED_SHARE, CropResults, Water, Weather
+from siting.pipeline.water import CropResults, Water
 from siting.plots import slope_margin
 from siting.ranking import dependable, reliability
-from siting.runoff import RunoffClasses
 from siting.runoff.years import SHORT_RECORD_YEARS
 from siting.tables import TEXTURES
 from siting.terrain import Terrain
@@ -36,31 +34,28 @@ STEEP_DROP_M = 2.0
 """A plot that falls more than this needs levelling in steps (our assumption)."""
 
 
-def plots_frame(
-    sites: Sites,
-    own: PlotGround,
-    soil: SoilOfPlots,
-    water: Water | None,
-    floods: Floods | None,
-    weather: Weather | None,
-    ground: Terrain,
-    place: Place,
-    curve_number: FloatArray,
-    order: Order,
-    doubt: RankDoubt | None,
-    together: Together | None,
-    project: Project,
-) -> pd.DataFrame:
+@dataclass(frozen=True, slots=True, eq=False)
+class Findings:
+    """What the later stages found; None where an input for it is missing."""
+
+    water: Water | None
+    floods: Floods | None
+    order: Order
+    doubt: RankDoubt | None
+    together: Together | None
+
+
+def plots_frame(case: Case, found: Findings) -> pd.DataFrame:
     """Give one row for each plot, in the order of plot_id; what later methods will fill is left out."""
-    catchments, plots = sites.catchments, sites.plots
+    catchments, plots, own, order, doubt = case.sites.catchments, case.sites.plots, case.own, found.order, found.doubt
     with np.errstate(invalid="ignore", divide="ignore"):
         outside, behind = (
             np.where(catchments.area_m2 > 0, 100.0 * part / catchments.area_m2, 0.0)
             for part in (catchments.outside_m2, catchments.behind_pan_m2)
         )
-    x, y = _middles(sites, ground)
+    x, y = _middles(case.sites, case.ground)
     columns: dict[str, Any] = {
-        "plot_id": sites.plot_id,
+        "plot_id": case.sites.plot_id,
         "area_m2": plots.area_m2,
         "catchment_area_m2": catchments.area_m2,
         "open_catchment": own.open_sides != 0,
@@ -71,27 +66,27 @@ def plots_frame(
         "position": _terms(own.position, POSITION_TERMS),
         "soil_group": _terms(own.soil_group, ("", *SOIL_GROUPS.values)),
         "texture": _terms(own.texture, TEXTURES),
-        "curve_number": curve_number,
-        "available_water_mm": soil.available_water_mm,
+        "curve_number": case.curve_number,
+        "available_water_mm": case.soil.available_water_mm,
         "catchment_ratio": catchments.area_m2 / plots.area_m2,
-        "catchment_outside_pct": np.full(outside.shape, np.nan) if place.inside is None else outside,
+        "catchment_outside_pct": np.full(outside.shape, np.nan) if case.place.inside is None else outside,
         "behind_pan_pct": behind,
         "plots_upstream": catchments.plots_upstream,
         "next_plot_id": _or_null(catchments.next_plot + 1, catchments.next_plot >= 0),
         "origin": list(plots.origin),
-        "given_name": [place.given_names[label - 1] if label else None for label in plots.given_label],
+        "given_name": [case.place.given_names[label - 1] if label else None for label in plots.given_label],
         "rank": _or_null(order.rank, order.rank > UNRANKED),
         "supply_rank": _or_null(order.supply_rank, order.supply_rank > UNRANKED),
         "rank_low": _rank_of_draws(None if doubt is None else doubt.ranks.rank_low, plots.count),
         "rank_high": _rank_of_draws(None if doubt is None else doubt.ranks.rank_high, plots.count),
         "score": order.score,
         **{f"score_{name}": values for name, values in order.components.items()},
-        **_set_columns(together, plots.count),
-        **_flood_columns(floods, plots.count),
-        **_water_columns(water, soil, plots.area_m2, project),
+        **_set_columns(found.together, plots.count),
+        **_flood_columns(found.floods, plots.count),
+        **_water_columns(case, found.water),
     }
     frame = pd.DataFrame(columns)
-    frame["cautions"] = _cautions(frame, sites, weather, ground, place, project)
+    frame["cautions"] = _cautions(case, frame)
     return frame.assign(x=x, y=y, open_bits=own.open_sides)
 
 
@@ -137,7 +132,7 @@ def _middles(sites: Sites, ground: Terrain) -> tuple[FloatArray, FloatArray]:
     return np.array([x for x, _ in places]), np.array([y for _, y in places])
 
 
-def _water_columns(water: Water | None, soil: SoilOfPlots, area_m2: FloatArray, project: Project) -> dict[str, Any]:
+def _water_columns(case: Case, water: Water | None) -> dict[str, Any]:
     """Return the columns that need a rain record; unknown without one."""
     if water is None:
         return {"yield_dry_m3": np.nan, "supply_ratio_dry": np.nan}
@@ -145,8 +140,8 @@ def _water_columns(water: Water | None, soil: SoilOfPlots, area_m2: FloatArray, 
     found["yield_dry_other_ratio_m3"] = water.other_yield_dry_m3
     if water.crop is None:
         return found | {"supply_ratio_dry": np.nan}
-    share, table = project.settings.ranking.dependable, water.crop.seasons
-    usable = table.usable_in_season_mm + np.minimum(table.usable_before_mm, soil.available_water_mm[:, None])
+    share, table = case.settings.ranking.dependable, water.crop.seasons
+    usable = table.usable_in_season_mm + np.minimum(table.usable_before_mm, case.soil.available_water_mm[:, None])
     demand = dependable(table.demand_mm, probability=0.5)
     dry, median = (dependable(table.supply_ratio, probability=part) for part in (share, 0.5))
     return (
@@ -157,12 +152,12 @@ def _water_columns(water: Water | None, soil: SoilOfPlots, area_m2: FloatArray, 
             "runon_dry_mm": dependable(usable, probability=share),
             "runon_median_mm": dependable(usable, probability=0.5),
             "crop_demand_mm": demand,
-            "crop_demand_m3": demand * area_m2 / 1000.0,
+            "crop_demand_m3": demand * case.sites.plots.area_m2 / 1000.0,
             "supply_ratio_dry": dry,
             "supply_ratio_median": median,
             "rain_only_ratio_dry": dependable(table.rain_only_ratio, probability=share),
         }
-        | _yield_columns(water.crop, project.settings.crop.target_yield)
+        | _yield_columns(water.crop, case.settings.crop.target_yield)
     )
 
 
@@ -185,27 +180,25 @@ def _yield_columns(crop: CropResults, target_yield: float) -> dict[str, Any]:
     }
 
 
-def _cautions(
-    frame: pd.DataFrame, sites: Sites, weather: Weather | None, ground: Terrain, place: Place, project: Project
-) -> list[str | None]:
+def _cautions(case: Case, frame: pd.DataFrame) -> list[str | None]:
     """List each plot's caution codes, `;` between them; None where there is none."""
-    limit = project.settings.plots.max_slope_pct
+    limit, weather, ground = case.settings.plots.max_slope_pct, case.weather, case.ground
     doubt = 100.0 * slope_margin(ground.vertical_error_m, ground.grid.typical_cell_m)
     everywhere = np.ones(len(frame), dtype=np.bool_)
     held = {
         "open_catchment": frame["open_catchment"],
         "short_record": everywhere & (weather is not None and weather.years.labels.size < SHORT_RECORD_YEARS),
         "rain_trend": everywhere & (weather is not None and weather.rain_trend),
-        "coarse_cells": everywhere & sites.plots.coarse_cells,
+        "coarse_cells": everywhere & case.sites.plots.coarse_cells,
         "marginal_slope": (frame["slope_pct"] - limit).abs() < doubt,
-        "channel_in_plot": sites.channel_in_plot,
+        "channel_in_plot": case.sites.channel_in_plot,
         "doubtful_pan": frame["behind_pan_pct"] > 0,
         "outside_boundary": frame["catchment_outside_pct"] > 0,
         "large_catchment": frame["catchment_area_m2"] > LARGE_CATCHMENT_M2,
         "flood": frame["peak_flow_10y_m3s"] > FLOOD_M3S,
-        "standing_water": _standing(frame) > project.settings.crop.standing_water_days,
+        "standing_water": _standing(frame) > case.settings.crop.standing_water_days,
         "steep_drop": frame["drop_m"] > STEEP_DROP_M,
-        "no_exclusions": everywhere & (place.excluded is None),
+        "no_exclusions": everywhere & (case.place.excluded is None),
         "no_runon_in_dry_year": frame["yield_dry_m3"] == 0,
         "takes_from_below": frame["next_plot_id"].notna(),
     }
@@ -219,20 +212,6 @@ def _standing(frame: pd.DataFrame) -> npt.NDArray[np.int64]:
     if "standing_water_days" not in frame:
         return np.zeros(len(frame), dtype=np.int64)
     return frame["standing_water_days"].fillna(0).to_numpy(dtype=np.int64)
-
-
-def mean_curve_number(sites: Sites, classes: RunoffClasses) -> FloatArray:
-    """
-    Return the area-weighted curve number of each catchment, for orientation, lag and Ia/P; runoff goes by class.
-
-    A class with an observed threshold has the number that gives it; NaN where much of the catchment has no class.
-    """
-    area = sites.catchments.effective_area_m2[GROSS]
-    number = 25_400.0 / (254.0 + classes.retention_mm(abstraction_ratio=0.2))
-    with np.errstate(invalid="ignore", divide="ignore"):
-        mean = (area * number).sum(axis=1) / area.sum(axis=1)
-    unknown = sites.catchments.unclassed_m2 > MOST_UNCLASSED_SHARE * sites.catchments.area_m2
-    return np.where(unknown, np.nan, mean)
 
 
 def seasons_frame(sites: Sites, crop: CropResults) -> pd.DataFrame:

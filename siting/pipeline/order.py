@@ -5,17 +5,13 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from siting.config import Project
-from siting.notes import Notes
+from siting.pipeline.case import Case
 from siting.pipeline.floods import Floods
-from siting.pipeline.sites import Sites
-from siting.pipeline.soil import SoilOfPlots
-from siting.pipeline.surface import PlotGround
-from siting.pipeline.water import CropResults, Water, Weather
+from siting.pipeline.water import CropResults, Water
+from siting.pipeline.weather import Weather
 from siting.plots import plot_means
 from siting.ranking import dependable, mean_capped_ratio, reliability, supply_order
 from siting.ranking.score import COMPONENTS, Components, score, score_components, score_order
-from siting.terrain import Terrain
 
 FloatArray = npt.NDArray[np.float64]
 Integers = npt.NDArray[np.int64]
@@ -34,43 +30,33 @@ class Order:
     follows_score: bool
 
 
-def order_plots(
-    sites: Sites,
-    own: PlotGround,
-    soil: SoilOfPlots,
-    water: Water | None,
-    floods: Floods | None,
-    weather: Weather | None,
-    ground: Terrain,
-    project: Project,
-    notes: Notes,
-) -> Order:
+def order_plots(case: Case, water: Water | None, floods: Floods | None) -> Order:
     """Rank the plots whose water is known, by supply and, as the settings say, by score."""
-    count = sites.plots.count
+    count = case.sites.plots.count
     unknown = np.full(count, np.nan)
     nothing = Order(np.zeros(count, np.int64), np.zeros(count, np.int64), unknown, dict.fromkeys(COMPONENTS, unknown), False)
-    if water is None or water.crop is None or floods is None or weather is None:
+    if water is None or water.crop is None or floods is None or case.weather is None:
         return nothing
-    by_supply, known = _supply_rank(water.crop, floods, sites, project.settings.ranking.dependable)
-    parts = _components(sites, own, soil, water.crop, floods, weather, ground, project)
+    by_supply, known = _supply_rank(case, water.crop, floods)
+    parts = _components(case, case.weather, water.crop, floods)
     judged = known & ~np.isnan(parts.water)
-    weights = {name: getattr(project.settings.ranking, f"weight_{name}") for name in COMPONENTS}
+    weights = {name: getattr(case.settings.ranking, f"weight_{name}") for name in COMPONENTS}
     of_known = Components(**{name: getattr(parts, name)[judged] for name in COMPONENTS})
     found = score(of_known, weights)
     if found.left_out and judged.any():
-        notes.warn("score_without", f"The score leaves out {', '.join(found.left_out)}: unknown for some or all plots.")
+        case.notes.warn("score_without", f"The score leaves out {', '.join(found.left_out)}: unknown for some or all plots.")
     by_score = np.zeros(count, dtype=np.int64)
     by_score[judged] = score_order(found.score, by_supply[judged])
     total = unknown.copy()
     total[judged] = found.score
-    follows_score = project.settings.ranking.order == "score" and "water" in found.used
+    follows_score = case.settings.ranking.order == "score" and "water" in found.used
     components = {name: getattr(parts, name) if name in found.used else unknown for name in COMPONENTS}
     return Order(by_supply, by_score if follows_score else by_supply, total, components, follows_score)
 
 
-def _supply_rank(crop: CropResults, floods: Floods, sites: Sites, share: float) -> tuple[Integers, npt.NDArray[np.bool_]]:
+def _supply_rank(case: Case, crop: CropResults, floods: Floods) -> tuple[Integers, npt.NDArray[np.bool_]]:
     """Rank by supply; also tell which plots have a season whose supply is known."""
-    table = crop.seasons
+    table, share = crop.seasons, case.settings.ranking.dependable
     mean = mean_capped_ratio(table.supply_ratio)
     known = ~np.isnan(mean)
     rank = supply_order(
@@ -79,23 +65,14 @@ def _supply_rank(crop: CropResults, floods: Floods, sites: Sites, share: float) 
         supply_ratio_mean=mean,
         gain=mean - mean_capped_ratio(table.rain_only_ratio),
         peak_flow_10y_m3s=floods.peak_10y_m3s,
-        plot_id=sites.plot_id,
+        plot_id=case.sites.plot_id,
     )
     return np.where(known, rank, UNRANKED), known
 
 
-def _components(
-    sites: Sites,
-    own: PlotGround,
-    soil: SoilOfPlots,
-    crop: CropResults,
-    floods: Floods,
-    weather: Weather,
-    ground: Terrain,
-    project: Project,
-) -> Components:
-    settings, catchments = project.settings, sites.catchments
-    height = plot_means(sites.cells, ground.elevation, ground.grid.cell_area_m2)
+def _components(case: Case, weather: Weather, crop: CropResults, floods: Floods) -> Components:
+    settings, catchments, ground = case.settings, case.sites.catchments, case.ground
+    height = plot_means(case.sites.cells, ground.elevation, ground.grid.cell_area_m2)
     relief = np.where(catchments.area_m2 > 0, np.maximum(catchments.highest_m - height, 0.0), 0.0)
     standing = crop.yields.standing_water_days
     worst = np.where(np.isnan(standing).any(axis=1), np.nan, np.nan_to_num(standing).max(axis=1))
@@ -103,12 +80,12 @@ def _components(
         reliability=reliability(crop.yields.relative_yield, target_yield=settings.crop.target_yield).share,
         mean_yield=crop.yields.relative_yield.mean(axis=1),
         rain_only_mean_yield=crop.rain_alone.relative_yield.mean(axis=1),
-        available_water_mm=soil.available_water_mm,
-        slope=100.0 * own.slope,
+        available_water_mm=case.soil.available_water_mm,
+        slope=100.0 * case.own.slope,
         max_slope=settings.plots.max_slope_pct,
         peak_flow_10y_m3s=floods.peak_10y_m3s,
         standing_water_days=worst,
-        open_catchment=own.open_sides != 0,
+        open_catchment=case.own.open_sides != 0,
         rain_years=int(weather.years.labels.size),
         catchment_relief_m=relief,
         vertical_error_m=ground.vertical_error_m,

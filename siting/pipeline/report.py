@@ -10,7 +10,7 @@ from siting.notes import Notes
 from siting.pipeline.crop import CropChoice, choose_crop
 from siting.pipeline.forecast import forecast
 from siting.pipeline.read import Place, read_place
-from siting.pipeline.water import Weather, weather_of
+from siting.pipeline.weather import Weather, weather_of
 from siting.ranking import dependable
 from siting.runoff import RunoffClasses, classify, yearly_totals
 from siting.tables import TEXTURES

@@ -8,10 +8,9 @@ import pandas as pd
 
 from siting.layers.cautions import GENERAL_CAUTIONS, NO_EXCLUSIONS_CAUTION
 from siting.layers.codes import WHY_NOT
-from siting.notes import Assumption, Notes, Warned
+from siting.notes import Assumption, Warned
+from siting.pipeline.case import Case
 from siting.pipeline.doubt import RankDoubt, told_swaps
-from siting.pipeline.read import Place
-from siting.pipeline.sites import Sites
 from siting.pipeline.write import GEOPACKAGE, plain_table
 
 SHOWN = (
@@ -50,19 +49,17 @@ class Results:
     warnings: tuple[Warned, ...]
 
 
-def summarise(
-    frame: pd.DataFrame, sites: Sites, place: Place, doubt: RankDoubt | None, notes: Notes, folder_name: str
-) -> dict[str, Any]:
+def summarise(frame: pd.DataFrame, case: Case, doubt: RankDoubt | None, folder_name: str) -> dict[str, Any]:
     """Sum up a run for a screen or a program; the seconds are added at its end."""
-    counts = np.bincount(sites.plots.reason.ravel(), minlength=len(WHY_NOT.items))
-    cautions = GENERAL_CAUTIONS if place.excluded is not None else (*GENERAL_CAUTIONS, NO_EXCLUSIONS_CAUTION)
+    counts = np.bincount(case.sites.plots.reason.ravel(), minlength=len(WHY_NOT.items))
+    cautions = GENERAL_CAUTIONS if case.place.excluded is not None else (*GENERAL_CAUTIONS, NO_EXCLUSIONS_CAUTION)
     return {
         "plots": plain_table(frame, SHOWN),
-        "n_plots": sites.plots.count,
+        "n_plots": case.sites.plots.count,
         "swaps_by_supply": [] if doubt is None else told_swaps(doubt.swaps),
         "cells": {item.label: int(counts[int(item.value)]) for item in WHY_NOT.items},
-        "assumptions": sorted(notes.assumptions, key=_importance),
-        "warnings": [{"code": one.code, "text": one.text} for one in notes.warnings],
+        "assumptions": sorted(case.notes.assumptions, key=_importance),
+        "warnings": [{"code": one.code, "text": one.text} for one in case.notes.warnings],
         "cautions_text": list(cautions),
         "folder": folder_name,
         "first_file": GEOPACKAGE,

@@ -28,6 +28,9 @@ from siting.terrain import Terrain
 WITH_LOSSES, GROSS = 0, 1
 """Places of the effective areas: with the loss on the way in use, and without any."""
 
+MOST_UNCLASSED_SHARE = 0.05
+"""With more of its catchment without a curve number a plot's run-on is unknown (our assumption)."""
+
 DRAWN_LOSSES = (0.1, 0.2, 0.3, 0.5, 0.8)
 """Losses between which the draws of the doubt lie, 1/km: areas are summed once, and no draw routes again."""
 
@@ -164,3 +167,21 @@ def _tell_given(name: str, reasons: npt.NDArray[np.uint8], notes: Notes) -> None
     ]
     fit = 100 * counts[0] / reasons.size
     notes.warn("given_plot", f"Of the given plot {name!r}, {fit:.0f} % can be cropped by the rules; {', '.join(parts)}.")
+
+
+def poorly_classed(catchments: Catchments) -> npt.NDArray[np.bool_]:
+    """Tell of which plots too much of the catchment has no curve number."""
+    return np.asarray(catchments.unclassed_m2 > MOST_UNCLASSED_SHARE * catchments.area_m2)
+
+
+def mean_curve_number(sites: Sites, classes: RunoffClasses) -> npt.NDArray[np.float64]:
+    """
+    Return the area-weighted curve number of each catchment, for orientation, lag and Ia/P; runoff goes by class.
+
+    A class with an observed threshold has the number that gives it; NaN where much of the catchment has no class.
+    """
+    area = sites.catchments.effective_area_m2[GROSS]
+    number = 25_400.0 / (254.0 + classes.retention_mm(abstraction_ratio=0.2))
+    with np.errstate(invalid="ignore", divide="ignore"):
+        mean = (area * number).sum(axis=1) / area.sum(axis=1)
+    return np.where(poorly_classed(sites.catchments), np.nan, mean)

@@ -11,21 +11,23 @@ from siting.notes import Notes
 from siting.outputs import StagedFolder
 from siting.parallel import usable_threads
 from siting.pipeline import frames, shapes, write
+from siting.pipeline.case import Case
 from siting.pipeline.clock import Clock
 from siting.pipeline.crop import choose_crop
 from siting.pipeline.doubt import doubt_ranks
 from siting.pipeline.downstream import ledger, places_below, village_channels
 from siting.pipeline.floods import plot_floods
 from siting.pipeline.forecast import refuse_what_does_not_fit
-from siting.pipeline.order import order_plots
+from siting.pipeline.order import Order, order_plots
 from siting.pipeline.read import Place, read_place
 from siting.pipeline.results import Results, summarise
-from siting.pipeline.sites import Sites, find_sites
+from siting.pipeline.sites import find_sites, mean_curve_number
 from siting.pipeline.soil import soil_of_plots
 from siting.pipeline.surface import plot_ground
-from siting.pipeline.together import choose_together
+from siting.pipeline.together import Together, choose_together
 from siting.pipeline.villages import village_cells, villages_layer
-from siting.pipeline.water import Water, plot_water, weather_of
+from siting.pipeline.water import Water, plot_water
+from siting.pipeline.weather import weather_of
 from siting.progress import Progress
 from siting.runoff import RunoffClasses, classify
 from siting.terrain import Terrain, analyse
@@ -39,56 +41,62 @@ def run(project: Project, *, out: Path, overwrite: bool, threads: int | None, pr
     notes, clock, workers = Notes(), Clock(progress), usable_threads(threads)
     refuse_what_does_not_fit(project.settings.place.dem, out)
     with StagedFolder(out, overwrite=overwrite) as folder:
-        with clock.stage("inputs"):
-            place = read_place(project, notes)
-            note_defaults(project, notes)
-            crop = choose_crop(project, place.climate, notes)
-            weather = weather_of(place, project, crop, float(np.nanmean(place.dem.values)), notes)
-        with clock.stage("terrain"):
-            ground = analyse_terrain(place, project, workers, progress, notes)
-        with clock.stage("runoff classes"):
-            classes = runoff_classes(place, ground, project, notes)
-        with clock.stage("plots"):
-            sites = find_sites(place, ground, classes, project, notes)
+        case = _case(project, notes, clock, workers)
         with clock.stage("water"):
-            own = plot_ground(sites, place, ground)
-            soil = soil_of_plots(own.texture, own.drop_m, project, crop, notes)
-            number = frames.mean_curve_number(sites, classes)
             water = floods = None
-            if weather is not None and sites.plots.count:
-                water = plot_water(sites, classes, weather, soil, project, workers, notes)
-                floods = plot_floods(sites, classes, number, weather, project, notes)
+            if case.weather is not None and case.sites.plots.count:
+                water, floods = plot_water(case, case.weather), plot_floods(case, case.weather)
         with clock.stage("ranking"):
-            order = order_plots(sites, own, soil, water, floods, weather, ground, project, notes)
-            doubt = doubt_ranks(sites, own, soil, classes, water, floods, weather, order, project, workers, notes)
+            order = order_plots(case, water, floods)
+            doubt = doubt_ranks(case, water, floods, order)
         with clock.stage("together"):
-            cells = village_cells(place, ground)
-            below = None
-            if weather is not None and water is not None:
-                channels = village_channels(cells.cell, cells.village, cells.count, ground)
-                below = places_below(sites, place, channels, ground, classes, weather, project)
-            together = choose_together(sites, water, order, below, project)
-            lost = None
-            if together is not None and below is not None and water is not None:
-                lost = ledger(below, together.forest, together.chosen, water, sites, cells.count, project)
-            chosen = None if together is None else together.chosen
-            villages = villages_layer(place, cells, sites, ground, water, order, chosen, lost, project, workers, notes)
-            frame = frames.plots_frame(
-                sites, own, soil, water, floods, weather, ground, place, number, order, doubt, together, project
-            )
-        summary = summarise(frame, sites, place, doubt, notes, str(out))
+            together, tables = _together(case, water, order)
+        found = frames.Findings(water, floods, order, doubt, together)
+        frame = frames.plots_frame(case, found)
+        summary = summarise(frame, case, doubt, str(out))
         with clock.stage("layers"):
-            tables = _tables(frame, sites, ground, place, water)
-            tables |= {"villages": villages, "downstream": None if lost is None else lost.table}
-            tables |= write.notes_tables(notes, write.run_info(project, place, sites, weather, together))
-            write.write_layers(folder, tables, ground.grid.crs, ground)
+            tables |= _tables(frame, case, water)
+            tables |= write.notes_tables(notes, write.run_info(case, together))
+            write.write_layers(folder, tables, case.ground)
         if project.settings.output.rasters:
             with clock.stage("rasters"):
-                write.write_rasters(
-                    folder / "rasters", ground, sites, classes, weather, place.curve_number, project, workers, progress
-                )
-        write.write_record(folder, project, notes, clock, workers, summary)
+                write.write_rasters(folder / "rasters", case, progress)
+        write.write_record(folder, case, clock, summary)
     return Results(summary | {"seconds": clock.total_seconds}, tuple(notes.warnings))
+
+
+def _case(project: Project, notes: Notes, clock: Clock, threads: int) -> Case:
+    """Read a project, and find its plots and what drains onto them."""
+    with clock.stage("inputs"):
+        place = read_place(project, notes)
+        note_defaults(project, notes)
+        crop = choose_crop(project, place.climate, notes)
+        weather = weather_of(place, project, crop, float(np.nanmean(place.dem.values)), notes)
+    with clock.stage("terrain"):
+        ground = analyse_terrain(place, project, threads, clock.progress, notes)
+    with clock.stage("runoff classes"):
+        classes = runoff_classes(place, ground, project, notes)
+    with clock.stage("plots"):
+        sites = find_sites(place, ground, classes, project, notes)
+        own = plot_ground(sites, place, ground)
+        soil = soil_of_plots(own.texture, own.drop_m, project, crop, notes)
+        number = mean_curve_number(sites, classes)
+    return Case(project, notes, threads, place, weather, ground, classes, sites, own, soil, number)
+
+
+def _together(case: Case, water: Water | None, order: Order) -> tuple[Together | None, dict[str, Any]]:
+    """Choose the set, and tell what it means to villages and to all below; the tables of both come with it."""
+    cells = village_cells(case.place, case.ground)
+    below = None
+    if case.weather is not None and water is not None:
+        channels = village_channels(cells.cell, cells.village, cells.count, case.ground)
+        below = places_below(case, case.weather, channels)
+    together = choose_together(case, water, order, below)
+    if together is None or below is None or water is None:
+        return None, {"villages": villages_layer(case, cells, water, order, None, None)}
+    lost = ledger(case, water, below, together.forest, together.chosen, cells.count)
+    villages = villages_layer(case, cells, water, order, together.chosen, lost)
+    return together, {"villages": villages, "downstream": lost.table}
 
 
 def analyse_terrain(place: Place, project: Project, threads: int, progress: Progress, notes: Notes) -> Terrain:
@@ -147,16 +155,16 @@ def runoff_classes(place: Place, ground: Terrain, project: Project, notes: Notes
     return classes
 
 
-def _tables(frame: pd.DataFrame, sites: Sites, ground: Terrain, place: Place, water: Water | None) -> dict[str, Any]:
-    """Return every layer and table that holds rows; the writer adds those that hold none."""
+def _tables(frame: pd.DataFrame, case: Case, water: Water | None) -> dict[str, Any]:
+    """Return every layer and table of plots and ground that holds rows; the writer adds those that hold none."""
     tables: dict[str, Any] = {
-        "plots": shapes.plots_layer(frame, sites, ground),
-        "catchments": shapes.catchments_layer(frame, sites, ground),
-        "intakes": shapes.intakes_layer(sites, ground),
-        "overflow_paths": shapes.overflow_layer(sites, ground, place),
-        "channels": shapes.channels_layer(ground),
-        "pans": shapes.pans_layer(ground),
+        "plots": shapes.plots_layer(frame, case.sites, case.ground),
+        "catchments": shapes.catchments_layer(frame, case.sites, case.ground),
+        "intakes": shapes.intakes_layer(case.sites, case.ground),
+        "overflow_paths": shapes.overflow_layer(case.sites, case.ground, case.place),
+        "channels": shapes.channels_layer(case.ground),
+        "pans": shapes.pans_layer(case.ground),
     }
     if water is not None and water.crop is not None:
-        tables["seasons"] = frames.seasons_frame(sites, water.crop)
+        tables["seasons"] = frames.seasons_frame(case.sites, water.crop)
     return tables

@@ -5,7 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from siting.config import Project
+from siting.pipeline.case import Case
 from siting.pipeline.downstream import VILLAGE, Below
 from siting.pipeline.order import Order
 from siting.pipeline.sites import Sites
@@ -24,13 +24,11 @@ class Together:
     set_yield_median_m3: FloatArray
 
 
-def choose_together(
-    sites: Sites, water: Water | None, order: Order, below: Below | None, project: Project
-) -> Together | None:
+def choose_together(case: Case, water: Water | None, order: Order, below: Below | None) -> Together | None:
     """Choose the set by the score of its plots and the water that those above leave; None without a score."""
     if water is None or below is None or np.isnan(order.score).all():
         return None
-    settings, catchments = project.settings, sites.catchments
+    settings, catchments = case.settings, case.sites.catchments
     loss_per_m = settings.runoff.conveyance_loss_per_km / 1000.0
     passing = np.where(catchments.next_plot >= 0, np.exp(-loss_per_m * catchments.next_distance_m), 1.0)
     forest = PlotForest(catchments.next_plot, passing)
@@ -40,7 +38,7 @@ def choose_together(
         room_m3=water.room_m3,
         worth=order.score,
         rank=order.rank,
-        plot_area_m2=sites.plots.area_m2,
+        plot_area_m2=case.sites.plots.area_m2,
         most_area_m2=settings.ranking.set_area_m2,
         most_plots=settings.ranking.set_plots,
         guard=_guard(below, settings.villages.most_lost_pct),

@@ -7,15 +7,13 @@ import numpy as np
 import numpy.typing as npt
 import pandas as pd
 
-from siting.config import Project
 from siting.inputs import cells_of_shapes
 from siting.layers import layer
-from siting.notes import Notes
+from siting.pipeline.case import Case
 from siting.pipeline.downstream import Ledger
 from siting.pipeline.order import Order
 from siting.pipeline.read import Place
-from siting.pipeline.sites import Sites
-from siting.pipeline.water import Water
+from siting.pipeline.water import CropResults, Water
 from siting.ranking import ChosenSet, VillageRanks, dependable, rank_villages
 from siting.terrain import Terrain
 from siting.terrain.walking import WALKING_CELL_M, walks
@@ -55,30 +53,21 @@ def village_cells(place: Place, ground: Terrain) -> VillageCells:
 
 
 def villages_layer(
-    place: Place,
-    cells: VillageCells,
-    sites: Sites,
-    ground: Terrain,
-    water: Water | None,
-    order: Order,
-    chosen: ChosenSet | None,
-    lost: Ledger | None,
-    project: Project,
-    threads: int,
-    notes: Notes,
+    case: Case, cells: VillageCells, water: Water | None, order: Order, chosen: ChosenSet | None, lost: Ledger | None
 ) -> gpd.GeoDataFrame | None:
     """Rank the villages by the area that the set supports for each person; their own columns stand first."""
-    if place.villages is None:
+    villages = case.place.villages
+    if villages is None:
         return None
     own = {column.name for column in layer("villages").columns}
-    found = place.villages.rename(columns={name: f"given_{name}" for name in place.villages.columns if name in own})
+    found = villages.rename(columns={name: f"given_{name}" for name in villages.columns if name in own})
     found = found.assign(village_id=np.arange(1, cells.count + 1))
     if water is None or water.crop is None or chosen is None or lost is None:
         return found.assign(status="unknown", reason=NOT_RANKED)
-    _warn_of_losses(place.villages, lost, project, notes)
-    people = _people(place.villages, project, notes)
-    ranks = _ranks(cells, sites, ground, water, order, chosen, people, project, threads, notes)
-    per_person = ranks.supported_dry_m2_per_person if project.settings.villages.people else np.full(cells.count, np.nan)
+    _warn_of_losses(case, villages, lost)
+    supported = _supported_dry_m2(case, water, water.crop, chosen)
+    ranks = _ranks(case, cells, order, chosen, _people(case, villages), supported)
+    per_person = ranks.supported_dry_m2_per_person if case.settings.villages.people else np.full(cells.count, np.nan)
     return found.assign(
         rank=_whole(ranks.rank),
         rank_low=ranks.rank_low,
@@ -95,16 +84,16 @@ def villages_layer(
     )
 
 
-def _warn_of_losses(villages: gpd.GeoDataFrame, lost: Ledger, project: Project, notes: Notes) -> None:
+def _warn_of_losses(case: Case, villages: gpd.GeoDataFrame, lost: Ledger) -> None:
     """Name the villages from which the set would take much of what they have in a dry year."""
     most = lost.village_dry_pct
     hit = np.flatnonzero(np.nan_to_num(most) > MUCH_LOST_PCT)
     if hit.size:
-        names = villages[project.settings.villages.name].astype(str).to_numpy()
+        names = villages[case.settings.villages.name].astype(str).to_numpy()
         told = ", ".join(
             f"{names[village]} ({most[village]:.0f} %)" for village in hit[np.argsort(-most[hit], kind="stable")]
         )
-        notes.warn(
+        case.notes.warn(
             "village_loses",
             f"The set would take more than {MUCH_LOST_PCT:g} % of the dry year's water in the nearest channel from: {told}. "
             "Ask first; villages.most_lost_pct sets a limit.",
@@ -117,28 +106,25 @@ def _whole(values: FloatArray) -> "pd.Series[int]":
     return numbers.where(pd.Series(known))
 
 
-def _people(villages: gpd.GeoDataFrame, project: Project, notes: Notes) -> FloatArray:
+def _people(case: Case, villages: gpd.GeoDataFrame) -> FloatArray:
     """Return the number of people by village, NaN unknown; one each where no column is named, so that area alone ranks."""
-    column = project.settings.villages.people
+    column = case.settings.villages.people
     if column is None:
-        notes.warn("no_people", "No column of people is named: villages are ranked by their area in all, not per person.")
+        case.notes.warn("no_people", "No column of people is named: villages are ranked by area in all, not per person.")
         return np.ones(len(villages))
     return np.asarray(pd.to_numeric(villages[column], errors="coerce"), dtype=np.float64)
 
 
 def _ranks(
+    case: Case,
     cells: VillageCells,
-    sites: Sites,
-    ground: Terrain,
-    water: Water,
     order: Order,
     chosen: ChosenSet,
     people: FloatArray,
-    project: Project,
-    threads: int,
-    notes: Notes,
+    supported_dry_m2: FloatArray,
 ) -> VillageRanks:
-    walk_km = project.settings.villages.walk_km
+    """Walk from every village to the plots in its reach, and rank."""
+    walk_km, ground, sites = case.settings.villages.walk_km, case.ground, case.sites
     found = walks(
         ground.elevation,
         start_cell=cells.cell,
@@ -149,13 +135,10 @@ def _ranks(
         reach_m=1000.0 * walk_km,
         cell_width_m=ground.grid.cell_width_m,
         cell_height_m=ground.grid.cell_height_m,
-        threads=threads,
+        threads=case.threads,
     )
     source = f"Tobler (1993), there and back, over cells of {WALKING_CELL_M:g} m or more"
-    notes.assume("villages.walking", f"{walk_km:g} km of level ground", "", source, "which plots a village reaches")
-    supported = _supported_dry_m2(sites, water, chosen, project)
-    source = "assumption: its area x the supply ratio (at most 1) x the share of its water that the set leaves, dry year"
-    notes.assume("villages.supported_area", "of each plot of the set", "m2", source, "the order of villages")
+    case.notes.assume("villages.walking", f"{walk_km:g} km of level ground", "", source, "which plots a village reaches")
     return rank_villages(
         village=found.start,
         plot=found.goal,
@@ -164,18 +147,19 @@ def _ranks(
         located=cells.located,
         people=people,
         in_set=chosen.order > 0,
-        supported_dry_m2=supported,
+        supported_dry_m2=supported_dry_m2,
         plot_area_m2=sites.plots.area_m2,
         plot_rank=np.where(order.rank > 0, order.rank, order.rank.size + 1),
     )
 
 
-def _supported_dry_m2(sites: Sites, water: Water, chosen: ChosenSet, project: Project) -> FloatArray:
+def _supported_dry_m2(case: Case, water: Water, crop: CropResults, chosen: ChosenSet) -> FloatArray:
     """Return the area that each plot supports in the dependable year on the water that the set leaves it; NaN unknown."""
-    assert water.crop is not None  # the caller has asked
-    share = project.settings.ranking.dependable
-    ratio = np.minimum(dependable(water.crop.seasons.supply_ratio, probability=share), 1.0)
+    source = "assumption: its area x the supply ratio (at most 1) x the share of its water that the set leaves, dry year"
+    case.notes.assume("villages.supported_area", "of each plot of the set", "m2", source, "the order of villages")
+    share = case.settings.ranking.dependable
+    ratio = np.minimum(dependable(crop.seasons.supply_ratio, probability=share), 1.0)
     alone = dependable(np.minimum(water.yearly_m3, water.room_m3), probability=share)
     taken = dependable(chosen.taken_m3, probability=share)
     left = np.divide(taken, alone, out=np.zeros_like(alone), where=alone > 0)
-    return np.where(np.isnan(ratio) | np.isnan(alone), np.nan, sites.plots.area_m2 * ratio * left)
+    return np.where(np.isnan(ratio) | np.isnan(alone), np.nan, case.sites.plots.area_m2 * ratio * left)

@@ -1,35 +1,21 @@
 """From ground above each plot to its water by year and by season, and to yields, a few plots at a time."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass, fields, replace
+from dataclasses import dataclass, fields
 from functools import partial
 from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 
-from siting.config import Project
-from siting.demand import (
-    CropRecord,
-    FieldRules,
-    Seasons,
-    SeasonTable,
-    SeasonYields,
-    complete_seasons,
-    daily_balance,
-    reference_et_daily,
-    seasonal_supply,
-    sowing_seasons,
-)
-from siting.notes import Notes
+from siting.demand import CropRecord, SeasonTable, SeasonYields, daily_balance, seasonal_supply
 from siting.parallel import run_all
-from siting.pipeline.crop import CropChoice
-from siting.pipeline.read import Place
-from siting.pipeline.sites import WITH_LOSSES, Sites
-from siting.pipeline.soil import SoilOfPlots
+from siting.pipeline.case import Case
+from siting.pipeline.sites import MOST_UNCLASSED_SHARE, WITH_LOSSES, poorly_classed
+from siting.pipeline.weather import Weather
 from siting.plots import Catchments
 from siting.ranking import SufficientRatio, SupportedArea, dependable, sufficient_ratio, supported_area
-from siting.runoff import Rain, RunoffClasses, Years, class_runoff_mm, delivered_m3, hydrological_years, yearly_totals
+from siting.runoff import class_runoff_mm, delivered_m3, yearly_totals
 
 FloatArray = npt.NDArray[np.float64]
 
@@ -38,33 +24,6 @@ OTHER_RATIO = {0.2: 0.05, 0.05: 0.2}
 
 PLOTS_AT_ONCE = 64
 """Plots whose daily run-on is held in memory together (13 000 days take 6.6 MB)."""
-
-MOST_UNCLASSED_SHARE = 0.05
-"""With more of its catchment without a curve number a plot's run-on is unknown (our assumption)."""
-
-TREND_YEARS, TREND_SHARE = 15, 0.1
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class Weather:
-    """
-    Rain and reference ET (mm, NaN unknown) on the days of the record, its years, and what the crop makes of them.
-
-    `record` holds the crop's seasons, None without a crop.
-    """
-
-    rain: Rain
-    et0_mm: FloatArray
-    years: Years
-    record: CropRecord | None
-    rain_trend: bool
-
-    @property
-    def fixed_seasons(self) -> Seasons:
-        """Seasons of the seasonal method: within a sowing window it counts from the first day."""
-        assert self.record is not None  # there is a crop
-        seasons = self.record.seasons
-        return replace(seasons, end=seasons.sowing + sum(self.record.crop.stage_days))
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -96,84 +55,19 @@ class CropResults:
     supported: SupportedArea
 
 
-def weather_of(place: Place, project: Project, crop: CropChoice | None, altitude_m: float, notes: Notes) -> Weather | None:
-    """Bring rain, ET, years and seasons together; None without a rain record."""
-    if place.rain is None:
-        notes.warn("no_rain", "No rain record is given: all that needs years of rain is unknown, and plots are not ranked.")
-        return None
-    settings, rain = project.settings, place.rain
-    years = hydrological_years(
-        rain, starts_month=settings.rain.year_starts, max_missing=settings.rain.max_missing_share, notes=notes
-    )
-    et0_mm = reference_et_daily(
-        place.climate,
-        days=rain.days,
-        latitude_deg=_latitude(place, settings.climate.latitude, notes),
-        altitude_m=altitude_m,
-        monthly_mm_per_day=settings.climate.reference_et,
-        notes=notes,
-    )
-    if np.isnan(et0_mm).all():
-        text = "Neither climate.daily nor climate.reference_et is given: the crop's demand is unknown."
-        notes.warn("no_reference_et", text)
-    record = None if crop is None else _crop_record(rain, et0_mm, crop, project, notes)
-    return Weather(rain, et0_mm, years, record, _rain_trend(rain, years, settings.ranking.dependable, notes))
-
-
-def _crop_record(rain: Rain, et0_mm: FloatArray, crop: CropChoice, project: Project, notes: Notes) -> CropRecord:
-    settings = project.settings
-    found = sowing_seasons(rain.days, planting=crop.planting, crop=crop.water)
-    missing = np.isnan(rain.rain_mm)
-    seasons = complete_seasons(found, missing=missing, max_missing=settings.rain.max_missing_share, notes=notes)
-    field = FieldRules(settings.plots.event_hours, settings.crop.standing_water_days)
-    return CropRecord(rain.days, rain.as_dry_mm, et0_mm, seasons, crop.water, crop.planting, field)
-
-
-def _latitude(place: Place, given: float | None, notes: Notes) -> float:
-    if given is not None:
-        return given
-    latitude = place.middle_lonlat[1]
-    notes.assume(
-        "climate.latitude", f"{latitude:.3f}", "degree", "middle of the elevation model", "reference ET from temperature"
-    )
-    return latitude
-
-
-def _rain_trend(rain: Rain, years: Years, share: float, notes: Notes) -> bool:
-    """Tell whether the dependable rain of the last 15 years is more than 10 % off that of all; unknown is no."""
-    totals = yearly_totals(rain.as_dry_mm, rain.days, years)
-    if totals.size <= TREND_YEARS:
-        return False
-    whole, late = (float(dependable(part, probability=share)) for part in (totals, totals[-TREND_YEARS:]))
-    changed = abs(late - whole) > TREND_SHARE * whole
-    if changed:
-        text = f"Rain reached in {100 * share:.0f} % of years is {late:.0f} mm in the last {TREND_YEARS} years, "
-        text += f"{whole:.0f} mm in all."
-        notes.warn("rain_trend", text)
-    return changed
-
-
-def plot_water(
-    sites: Sites,
-    classes: RunoffClasses,
-    weather: Weather,
-    soil: SoilOfPlots,
-    project: Project,
-    threads: int,
-    notes: Notes,
-) -> Water:
+def plot_water(case: Case, weather: Weather) -> Water:
     """Simulate each plot's run-on over the whole record, under both abstraction ratios, and what a crop makes of it."""
-    used, share = project.settings.runoff.abstraction_ratio, project.settings.ranking.dependable
+    used, share = case.settings.runoff.abstraction_ratio, case.settings.ranking.dependable
     other = OTHER_RATIO[used]
-    work = _Simulation(sites, weather, soil, project, _known_area(sites, classes, notes))
-    starts = range(0, sites.plots.count, PLOTS_AT_ONCE)
+    work = _Simulation(case, weather, _known_area(case))
+    starts = range(0, case.sites.plots.count, PLOTS_AT_ONCE)
     parts = {}
     for ratio in (used, other):
         runoff = np.zeros((1, weather.rain.days.size))
-        if classes.count:
-            runoff = class_runoff_mm(weather.rain.as_dry_mm, classes, abstraction_ratio=ratio)
+        if case.classes.count:
+            runoff = class_runoff_mm(weather.rain.as_dry_mm, case.classes, abstraction_ratio=ratio)
         some = partial(work.some_plots, runoff, with_yields=ratio == used)
-        parts[ratio] = run_all(some, [(slice(start, start + PLOTS_AT_ONCE),) for start in starts], threads)
+        parts[ratio] = run_all(some, [(slice(start, start + PLOTS_AT_ONCE),) for start in starts], case.threads)
     yearly, room = (np.concatenate([getattr(part, name) for part in parts[used]]) for name in ("yearly_m3", "room_m3"))
     shares = {"dry": share, "median": 0.5, "wet": 1.0 - share}
     return Water(
@@ -185,15 +79,15 @@ def plot_water(
     )
 
 
-def _known_area(sites: Sites, classes: RunoffClasses, notes: Notes) -> FloatArray:
+def _known_area(case: Case) -> FloatArray:
     """Return effective areas by plot and class, unknown (NaN) where too much of the catchment has no class."""
-    catchments = sites.catchments
-    if classes.count == 0:
-        notes.warn("no_curve_number", "Neither cover nor curve numbers are given: how much runs off is unknown.")
-        return np.full((sites.plots.count, 1), np.nan)
-    unclassed = _unclassed(catchments)
+    catchments = case.sites.catchments
+    if case.classes.count == 0:
+        case.notes.warn("no_curve_number", "Neither cover nor curve numbers are given: how much runs off is unknown.")
+        return np.full((case.sites.plots.count, 1), np.nan)
+    unclassed = poorly_classed(catchments)
     if unclassed.any():
-        notes.warn(
+        case.notes.warn(
             "curve_number_unknown",
             f"For {int(unclassed.sum())} of {unclassed.size} plots more than {100 * MOST_UNCLASSED_SHARE:.0f} % of the "
             "catchment has no curve number: their run-on is unknown; extend the maps of soil and cover.",
@@ -201,23 +95,19 @@ def _known_area(sites: Sites, classes: RunoffClasses, notes: Notes) -> FloatArra
     return np.asarray(known_areas(catchments)[WITH_LOSSES])
 
 
-def _unclassed(catchments: Catchments) -> npt.NDArray[np.bool_]:
-    return np.asarray(catchments.unclassed_m2 > MOST_UNCLASSED_SHARE * catchments.area_m2)
-
-
 def known_areas(catchments: Catchments) -> FloatArray:
     """Return areas by loss, plot and class, unknown (NaN) for plots of whose catchment too much has no class."""
-    return np.where(_unclassed(catchments)[:, None], np.nan, catchments.effective_area_m2)
+    return np.where(poorly_classed(catchments)[:, None], np.nan, catchments.effective_area_m2)
 
 
-def yearly_volumes(catchments: Catchments, classes: RunoffClasses, weather: Weather, project: Project) -> FloatArray:
+def yearly_volumes(case: Case, weather: Weather, catchments: Catchments) -> FloatArray:
     """Return the run-on of each catchment by complete year, m3, under the abstraction ratio in use; NaN unknown."""
-    settings = project.settings
+    settings = case.settings
     ratio = settings.runoff.abstraction_ratio
     volume = delivered_m3(
         known_areas(catchments)[WITH_LOSSES],
         settings.terrain.channel_width_m * catchments.bed_length_m,
-        class_runoff_mm(weather.rain.as_dry_mm, classes, abstraction_ratio=ratio),
+        class_runoff_mm(weather.rain.as_dry_mm, case.classes, abstraction_ratio=ratio),
         channel_wetting_mm=settings.runoff.channel_wetting_mm,
     )
     return yearly_totals(volume, weather.rain.days, weather.years)
@@ -239,22 +129,20 @@ class _Part:
 class _Simulation:
     """What is alike for all plots, and their effective areas by runoff class."""
 
-    sites: Sites
+    case: Case
     weather: Weather
-    soil: SoilOfPlots
-    project: Project
     area_m2: FloatArray
 
     def some_plots(self, runoff_mm: FloatArray, part: slice, *, with_yields: bool) -> _Part:
         """Simulate a few plots under one abstraction ratio."""
-        settings = self.project.settings
+        settings, sites, soil = self.case.settings, self.case.sites, self.case.soil
         volume = delivered_m3(
             self.area_m2[part],
-            settings.terrain.channel_width_m * self.sites.catchments.bed_length_m[part],
+            settings.terrain.channel_width_m * sites.catchments.bed_length_m[part],
             runoff_mm,
             channel_wetting_mm=settings.runoff.channel_wetting_mm,
         )
-        most_m3 = self.soil.intake_capacity_mm[part] * self.sites.plots.area_m2[part] / 1000.0
+        most_m3 = soil.intake_capacity_mm[part] * sites.plots.area_m2[part] / 1000.0
         yearly, room = (
             yearly_totals(each, self.weather.rain.days, self.weather.years)
             for each in (volume, np.minimum(volume, most_m3[:, None]))
@@ -274,20 +162,20 @@ class _Simulation:
             seasons=self.weather.fixed_seasons,
             stage_days=crop.stage_days,
             kc=crop.kc,
-            plot_area_m2=self.sites.plots.area_m2[part],
-            catchment_area_m2=self.sites.catchments.area_m2[part],
-            available_water_mm=self.soil.available_water_mm[part],
-            intake_capacity_mm=self.soil.intake_capacity_mm[part],
-            efficiency=self.project.settings.plots.efficiency,
+            plot_area_m2=self.case.sites.plots.area_m2[part],
+            catchment_area_m2=self.case.sites.catchments.area_m2[part],
+            available_water_mm=self.case.soil.available_water_mm[part],
+            intake_capacity_mm=self.case.soil.intake_capacity_mm[part],
+            efficiency=self.case.settings.plots.efficiency,
         )
 
     def _yields(
         self, record: CropRecord, volume: FloatArray, part: slice
     ) -> tuple[SeasonYields, SeasonYields, SupportedArea]:
         """Run the daily method with run-on and on rain alone, and find the area that the run-on supports."""
-        settings = self.project.settings.crop
-        area = self.sites.plots.area_m2[part]
-        soil = self.soil.soil.take(np.arange(self.sites.plots.count)[part])
+        settings = self.case.settings.crop
+        area = self.case.sites.plots.area_m2[part]
+        soil = self.case.soil.soil.take(np.arange(self.case.sites.plots.count)[part])
 
         def yields_at(places: npt.NDArray[np.int64], area_m2: FloatArray) -> SeasonYields:
             return daily_balance(record, runon_m3=volume[places], soil=soil.take(places), plot_area_m2=area_m2, threads=1)

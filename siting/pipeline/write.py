@@ -17,23 +17,21 @@ from siting.layers.cautions import GENERAL_CAUTIONS
 from siting.notes import Notes
 from siting.outputs import azimuth_deg, file_hashes, sha256, write_cog, write_geopackage, write_run_record, write_styles
 from siting.outputs.run_record import RUN_RECORD
+from siting.pipeline.case import Case
 from siting.pipeline.clock import Clock
-from siting.pipeline.read import Place
-from siting.pipeline.sites import Sites
 from siting.pipeline.together import Together, told_set
-from siting.pipeline.water import Weather
 from siting.progress import Progress
 from siting.ranking import dependable
-from siting.runoff import RunoffClasses, class_runoff_mm, yearly_totals
+from siting.runoff import class_runoff_mm, yearly_totals
 from siting.terrain import Terrain
 
 GEOPACKAGE = "siting.gpkg"
 LIBRARIES = ("numpy", "numba", "pandas", "geopandas", "pyogrio", "rasterio", "pyproj", "shapely", "pydantic")
 
 
-def write_layers(folder: Path, tables: Mapping[str, pd.DataFrame | None], crs: str, ground: Terrain) -> None:
+def write_layers(folder: Path, tables: Mapping[str, pd.DataFrame | None], ground: Terrain) -> None:
     """Write the GeoPackage, and the styles beside it."""
-    write_geopackage(folder / GEOPACKAGE, tables, crs)
+    write_geopackage(folder / GEOPACKAGE, tables, ground.grid.crs)
     heights = float(np.nanmin(ground.filled)), float(np.nanmax(ground.filled))
     write_styles(folder / "styles", ranges={"elevation_conditioned_m": heights} if heights[0] < heights[1] else None)
 
@@ -52,18 +50,16 @@ def notes_tables(notes: Notes, info: dict[str, str]) -> dict[str, pd.DataFrame]:
     }
 
 
-def run_info(
-    project: Project, place: Place, sites: Sites, weather: Weather | None, together: Together | None
-) -> dict[str, str]:
+def run_info(case: Case, together: Together | None) -> dict[str, str]:
     """Say what was run on what; nothing of when, or on which machine."""
-    settings, grid = project.settings, place.dem.grid
+    settings, grid, weather = case.settings, case.place.dem.grid, case.weather
     found = {
         "title": settings.place.title,
         "siting version": version("siting"),
         "elevation model": settings.place.dem.name,
         "elevation model sha256": sha256(settings.place.dem),
         "cells": f"{grid.rows} rows x {grid.cols} columns, {grid.typical_cell_m:.4g} m",
-        "plots": str(sites.plots.count),
+        "plots": str(case.sites.plots.count),
         "order": f"by {settings.ranking.order}",
         "abstraction ratio": f"{settings.runoff.abstraction_ratio:g}",
         "dependable year": f"reached in {100 * settings.ranking.dependable:g} % of years",
@@ -74,23 +70,14 @@ def run_info(
     if weather is not None and weather.record is not None:
         found["seasons"] = str(weather.record.seasons.label.size)
     if together is not None:
-        found["set"] = told_set(together, sites)
+        found["set"] = told_set(together, case.sites)
     return found
 
 
-def write_rasters(
-    folder: Path,
-    ground: Terrain,
-    sites: Sites,
-    classes: RunoffClasses,
-    weather: Weather | None,
-    curve_number: npt.NDArray[np.float32],
-    project: Project,
-    threads: int,
-    progress: Progress,
-) -> None:
+def write_rasters(folder: Path, case: Case, progress: Progress) -> None:
     """Write every raster on the grid of the DEM, one after another: each is made when it is written."""
     folder.mkdir()
+    ground, compression = case.ground, case.settings.output.compression
     makers: dict[str, Any] = {
         "elevation_conditioned_m": lambda: ground.filled,
         "slope_pct": lambda: np.float32(100.0) * ground.slope,
@@ -99,41 +86,39 @@ def write_rasters(
         "wetness_index": lambda: ground.wetness_index,
         "height_above_channel_m": lambda: ground.height_above_channel_m,
         "position": lambda: np.where(ground.position == 0, 255, ground.position).astype(np.uint8),
-        "curve_number": lambda: np.where(ground.direction == 255, np.nan, curve_number),
-        "runoff_median_mm": lambda: _runoff_median_mm(classes, weather, project),
-        "why_not": lambda: sites.plots.reason,
+        "curve_number": lambda: np.where(ground.direction == 255, np.nan, case.place.curve_number),
+        "runoff_median_mm": lambda: _runoff_median_mm(case),
+        "why_not": lambda: case.sites.plots.reason,
     }
     for done, (name, make) in enumerate(makers.items()):
         progress.stage("rasters", done, len(makers))
-        compression = project.settings.output.compression
-        write_cog(folder / f"{name}.tif", make(), ground.grid, raster(name), threads, compression=compression)
+        write_cog(folder / f"{name}.tif", make(), ground.grid, raster(name), case.threads, compression=compression)
 
 
-def _runoff_median_mm(classes: RunoffClasses, weather: Weather | None, project: Project) -> npt.NDArray[np.float32]:
+def _runoff_median_mm(case: Case) -> npt.NDArray[np.float32]:
     """Return each cell's runoff in the median year, by its class; NaN where it is not known."""
+    classes, weather = case.classes, case.weather
     by_class = np.full(classes.count + 1, np.nan, dtype=np.float32)
     if weather is not None and classes.count:
-        ratio = project.settings.runoff.abstraction_ratio
+        ratio = case.settings.runoff.abstraction_ratio
         daily = class_runoff_mm(weather.rain.as_dry_mm, classes, abstraction_ratio=ratio)
         by_class[:-1] = dependable(yearly_totals(daily, weather.rain.days, weather.years), probability=0.5)
     return by_class[np.minimum(classes.class_of_cell, classes.count)]
 
 
-def write_record(
-    folder: Path, project: Project, notes: Notes, clock: Clock, threads: int, summary: Mapping[str, Any]
-) -> None:
+def write_record(folder: Path, case: Case, clock: Clock, summary: Mapping[str, Any]) -> None:
     """Write the run record last: its outputs are those that stand in the folder."""
     record = {
-        "title": project.settings.place.title,
-        "settings": project.record(),
-        "inputs": {key: {"file": path.name, "sha256": sha256(path)} for key, path in _input_files(project)},
+        "title": case.settings.place.title,
+        "settings": case.project.record(),
+        "inputs": {key: {"file": path.name, "sha256": sha256(path)} for key, path in _input_files(case.project)},
         "versions": {"siting": version("siting"), "python": platform.python_version()}
         | {name: version(name) for name in LIBRARIES},
-        "assumptions": notes.assumptions,
-        "warnings": notes.warnings,
+        "assumptions": case.notes.assumptions,
+        "warnings": case.notes.warnings,
         "cautions": GENERAL_CAUTIONS,
         "stages": clock.record(),
-        "threads": threads,
+        "threads": case.threads,
         "cells": summary["cells"],
         "plots": summary["n_plots"],
         "outputs": file_hashes(folder),
