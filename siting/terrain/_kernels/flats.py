@@ -10,6 +10,7 @@ import numpy as np
 
 from siting.terrain._kernels.direction import FLAT, FLAT_ORDER, STEP_COL, STEP_ROW
 from siting.terrain._kernels.jit import at, kernel, part
+from siting.terrain._kernels.sorting import ascending
 
 UNKNOWN = 2**31 - 2
 """Steps of a flat cell that nothing has reached; cells that are not flat have 0."""
@@ -48,9 +49,9 @@ def start_flats(filled, direction, cols, toward, away, limits, outs, highs):
             outs[last_out] = highs[last_high] = row * ROW_UNIT + col  # stays there only where the count grows
             last_out += way_out
             last_high += higher
-    none = outs[:0]
-    _spread(toward, cols, limits, none, 0, outs, last_out)
-    _spread(away, cols, limits, none, 0, highs, last_high)
+    none = np.int64(0)  # typed: a bare number would be compiled for by itself
+    _spread(toward, cols, limits, outs, none, outs, np.int64(last_out))
+    _spread(away, cols, limits, highs, none, highs, np.int64(last_high))
 
 
 @kernel
@@ -65,9 +66,9 @@ def _spread(steps, cols, limits, seeds, seeded, queue, queued):
     while seed < seeded or place < queued:
         from_seed = seed < seeded
         if from_seed and place < queued:
-            one, two = seeds[seed], queue[place]
-            from_seed = steps[(one >> 32) * cols + (one & COL_MASK)] <= steps[(two >> 32) * cols + (two & COL_MASK)]
-        cell = seeds[seed] if from_seed else queue[place]
+            one, two = at(seeds, seed), at(queue, place)
+            from_seed = at(steps, (one >> 32) * cols + (one & COL_MASK)) <= at(steps, (two >> 32) * cols + (two & COL_MASK))
+        cell = at(seeds, seed) if from_seed else at(queue, place)
         seed, place = seed + from_seed, place + (not from_seed)
         row, col = cell >> 32, cell & COL_MASK
         ahead = np.int64(at(steps, row * cols + col)) + 1
@@ -137,11 +138,14 @@ def cross_flats(steps, cols, limits, seeds, queue):
             seeded = _improve_border(steps, cols, limits, row, col, seeds, seeded)
     if seeded == 0:
         return 0
-    value = np.empty(seeded, np.int64)
+    value = np.empty(seeded, np.int32)
     for place in range(seeded):
-        value[place] = steps[(seeds[place] >> 32) * cols + (seeds[place] & COL_MASK)]
-    seeds[:seeded] = seeds[:seeded][np.argsort(value)]
-    queued = _spread(steps, cols, limits, seeds, seeded, queue, 0)
+        value[place] = at(steps, (seeds[place] >> 32) * cols + (seeds[place] & COL_MASK))
+    order = ascending(value.view(np.float32))  # the bits of whole numbers above 0 ascend as heights do
+    nearest = np.empty(seeded, np.int64)
+    for place in range(seeded):
+        nearest[place] = seeds[order[place]]
+    queued = _spread(steps, cols, limits, nearest, np.int64(seeded), queue, np.int64(0))
     gains = 0
     for place in range(seeded):
         gains |= _who_gains(steps, cols, limits, seeds[place])

@@ -10,7 +10,6 @@ from typing import Any
 import numpy as np
 from numba import njit
 
-
 OPTIONS: dict[str, Any] = {"nogil": True, "error_model": "numpy", "no_cfunc_wrapper": True}
 
 
