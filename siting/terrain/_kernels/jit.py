@@ -11,6 +11,7 @@ import numpy as np
 from numba import njit
 
 OPTIONS: dict[str, Any] = {"nogil": True, "error_model": "numpy", "no_cfunc_wrapper": True}
+PART_OPTIONS: dict[str, Any] = OPTIONS | {"forceinline": True, "no_cpython_wrapper": True}
 
 
 def kernel(function: Callable[..., Any]) -> Callable[..., Any]:
@@ -24,7 +25,7 @@ def kernel(function: Callable[..., Any]) -> Callable[..., Any]:
 
 def part(function: Callable[..., Any]) -> Callable[..., Any]:
     """Compile a part of kernels into each that calls it: handing arrays to a call costs more than the work on a cell."""
-    compiled: Callable[..., Any] = njit(forceinline=True, no_cpython_wrapper=True, **OPTIONS)(function)
+    compiled: Callable[..., Any] = njit(**PART_OPTIONS)(function)
     return compiled
 
 
