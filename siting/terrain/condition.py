@@ -225,17 +225,19 @@ def _across_flats(padded: Heights, direction: Directions, side: int, threads: in
         return 0
     cols = direction.shape[1]
     blocks = blocks_of((direction.shape[0], cols), side)
-    toward, away = (np.zeros(direction.size, dtype=np.int32) for _ in range(2))
-    heights, codes = padded.ravel(), direction.ravel()
+    toward, away = (np.empty(direction.shape, dtype=np.int32) for _ in range(2))
 
     def start(*limits: int) -> None:
-        outs, highs = np.empty((2, (limits[1] - limits[0]) * (limits[3] - limits[2]) + 1), dtype=np.int64)
-        start_flats(heights, codes, cols, toward, away, limits, outs, highs)
+        within = (limits[1] - limits[0] + 2, limits[3] - limits[2] + 2)
+        local_toward, local_away = np.zeros((2, *within), dtype=np.int32)
+        queue = np.empty(within[0] * within[1] + 1, dtype=np.int32)
+        start_flats(padded, direction, toward, away, limits, local_toward, local_away, queue)
 
     run_all(start, blocks, threads)
-    _meet(toward, away, cols, blocks, side, threads)
+    _meet(toward.ravel(), away.ravel(), cols, blocks, side, threads)
+    heights, out, high, codes = padded.ravel(), toward.ravel(), away.ravel(), direction.ravel()
     bands = row_bands(direction.shape[0], 64)
-    run_all(lambda row0, row1: direct_flats(heights, toward, away, cols, codes, row0, row1), bands, threads)
+    run_all(lambda row0, row1: direct_flats(heights, out, high, cols, codes, row0, row1), bands, threads)
     return flat_cells
 
 

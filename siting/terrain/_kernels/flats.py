@@ -2,8 +2,7 @@
 Directions across flats by integer steps, in blocks.
 
 Steps are upper bounds that only fall until every cell obeys the distance equation, whose solution is unique: neither
-blocks nor threads can change it. A flat cell never lies beside a void, so its neighbours are always there. Arrays of
-steps and directions are flat, `cols` cells to a row; `filled` is padded by one and flat.
+blocks nor threads can change it. A flat cell never lies beside a void, so its neighbours are always there.
 """
 
 import numpy as np
@@ -18,40 +17,89 @@ UNKNOWN = 2**31 - 2
 ROW_UNIT, COL_MASK = 1 << 32, (1 << 32) - 1
 """A queued cell is its row times ROW_UNIT plus its column."""
 
+IS_FLAT, BESIDE_OUT, BESIDE_HIGH = 1, 2, 4
+"""Bits of the mark of a flat cell."""
+
 WAY_OUT = -(2**40)
 """What a neighbour counts that is a way out of the flat: less than any steps."""
 
 
 @kernel
-def start_flats(filled, direction, cols, toward, away, limits, outs, highs):
+def _mark_flats(filled, direction, row, col0, marks):
+    """
+    Mark the flat cells of a part of a row: IS_FLAT, and whether they lie BESIDE_OUT, a way out, or BESIDE_HIGH ground.
+
+    Selects only and one store, so that the loop vectorises. The part keeps clear of the raster's edge: no cell there is
+    flat.
+    """
+    north, middle, south = filled[row, col0:], filled[row + 1, col0:], filled[row + 2, col0:]
+    above, beside, below = direction[row - 1, col0 - 1 :], direction[row, col0 - 1 :], direction[row + 1, col0 - 1 :]
+    for col in range(marks.size):
+        here = middle[col + 1]
+        out = (north[col] == here) & (above[col] != FLAT)
+        out |= (north[col + 1] == here) & (above[col + 1] != FLAT)
+        out |= (north[col + 2] == here) & (above[col + 2] != FLAT)
+        out |= (middle[col] == here) & (beside[col] != FLAT)
+        out |= (middle[col + 2] == here) & (beside[col + 2] != FLAT)
+        out |= (south[col] == here) & (below[col] != FLAT)
+        out |= (south[col + 1] == here) & (below[col + 1] != FLAT)
+        out |= (south[col + 2] == here) & (below[col + 2] != FLAT)
+        high = (north[col] > here) | (north[col + 1] > here) | (north[col + 2] > here)
+        high |= (middle[col] > here) | (middle[col + 2] > here)
+        high |= (south[col] > here) | (south[col + 1] > here) | (south[col + 2] > here)
+        mark = np.uint8(IS_FLAT + BESIDE_OUT * out + BESIDE_HIGH * high)
+        marks[col] = mark if beside[col + 1] == FLAT else np.uint8(0)
+
+
+@part
+def _first_steps(marks, bit, steps):
+    for col in range(marks.size):
+        steps[col] = 0 if marks[col] == 0 else 1 if marks[col] & bit else UNKNOWN
+
+
+@kernel
+def start_flats(filled, direction, toward, away, limits, local_toward, local_away, queue):
     """
     Count steps inside one block: `toward` from cells beside a way out, `away` from cells beside higher ground.
 
-    Both come as 0. `outs` and `highs` are queues that take each cell of the block.
+    `filled` is padded by one. The block's own copies, `local_toward` and `local_away`, come as 0 and have a ring of 0
+    that ends the walks; `queue` takes each cell of the block and one more.
     """
     row0, row1, col0, col1 = limits
-    last_out = last_high = 0
+    first, last = max(col0, 1), min(col1, direction.shape[1] - 1)
+    marks = np.empty(max(0, last - first), np.uint8)
+    for row in range(max(row0, 1), min(row1, direction.shape[0] - 1)):
+        _mark_flats(filled, direction, row, first, marks)
+        _first_steps(marks, BESIDE_OUT, local_toward[row - row0 + 1, first - col0 + 1 :])
+        _first_steps(marks, BESIDE_HIGH, local_away[row - row0 + 1, first - col0 + 1 :])
+    _spread_alone(local_toward, queue)
+    _spread_alone(local_away, queue)
+    cols = col1 - col0
     for row in range(row0, row1):
-        for col in range(col0, col1):
-            place = row * cols + col
-            if at(direction, place) != FLAT:
-                continue
-            node = place + cols + 3 + 2 * row  # of the same cell in the padded array
-            here = at(filled, node)
-            way_out = higher = False
-            for code in range(1, 9):
-                there = at(filled, node + STEP_ROW[code] * (cols + 2) + STEP_COL[code])
-                flat = at(direction, place + STEP_ROW[code] * cols + STEP_COL[code]) == FLAT
-                way_out |= (there == here) & (not flat)
-                higher |= there > here
-            toward[place] = 1 if way_out else UNKNOWN
-            away[place] = 1 if higher else UNKNOWN
-            outs[last_out] = highs[last_high] = row * ROW_UNIT + col  # stays there only where the count grows
-            last_out += way_out
-            last_high += higher
-    none = np.int64(0)  # typed: a bare number would be compiled for by itself
-    _spread(toward, cols, limits, outs, none, outs, np.int64(last_out))
-    _spread(away, cols, limits, highs, none, highs, np.int64(last_high))
+        toward[row, col0:col1] = local_toward[row - row0 + 1, 1 : cols + 1]
+        away[row, col0:col1] = local_away[row - row0 + 1, 1 : cols + 1]
+
+
+@kernel
+def _spread_alone(steps, queue):
+    """Count steps breadth first from cells with 1 through those with UNKNOWN; a ring of 0 keeps them inside."""
+    rows, width = steps.shape
+    flat = steps.reshape(rows * width)
+    queued = 0
+    for place in range(flat.size):
+        queue[queued] = place  # stays there only where the count grows
+        queued += flat[place] == 1
+    reached = 0
+    while reached < queued:
+        place = np.int64(at(queue, reached))
+        reached += 1
+        ahead = at(flat, place) + 1
+        for code in range(1, 9):
+            other = place + STEP_ROW[code] * width + STEP_COL[code]
+            if at(flat, other) == UNKNOWN:
+                flat[np.uint64(other)] = ahead
+                queue[np.uint64(queued)] = other
+                queued += 1
 
 
 @kernel
@@ -124,7 +172,7 @@ def _who_gains(steps, cols, limits, cell):
 @kernel
 def cross_flats(steps, cols, limits, seeds, queue):
     """
-    Bring steps from other blocks into a block, and spread them there.
+    Bring steps from other blocks into a block, and spread them there. `steps` is flat, `cols` cells to a row.
 
     `seeds` takes the cells of the block's border, `queue` all of its cells. Returns the blocks around that gain by it:
     bit 3 (down + 1) + along + 1 for the block `down` rows and `along` columns of blocks away.
@@ -156,7 +204,11 @@ def cross_flats(steps, cols, limits, seeds, queue):
 
 @kernel
 def direct_flats(filled, toward, away, cols, direction, row0, row1):
-    """Direct flat cells to the neighbour of equal height with the least 2 toward - away; ways out come first."""
+    """
+    Direct flat cells to the neighbour of equal height with the least 2 toward - away; ways out come first.
+
+    Arrays are flat, `cols` cells to a row; `filled` is padded by one.
+    """
     for row in range(row0, row1):
         for col in range(cols):
             place = row * cols + col
