@@ -44,6 +44,7 @@ NEEDS = (
     ("villages.name", ("villages.file",)),
     ("crop.planting", ("crop.name", "crop.kc")),
     ("crop.planting_until", ("crop.planting",)),
+    ("crop.second_planting", ("crop.planting",)),
     ("crop.onset_mm", ("crop.planting_until",)),
     ("runoff.growing_from", ("runoff.growing_until",)),
     ("runoff.growing_until", ("runoff.growing_from",)),

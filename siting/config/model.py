@@ -139,6 +139,7 @@ class Rain(_Section):
     unit: Literal["mm", "inch"] | None = None
     year_starts: Annotated[int, Field(ge=1, le=12)] | None = None
     max_missing_share: Annotated[float, Field(ge=0, lt=1)]
+    design_storm_mm: Annotated[float, Field(gt=0, le=500)]
 
 
 class Climate(_Section):
@@ -155,6 +156,7 @@ class Crop(_Section):
     name: Text | None = None
     planting: Day | None = None
     planting_until: Day | None = None
+    second_planting: Day | None = None
     onset_mm: AtLeast0
     stage_days: StageDays | None = None
     kc: Kc | None = None
@@ -170,6 +172,11 @@ class Crop(_Section):
     def planting_day(self) -> tuple[int, int] | None:
         """Month and day of sowing, or on which the sowing window opens; None where not given."""
         return _month_and_day(self.planting)
+
+    @property
+    def second_planting_day(self) -> tuple[int, int] | None:
+        """Month and day of the second sowing in a year; None where there is none."""
+        return _month_and_day(self.second_planting)
 
     @property
     def last_planting_day(self) -> tuple[int, int] | None:

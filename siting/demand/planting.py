@@ -141,9 +141,16 @@ def _ordinary(date: tuple[int, int]) -> int:
     return int((day - np.datetime64("2001-01-01", "D")).astype(np.int64))
 
 
-def sowing_seasons(days: Days, *, planting: Planting, crop: CropWater) -> Seasons:
+def sowing_seasons(
+    days: Days, *, planting: Planting, crop: CropWater, second_opens: tuple[int, int] | None = None
+) -> Seasons:
     """
     Find the complete seasons of a crop, from the last possible harvest to the next.
+
+    Parameters
+    ----------
+    second_opens
+        Month and day on which a second window of the same length opens each year, for two seasons a year.
 
     Returns
     -------
@@ -153,7 +160,7 @@ def sowing_seasons(days: Days, *, planting: Planting, crop: CropWater) -> Season
     Raises
     ------
     ConfigError
-        A window and a crop that last longer than a year together: seasons would overlap.
+        A window and a crop that last longer than a year together, or two that do not fit into it: seasons would overlap.
     InputError
         As `season_days`.
     """
@@ -164,4 +171,24 @@ def sowing_seasons(days: Days, *, planting: Planting, crop: CropWater) -> Season
             "together; close the window earlier (crop.planting)"
         )
         raise ConfigError(msg)
-    return season_days(days, planting=planting.opens, season_length_days=span)
+    found = season_days(days, planting=planting.opens, season_length_days=span)
+    if second_opens is None:
+        return found
+    apart = (_ordinary(second_opens) - _ordinary(planting.opens)) % YEAR_DAYS
+    if min(apart, YEAR_DAYS - apart) < span:
+        msg = (
+            f"a crop of {span} days from the opening of its window to the last harvest does not fit between the two "
+            f"sowings, {min(apart, YEAR_DAYS - apart)} days apart; move crop.second_planting or shorten the window"
+        )
+        raise ConfigError(msg)
+    return _both(found, season_days(days, planting=second_opens, season_length_days=span))
+
+
+def _both(one: Seasons, other: Seasons) -> Seasons:
+    """Put the seasons of two sowings a year in order; each begins after the harvest before it, so the first is left out."""
+    sowing = np.concatenate([one.sowing, other.sowing])
+    order = np.argsort(sowing, kind="stable")
+    label, sown, end = (
+        np.concatenate([getattr(each, name) for each in (one, other)])[order] for name in ("label", "sown", "end")
+    )
+    return Seasons(label[1:], sown[1:], end[:-1], sowing[order][1:], end[1:])

@@ -7,6 +7,8 @@ import geopandas as gpd
 import numpy as np
 import numpy.typing as npt
 import pandas as pd
+import pyogrio
+import pyogrio.errors
 import shapely
 from affine import Affine
 from pyproj import CRS
@@ -17,6 +19,8 @@ from siting.grid import Grid
 from siting.notes import Notes
 
 Mask = npt.NDArray[np.bool_]
+
+TABLE_ENDINGS = (".csv", ".xlsx")
 
 NO_VALUE = -1
 """Code of a cell that a map says nothing of."""
@@ -200,12 +204,14 @@ def _covered(shape: Any, grid: Grid) -> npt.NDArray[np.int64]:
 
 def read_villages(path: Path, grid: Grid, *, name: str, people: str | None) -> gpd.GeoDataFrame:
     """
-    Read villages: any vector file, or a CSV with the columns lon and lat in degrees. All their columns are kept as they are.
+    Read villages: any vector file, or a CSV or XLSX table with the columns lon and lat in degrees.
+
+    All their columns are kept as they are.
 
     The columns `name` and `people` must exist where they are named; a number of people that is none stays unknown.
     """
-    if path.suffix.lower() == ".csv":
-        frame = _villages_of_csv(path, grid)
+    if path.suffix.lower() in TABLE_ENDINGS:
+        frame = _villages_of_table(path, grid)
     else:
         frame = read_vector(path, grid, setting="villages.file")
     for column in (name, people):
@@ -216,10 +222,13 @@ def read_villages(path: Path, grid: Grid, *, name: str, people: str | None) -> g
     return frame
 
 
-def _villages_of_csv(path: Path, grid: Grid) -> gpd.GeoDataFrame:
+def _villages_of_table(path: Path, grid: Grid) -> gpd.GeoDataFrame:
     try:
-        table = pd.read_csv(path, encoding="utf-8-sig", skipinitialspace=True)
-    except (OSError, UnicodeDecodeError, ValueError) as error:
+        if path.suffix.lower() == ".csv":
+            table = pd.read_csv(path, encoding="utf-8-sig", skipinitialspace=True)
+        else:
+            table = pyogrio.read_dataframe(path, read_geometry=False)
+    except (OSError, UnicodeDecodeError, ValueError, pyogrio.errors.DataSourceError) as error:
         msg = f"villages.file {path.name} cannot be read as a table; save it as CSV (UTF-8) with lon and lat"
         raise InputError(msg) from error
     if not {"lon", "lat"} <= set(table.columns):

@@ -115,6 +115,13 @@ WATER = (
         "supply_ratio_dry under the other abstraction ratio (0.05 where the run used 0.2, and 0.2 where it did not)",
     ),
     Column(
+        "storm_yield_m3",
+        "m3",
+        "float64",
+        "Yield of one storm",
+        "run-on volume at the intake of one storm of rain.design_storm_mm",
+    ),
+    Column(
         "runon_dry_mm",
         "mm",
         "float64",

@@ -184,6 +184,21 @@ SEASONS = Layer(
     ),
 )
 
+MONTHS = Layer(
+    "months",
+    "none",
+    "Months",
+    "water of each plot by calendar month, means over the years of the record",
+    (
+        PLOT_ID,
+        Column("month", "", "int64", "Month", "1 January to 12 December"),
+        Column("rain_mm", "mm", "float64", "Rain", "rain on the plot"),
+        Column("runon_mm", "mm", "float64", "Run-on", "run-on spread over the plot"),
+        Column("surplus_mm", "mm", "float64", "Surplus", "water that flows over the bund or seeps below the roots"),
+        Column("shortage_mm", "mm", "float64", "Shortage", "water that the crop needs and does not get"),
+    ),
+)
+
 DOWNSTREAM = Layer(
     "downstream",
     "none",
@@ -220,7 +235,10 @@ RUN_INFO = Layer(
     (Column("key", "", "text", "Key", "what is said"), Column("value", "", "text", "Value", "what it is")),
 )
 
-LAYERS = (PLOTS, CATCHMENTS, INTAKES, OVERFLOW_PATHS, CHANNELS, PANS, VILLAGES, SEASONS, DOWNSTREAM, ASSUMPTIONS, RUN_INFO)
+LAYERS = (
+    *(PLOTS, CATCHMENTS, INTAKES, OVERFLOW_PATHS, CHANNELS, PANS, VILLAGES),
+    *(SEASONS, MONTHS, DOWNSTREAM, ASSUMPTIONS, RUN_INFO),
+)
 """All layers and tables in the order of the file; `villages` is written only when villages were given."""
 
 

@@ -78,7 +78,7 @@ class StagedFolder:
             msg = f"{name} exists and holds no run record of ours, so it is left alone; choose another folder with --out"
             raise OutputError(msg)
         if not self.overwrite:
-            msg = f"{name} holds results already; give --overwrite to replace them, or choose another folder with --out"
+            msg = f"{name} holds results already; give --overwrite to replace them, or choose another folder"
             raise OutputError(msg)
 
     def _put_in_place(self, staged: Path) -> None:

@@ -22,8 +22,8 @@ class Case:
     """
     A project, its place, ground, weather and plots; what later stages take from earlier ones.
 
-    `own` is the ground of each plot, `soil` its soil, `curve_number` the mean one of its catchment (NaN unknown);
-    `weather` is None without a rain record.
+    `own` is the ground of each plot, `soil` its soil, `curve_number` the mean one of its catchment, `cell_curve_number`
+    that of each cell (NaN unknown); `weather` is None without a rain record.
     """
 
     project: Project
@@ -37,6 +37,7 @@ class Case:
     own: PlotGround
     soil: SoilOfPlots
     curve_number: npt.NDArray[np.float64]
+    cell_curve_number: npt.NDArray[np.float32]
 
     @property
     def settings(self) -> Settings:

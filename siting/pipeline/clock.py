@@ -1,6 +1,5 @@
 """Seconds and peak memory of each stage."""
 
-import resource
 import sys
 import time
 from collections.abc import Iterator
@@ -56,12 +55,16 @@ def _forget_peak() -> None:
 
 
 def peak_resident_bytes() -> int:
-    """Return the highest resident memory since the peak was last forgotten."""
+    """Return the highest resident memory since the peak was last forgotten; 0 where the system does not tell."""
     try:
         for line in STATUS.read_text(encoding="ascii").splitlines():
             if line.startswith("VmHWM:"):
                 return int(line.split()[1]) * 1024
     except OSError:
         pass
+    try:
+        import resource  # not on every system
+    except ImportError:
+        return 0
     peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss
     return peak if sys.platform == "darwin" else peak * 1024

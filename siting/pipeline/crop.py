@@ -1,5 +1,6 @@
 """The crop of a run: printed values with the user's own laid over them, and when it is sown."""
 
+import re
 from dataclasses import dataclass
 from typing import Any
 
@@ -9,6 +10,8 @@ from siting.demand.planting import PERENNIAL_GROUPS
 from siting.demand.weather import Climate
 from siting.notes import Notes
 from siting.tables import crop
+
+MONTHS = ("Jan", "Feb", "Mar", "Apr", "May", "Jun", "Jul", "Aug", "Sep", "Oct", "Nov", "Dec")
 
 _PRINTED = (
     ("stage_days", "d", "the length of the season and the crop's demand"),
@@ -28,6 +31,7 @@ class CropChoice:
     name: str
     water: CropWater
     planting: Planting
+    second_opens: tuple[int, int] | None
 
 
 def choose_crop(project: Project, climate: Climate | None, notes: Notes) -> CropChoice | None:
@@ -42,6 +46,8 @@ def choose_crop(project: Project, climate: Climate | None, notes: Notes) -> Crop
     for name, unit, effect in _PRINTED:
         own = getattr(chosen, name)
         values[name] = own if own is not None or printed is None else getattr(printed, name)
+        if name == "stage_days" and own is None and printed is not None:
+            _warn_of_other_sowing(printed.name, printed.stage_region, opens, notes)
         if own is None and printed is not None:
             source = printed.ky_source if name == "ky" else printed.source
             if name == "stage_days":
@@ -58,7 +64,25 @@ def choose_crop(project: Project, climate: Climate | None, notes: Notes) -> Crop
     perennial = printed is not None and printed.group in PERENNIAL_GROUPS
     planting = Planting(opens, chosen.last_planting_day, chosen.onset_mm)
     _note_common_practice(planting, values, notes)
-    return CropChoice("own values" if printed is None else printed.name, CropWater(**values, perennial=perennial), planting)
+    name = "own values" if printed is None else printed.name
+    return CropChoice(name, CropWater(**values, perennial=perennial), planting, chosen.second_planting_day)
+
+
+def _warn_of_other_sowing(name: str, region: str, opens: tuple[int, int], notes: Notes) -> None:
+    """Warn where the printed stages are of a crop sown at another time of the year: they may not fit."""
+    months = [MONTHS.index(word) + 1 for word in re.findall("|".join(MONTHS), region)]
+    if not months or opens[0] in (set(months) if " or " in region else _span(months)):
+        return
+    notes.warn(
+        "crop_stages_elsewhere",
+        f"The stages in print for {name} are of {region}, and here it is sown in {MONTHS[opens[0] - 1]}: give "
+        "crop.stage_days as people know them here.",
+    )
+
+
+def _span(months: list[int]) -> set[int]:
+    """Return the months from the first to the last, across the new year if need be; a lone one is itself."""
+    return {(months[0] - 1 + step) % 12 + 1 for step in range((months[-1] - months[0]) % 12 + 1)}
 
 
 def _note_common_practice(planting: Planting, values: dict[str, Any], notes: Notes) -> None:

@@ -49,10 +49,16 @@ def doubt_ranks(case: Case, water: Water | None, floods: Floods | None, order: O
     draws, seed = case.settings.ranking.draws, case.settings.ranking.seed
     if draws == 0 or water is None or water.crop is None or floods is None or case.weather is None:
         return None
-    record = case.weather.record
-    if case.classes.count == 0 or record is None or not record.demand_known or not (order.rank > 0).any():
+    crops = case.weather.crops
+    if case.classes.count == 0 or not crops or not crops[0].demand_known or not (order.rank > 0).any():
         return None
-    model = _model(case, case.weather, record, floods)
+    if len(crops) > 1 or case.settings.runoff.antecedent == "rule":
+        text = (
+            "Rank intervals are not drawn with several rain zones or the antecedent rule: rank_low, rank_high are unknown."
+        )
+        case.notes.warn("no_rank_interval", text)
+        return None
+    model = _model(case, case.weather, crops[0], floods)
     _note(case.notes)
     if order.follows_score:
         basis = _basis(case, water.crop, order)
@@ -74,7 +80,7 @@ def _model(case: Case, weather: Weather, record: CropRecord, floods: Floods) -> 
         available_water_mm=soil.available_water_mm,
         ponding_mm=soil.soil.ponding_mm,
         infiltration_mm=soil.soil.infiltration_mm_h * settings.plots.event_hours,
-        soil_class=case.own.texture,
+        soil_class=case.own.soil_kind,
         open_catchment=case.own.open_sides != 0,
         peak_flow_10y_m3s=floods.peak_10y_m3s,
         plot_id=sites.plot_id,

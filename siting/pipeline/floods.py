@@ -41,8 +41,9 @@ def plot_floods(case: Case, weather: Weather) -> Floods:
     Runoff is summed by class; the mean curve number serves the lag and Ia/P alone. Open catchments give at least this.
     """
     settings, catchments, notes, curve_number = case.settings, case.sites.catchments, case.notes, case.curve_number
-    maxima = annual_max_mm(weather.rain, weather.years)
-    rains = design_rain_mm(maxima, return_period_years=np.array(PERIODS_YEARS))
+    by_zone = np.array([_design_rain(weather, zone) for zone in range(weather.zones.count)])
+    maxima = annual_max_mm(weather.record.of(int(weather.zones.station[0])), weather.years)
+    rains = by_zone[0]
     if not np.isnan(rains).any():
         told = " and ".join(f"{rain:.0f} mm in {years:.0f} years" for rain, years in zip(rains, PERIODS_YEARS, strict=True))
         few = "; fewer than 20 years, so uncertain" if few_years_for_design(maxima) else ""
@@ -57,8 +58,9 @@ def plot_floods(case: Case, weather: Weather) -> Floods:
             slope_pct=slope_pct,
         )
     )
-    peaks = [_peak(case, float(rain), hours) for rain in rains]
-    held = peak_flow_limits(rain_mm=rains[0], curve_number=curve_number, time_of_concentration_h=hours)
+    on_plots = by_zone[np.maximum(case.own.rain_zone, 0)]
+    peaks = [_peak(case, on_plots[:, period], hours) for period in range(len(PERIODS_YEARS))]
+    held = peak_flow_limits(rain_mm=on_plots[:, 0], curve_number=curve_number, time_of_concentration_h=hours)
     count = int(np.count_nonzero((held.ia_over_p | held.time_of_concentration)[fed]))
     if count:
         source = "printed limits of the graphical method: Ia/P 0.1 to 0.5, time of concentration 0.1 to 10 h"
@@ -69,11 +71,18 @@ def plot_floods(case: Case, weather: Weather) -> Floods:
     return Floods(peaks[0], peaks[1], width)
 
 
-def _peak(case: Case, rain_mm: float, hours: FloatArray) -> FloatArray:
+def _design_rain(weather: Weather, zone: int) -> FloatArray:
+    """Return the design rains of a zone, mm, one for each period."""
+    maxima = annual_max_mm(weather.record.of(int(weather.zones.station[zone])), weather.years)
+    return np.asarray(weather.zones.factor[zone] * design_rain_mm(maxima, return_period_years=np.array(PERIODS_YEARS)))
+
+
+def _peak(case: Case, rain_mm: FloatArray, hours: FloatArray) -> FloatArray:
     """Return the peak of one storm at each plot; 0 where nothing drains to it, NaN where unknown."""
     area, ratio = case.sites.catchments.area_m2, case.settings.runoff.abstraction_ratio
     by_class = case.sites.catchments.effective_area_m2[GROSS]
-    depth = runoff_depth_mm(rain_mm, case.classes.retention_mm(abstraction_ratio=ratio), abstraction_ratio=ratio)
+    retention = case.classes.retention_mm(abstraction_ratio=ratio)
+    depth = runoff_depth_mm(rain_mm[:, None], retention, abstraction_ratio=ratio)
     known = by_class.sum(axis=1)
     with np.errstate(invalid="ignore", divide="ignore"):
         runoff_mm = (by_class * depth).sum(axis=1) / known

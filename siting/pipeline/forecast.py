@@ -16,7 +16,7 @@ BYTES_PER_CELL = 110
 DISK_BYTES_PER_CELL = 45
 """Results and what is written on the way, for each cell, at worst: ten rasters that do not compress."""
 
-BASE_BYTES = 400e6
+BASE_BYTES = 700e6
 """Memory of the libraries themselves and of a rain record."""
 
 SECONDS_PER_MILLION_CELLS = 2.0

@@ -15,11 +15,10 @@ from siting.pipeline.order import UNRANKED, Order
 from siting.pipeline.sites import Sites
 from siting.pipeline.surface import POSITION_TERMS
 from siting.pipeline.together import Together
-from siting.pipeline.water import CropResults, Water
+from siting.pipeline.water import CropResults, Water, storm_volumes_m3
 from siting.plots import slope_margin
 from siting.ranking import dependable, reliability
 from siting.runoff.years import SHORT_RECORD_YEARS
-from siting.tables import TEXTURES
 from siting.terrain import Terrain
 
 FloatArray = npt.NDArray[np.float64]
@@ -65,7 +64,7 @@ def plots_frame(case: Case, found: Findings) -> pd.DataFrame:
         "height_above_channel_m": own.height_above_channel_m,
         "position": _terms(own.position, POSITION_TERMS),
         "soil_group": _terms(own.soil_group, ("", *SOIL_GROUPS.values)),
-        "texture": _terms(own.texture, TEXTURES),
+        "texture": [case.place.soil.kinds[kind].texture if kind >= 0 else None for kind in own.soil_kind],
         "curve_number": case.curve_number,
         "available_water_mm": case.soil.available_water_mm,
         "catchment_ratio": catchments.area_m2 / plots.area_m2,
@@ -82,6 +81,7 @@ def plots_frame(case: Case, found: Findings) -> pd.DataFrame:
         "score": order.score,
         **{f"score_{name}": values for name, values in order.components.items()},
         **_set_columns(found.together, plots.count),
+        "storm_yield_m3": storm_volumes_m3(case),
         **_flood_columns(found.floods, plots.count),
         **_water_columns(case, found.water),
     }
@@ -232,5 +232,23 @@ def seasons_frame(sites: Sites, crop: CropResults) -> pd.DataFrame:
             "rain_only_relative_yield": crop.rain_alone.relative_yield.ravel(),
             "standing_water_days": _or_null(np.nan_to_num(standing).astype(np.int64), ~np.isnan(standing)),
             "failure": [failure or None for failure in yields.failure.ravel()],
+        }
+    )
+
+
+def months_frame(sites: Sites, crop: CropResults, years: float) -> pd.DataFrame:
+    """Give one row for each plot and month: means over the years of what came, was too much, and was missing."""
+    balance = crop.yields.balance
+    assert balance is not None  # the water stage asks for it
+    count = sites.plots.count
+    surplus = balance.overflow_mm + balance.percolation_mm
+    return pd.DataFrame(
+        {
+            "plot_id": np.repeat(sites.plot_id, 12),
+            "month": np.tile(np.arange(1, 13), count),
+            "rain_mm": balance.rain_mm.ravel() / years,
+            "runon_mm": balance.runon_mm.ravel() / years,
+            "surplus_mm": surplus.ravel() / years,
+            "shortage_mm": balance.shortage_mm.ravel() / years,
         }
     )

@@ -1,13 +1,13 @@
 """In which order the plots stand: by supply, which a hand can follow, and by score."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import numpy.typing as npt
 
 from siting.pipeline.case import Case
 from siting.pipeline.floods import Floods
-from siting.pipeline.water import CropResults, Water
+from siting.pipeline.water import CropResults, Water, storm_volumes_m3
 from siting.pipeline.weather import Weather
 from siting.plots import plot_means
 from siting.ranking import dependable, mean_capped_ratio, reliability, supply_order
@@ -35,7 +35,9 @@ def order_plots(case: Case, water: Water | None, floods: Floods | None) -> Order
     count = case.sites.plots.count
     unknown = np.full(count, np.nan)
     nothing = Order(np.zeros(count, np.int64), np.zeros(count, np.int64), unknown, dict.fromkeys(COMPONENTS, unknown), False)
-    if water is None or water.crop is None or floods is None or case.weather is None:
+    if case.weather is None:
+        return replace(nothing, rank=_storm_rank(case))
+    if water is None or water.crop is None or floods is None:
         return nothing
     by_supply, known = _supply_rank(case, water.crop, floods)
     parts = _components(case, case.weather, water.crop, floods)
@@ -52,6 +54,17 @@ def order_plots(case: Case, water: Water | None, floods: Floods | None) -> Order
     follows_score = case.settings.ranking.order == "score" and "water" in found.used
     components = {name: getattr(parts, name) if name in found.used else unknown for name in COMPONENTS}
     return Order(by_supply, by_score if follows_score else by_supply, total, components, follows_score)
+
+
+def _storm_rank(case: Case) -> Integers:
+    """Rank by the run-on of one storm over the plot, as far as the plot takes it in; then by its volume."""
+    volume, area = storm_volumes_m3(case), case.sites.plots.area_m2
+    usable = np.minimum(1000.0 * volume / area, case.soil.intake_capacity_mm)
+    known = ~np.isnan(usable)
+    rank = np.zeros(area.size, dtype=np.int64)
+    order = np.lexsort((case.sites.plot_id, -np.nan_to_num(volume), np.where(known, -usable, np.inf)))
+    rank[order] = np.arange(1, area.size + 1)
+    return np.where(known, rank, UNRANKED)
 
 
 def _supply_rank(case: Case, crop: CropResults, floods: Floods) -> tuple[Integers, npt.NDArray[np.bool_]]:

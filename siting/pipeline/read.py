@@ -14,12 +14,9 @@ from siting.config import Project
 from siting.demand.weather import Climate
 from siting.errors import ConfigError
 from siting.grid import Grid, Raster
+from siting.inputs import SoilMap
 from siting.notes import Notes
-from siting.runoff import CoverClass, Rain, curve_numbers
-from siting.tables import TEXTURES, soil
-
-UNKNOWN_TEXTURE = -1
-GROUP_CODES = {"A": 1, "B": 2, "C": 3, "D": 4}
+from siting.runoff import CoverClass, RainField, RainGenerator, curve_numbers
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -30,13 +27,12 @@ class Place:
     inside: npt.NDArray[np.bool_] | None
     excluded: npt.NDArray[np.bool_] | None
     pan_layer: npt.NDArray[np.int8] | None
-    texture: npt.NDArray[np.int8]
-    soil_group: npt.NDArray[np.uint8]
+    soil: SoilMap
     curve_number: npt.NDArray[np.float32]
     runs_after_mm: npt.NDArray[np.float32]
     given_label: npt.NDArray[np.int32] | None
     given_names: list[str]
-    rain: Rain | None
+    rain: RainField | None
     climate: Climate | None
     villages: gpd.GeoDataFrame | None
 
@@ -60,9 +56,8 @@ def read_place(project: Project, notes: Notes) -> Place:
         notes=notes,
     )
     grid, outline = dem.grid, settings.place
-    texture = _texture(settings.soil, grid, notes)
-    group = _soil_group(settings.soil, texture)
-    number, runs_after = _curve_number(settings, grid, group, notes)
+    soil = inputs.read_soil(inputs.SoilInputs(**settings.soil.model_dump(exclude={"crusted"})), grid, notes=notes)
+    number, runs_after = _curve_number(settings, grid, soil.soil_group, notes)
     label, names = (None, []) if settings.plots.given is None else inputs.read_given_plots(settings.plots.given, grid)
     villages = settings.villages
     return Place(
@@ -70,13 +65,12 @@ def read_place(project: Project, notes: Notes) -> Place:
         None if outline.boundary is None else inputs.read_boundary(outline.boundary, grid, notes=notes),
         inputs.read_exclusions(outline.exclude, grid, setback_m=outline.setback_m, notes=notes) if outline.exclude else None,
         None if settings.terrain.pans is None else inputs.read_pan_layer(settings.terrain.pans, grid),
-        texture,
-        group,
+        soil,
         number,
         runs_after,
         label,
         names,
-        None if settings.rain.daily is None else inputs.read_rain(settings.rain.daily, unit=settings.rain.unit, notes=notes),
+        None if settings.rain.daily is None else _rain(settings.rain.daily, settings.rain, grid, notes),
         None if settings.climate.daily is None else inputs.read_climate(settings.climate.daily),
         None
         if villages.file is None
@@ -89,18 +83,13 @@ def _everywhere(value: Any, grid: Grid) -> npt.NDArray[Any]:
     return np.broadcast_to(value, grid.shape)
 
 
-def _texture(settings: Any, grid: Grid, notes: Notes) -> npt.NDArray[np.int8]:
-    """Return the texture class of each cell as its place in TEXTURES, -1 where unknown."""
-    if settings.map is None:
-        code = UNKNOWN_TEXTURE if settings.texture is None else TEXTURES.index(soil(settings.texture).texture)
-        return _everywhere(np.int8(code), grid)
-    found = inputs.read_map(settings.map, grid, column=settings.column, setting="soil.map", notes=notes)
-    names = found.values
-    if inputs.is_raster(settings.map):
-        meanings = _meanings(settings.table, ("texture",), "soil.table", settings.map)
-        names = tuple(_meaning(meanings, value, "soil.table")["texture"] for value in found.values)
-    codes = [TEXTURES.index(soil(name).texture) for name in names]
-    return np.array([*codes, UNKNOWN_TEXTURE], dtype=np.int8)[found.code]
+def _rain(daily: Path, settings: Any, grid: Grid, notes: Notes) -> RainField:
+    """Read the record, of one gauge or of several, and which of it falls where."""
+    stations = None if settings.stations is None else inputs.read_stations(settings.stations, grid)
+    generator = RainGenerator(settings.wet_day_mm, settings.seed) if settings.generator else None
+    names = None if stations is None else stations.name
+    record = inputs.read_rain_stations(daily, names, unit=settings.unit, generator=generator, notes=notes)
+    return inputs.read_rain_zones(record, grid, stations=stations, rain_map=settings.map, notes=notes)
 
 
 def _meanings(table: Path | None, needed: tuple[str, ...], setting: str, of: Path) -> dict[str, dict[str, str]]:
@@ -115,21 +104,6 @@ def _meaning(meanings: dict[str, dict[str, str]], value: str, setting: str) -> d
         msg = f"the map has the value {value}, which {setting} does not explain; add a row for it"
         raise ConfigError(msg)
     return meanings[value]
-
-
-def _soil_group(settings: Any, texture: npt.NDArray[np.int8]) -> npt.NDArray[np.uint8]:
-    """Return the soil group of each cell: as given, else by texture; 0 where unknown."""
-    if settings.soil_group is not None:
-        letter = settings.soil_group.split("/")[-1]
-        return np.broadcast_to(np.uint8(GROUP_CODES[letter]), texture.shape)
-    codes = np.zeros(len(TEXTURES) + 1, dtype=np.uint8)
-    for place in np.unique(texture[texture >= 0]):
-        group = soil(TEXTURES[place]).soil_group
-        if group is None:
-            msg = f"texture {TEXTURES[place]!r} has no hydrologic soil group in print; give it in soil.soil_group"
-            raise ConfigError(msg)
-        codes[place] = GROUP_CODES[group]
-    return codes[texture]
 
 
 def _curve_number(

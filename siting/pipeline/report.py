@@ -13,7 +13,6 @@ from siting.pipeline.read import Place, read_place
 from siting.pipeline.weather import Weather, weather_of
 from siting.ranking import dependable
 from siting.runoff import RunoffClasses, classify, yearly_totals
-from siting.tables import TEXTURES
 
 GIGABYTE = 1e9
 
@@ -104,9 +103,13 @@ def _room_around(place: Place, project: Project, notes: Notes) -> dict[str, Any]
 
 
 def _soil(place: Place) -> dict[str, Any]:
-    known = ~np.isnan(place.dem.values)
-    shares = _shares(place.texture[known] + 1, ("unknown texture", *TEXTURES))
-    return shares | _shares(place.soil_group[known], ("unknown soil group", *(f"soil group {letter}" for letter in "ABCD")))
+    known, soil = ~np.isnan(place.dem.values), place.soil
+    kinds = _shares(soil.code[known] + 1, ("unknown soil", *(kind.name for kind in soil.kinds)))
+    groups = _shares(soil.soil_group[known], ("unknown soil group", *(f"soil group {letter}" for letter in "ABCD")))
+    depth = soil.depth_m[known]
+    if np.isnan(depth).all():
+        return kinds | groups
+    return kinds | groups | {"depth, m": f"{np.nanmin(depth):.2g} to {np.nanmax(depth):.2g}"}
 
 
 def _shares(codes: Any, names: tuple[str, ...]) -> dict[str, Any]:
@@ -130,11 +133,13 @@ def _cover(place: Place, project: Project) -> list[dict[str, Any]]:
 
 
 def _rain(weather: Weather, project: Project) -> dict[str, Any]:
-    rain, years = weather.rain, weather.years
+    record, years = weather.record, weather.years
+    rain = record.of(0)
     totals = yearly_totals(rain.as_dry_mm, rain.days, years)
     share = project.settings.ranking.dependable
     et0 = weather.et0_mm
     return {
+        "stations": ", ".join(record.station) or "one",
         "days": f"{rain.days[0]} to {rain.days[-1]}",
         "days without a reading": int(np.isnan(rain.rain_mm).sum()),
         "complete years": int(years.labels.size),
@@ -157,8 +162,8 @@ def _crop(crop: CropChoice, weather: Weather | None) -> dict[str, Any]:
     }
     if last is not None:
         found["sown until"] = f"{last[0]:02d}-{last[1]:02d}"
-    if weather is not None and weather.record is not None:
-        coefficients, seasons = crop.water.coefficients(), weather.record.seasons
+    if weather is not None and weather.crops:
+        coefficients, seasons = crop.water.coefficients(), weather.seasons
         demand = [float(np.dot(coefficients, weather.et0_mm[day : day + coefficients.size])) for day in seasons.sowing]
         found |= {"seasons": int(seasons.label.size), "demand, mean of seasons, mm": float(np.mean(demand))}
     return found

@@ -109,13 +109,12 @@ def _cell_size(ground: Terrain) -> dict[str, Any]:
 def screening_of(place: Place, ground: Terrain, project: Project) -> tuple[Ground, Limits]:
     """Return what the tests look at, and the limits in use."""
     settings, pans = project.settings.plots, ground.pans
-    depth = project.settings.soil.depth_m
     deepest = deepest_part(elevation=ground.elevation, pan_label=pans.label, pan_depth_m=pans.depth_m)
     looked_at = Ground(
         valid=ground.direction != 255,
         inside=place.inside,
         excluded=place.excluded,
-        soil_depth_m=np.nan if depth is None else depth,
+        soil_depth_m=place.soil.depth_m,
         slope=ground.slope,
         position=ground.position,
         height_above_channel_m=ground.height_above_channel_m,

@@ -21,6 +21,7 @@ from siting.pipeline.forecast import refuse_what_does_not_fit
 from siting.pipeline.order import Order, order_plots
 from siting.pipeline.read import Place, read_place
 from siting.pipeline.results import Results, summarise
+from siting.pipeline.runoff import runoff_classes
 from siting.pipeline.sites import find_sites, mean_curve_number
 from siting.pipeline.soil import soil_of_plots
 from siting.pipeline.surface import plot_ground
@@ -29,8 +30,9 @@ from siting.pipeline.villages import village_cells, villages_layer
 from siting.pipeline.water import Water, plot_water
 from siting.pipeline.weather import weather_of
 from siting.progress import Progress
-from siting.runoff import RunoffClasses, classify
 from siting.terrain import Terrain, analyse
+
+DAYS_OF_YEAR = 365.25
 
 LEAST_PAN_MM = 10.0
 """A pan that holds less over its catchment is filled by one good storm (our assumption)."""
@@ -75,13 +77,13 @@ def _case(project: Project, notes: Notes, clock: Clock, threads: int) -> Case:
     with clock.stage("terrain"):
         ground = analyse_terrain(place, project, threads, clock.progress, notes)
     with clock.stage("runoff classes"):
-        classes = runoff_classes(place, ground, project, notes)
+        classes, cell_number = runoff_classes(place, ground, project, notes)
     with clock.stage("plots"):
         sites = find_sites(place, ground, classes, project, notes)
         own = plot_ground(sites, place, ground)
-        soil = soil_of_plots(own.texture, own.drop_m, project, crop, notes)
+        soil = soil_of_plots(place.soil, own, project, crop)
         number = mean_curve_number(sites, classes)
-    return Case(project, notes, threads, place, weather, ground, classes, sites, own, soil, number)
+    return Case(project, notes, threads, place, weather, ground, classes, sites, own, soil, number, cell_number)
 
 
 def _together(case: Case, water: Water | None, order: Order) -> tuple[Together | None, dict[str, Any]]:
@@ -97,6 +99,13 @@ def _together(case: Case, water: Water | None, order: Order) -> tuple[Together |
     lost = ledger(case, water, below, together.forest, together.chosen, cells.count)
     villages = villages_layer(case, cells, water, order, together.chosen, lost)
     return together, {"villages": villages, "downstream": lost.table}
+
+
+def _years_of_seasons(case: Case) -> float:
+    """Return the length of all seasons together, from harvest to harvest, in years; there is a crop."""
+    assert case.weather is not None
+    seasons = case.weather.seasons
+    return float((seasons.end - seasons.first).sum()) / DAYS_OF_YEAR
 
 
 def analyse_terrain(place: Place, project: Project, threads: int, progress: Progress, notes: Notes) -> Terrain:
@@ -143,18 +152,6 @@ def _tell_pans(ground: Terrain, notes: Notes) -> None:
         )
 
 
-def runoff_classes(place: Place, ground: Terrain, project: Project, notes: Notes) -> RunoffClasses:
-    """Sort the ground by how it runs off; the rain after which each class runs is noted, for people can confirm it."""
-    ratio = project.settings.runoff.abstraction_ratio
-    classes = classify(curve_number=place.curve_number, runs_after_mm=place.runs_after_mm, valid=ground.direction != 255)
-    starts = zip(classes.label, classes.starts_at_mm(abstraction_ratio=ratio), strict=True)
-    if classes.count and np.isnan(classes.runs_after_mm).any():
-        told = ", ".join(f"{label} after {rain_mm:.0f}" for label, rain_mm in starts)
-        source = "the abstraction ratio; ask people whether it is so, and else set cover.runs_after_mm"
-        notes.assume("runoff.starts", told, "mm of rain in a day", source, "all run-on, most of all in dry years")
-    return classes
-
-
 def _tables(frame: pd.DataFrame, case: Case, water: Water | None) -> dict[str, Any]:
     """Return every layer and table of plots and ground that holds rows; the writer adds those that hold none."""
     tables: dict[str, Any] = {
@@ -167,4 +164,5 @@ def _tables(frame: pd.DataFrame, case: Case, water: Water | None) -> dict[str, A
     }
     if water is not None and water.crop is not None:
         tables["seasons"] = frames.seasons_frame(case.sites, water.crop)
+        tables["months"] = frames.months_frame(case.sites, water.crop, _years_of_seasons(case))
     return tables

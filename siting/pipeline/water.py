@@ -1,6 +1,5 @@
 """From ground above each plot to its water by year and by season, and to yields, a few plots at a time."""
 
-from collections.abc import Sequence
 from dataclasses import dataclass, fields
 from functools import partial
 from typing import Any
@@ -11,13 +10,15 @@ import numpy.typing as npt
 from siting.demand import CropRecord, SeasonTable, SeasonYields, daily_balance, seasonal_supply
 from siting.parallel import run_all
 from siting.pipeline.case import Case
+from siting.pipeline.runoff import daily_runoff_mm
 from siting.pipeline.sites import MOST_UNCLASSED_SHARE, WITH_LOSSES, poorly_classed
 from siting.pipeline.weather import Weather
 from siting.plots import Catchments
 from siting.ranking import SufficientRatio, SupportedArea, dependable, sufficient_ratio, supported_area
-from siting.runoff import class_runoff_mm, delivered_m3, yearly_totals
+from siting.runoff import delivered_m3, runoff_depth_mm, yearly_totals
 
 FloatArray = npt.NDArray[np.float64]
+Integers = npt.NDArray[np.int64]
 
 OTHER_RATIO = {0.2: 0.05, 0.05: 0.2}
 """The abstraction ratio that is shown beside the one in use."""
@@ -60,23 +61,29 @@ def plot_water(case: Case, weather: Weather) -> Water:
     used, share = case.settings.runoff.abstraction_ratio, case.settings.ranking.dependable
     other = OTHER_RATIO[used]
     work = _Simulation(case, weather, _known_area(case))
-    starts = range(0, case.sites.plots.count, PLOTS_AT_ONCE)
+    groups = _groups(case.own.rain_zone)
     parts = {}
     for ratio in (used, other):
-        runoff = np.zeros((1, weather.rain.days.size))
-        if case.classes.count:
-            runoff = class_runoff_mm(weather.rain.as_dry_mm, case.classes, abstraction_ratio=ratio)
-        some = partial(work.some_plots, runoff, with_yields=ratio == used)
-        parts[ratio] = run_all(some, [(slice(start, start + PLOTS_AT_ONCE),) for start in starts], case.threads)
-    yearly, room = (np.concatenate([getattr(part, name) for part in parts[used]]) for name in ("yearly_m3", "room_m3"))
+        some = partial(work.some_plots, daily_runoff_mm(case, weather, ratio), with_yields=ratio == used)
+        parts[ratio] = _in_order(run_all(some, [(plots,) for plots in groups], case.threads), np.concatenate(groups))
+    yearly = parts[used].yearly_m3
     shares = {"dry": share, "median": 0.5, "wet": 1.0 - share}
     return Water(
         yearly,
-        room,
+        parts[used].room_m3,
         {name: dependable(yearly, probability=probability) for name, probability in shares.items()},
-        dependable(np.concatenate([part.yearly_m3 for part in parts[other]]), probability=share),
-        None if weather.record is None else _crop_results(parts[used], parts[other], share),
+        dependable(parts[other].yearly_m3, probability=share),
+        _crop_results(parts[used], parts[other], share) if weather.crops else None,
     )
+
+
+def _groups(rain_zone: Integers) -> list[Integers]:
+    """Return plots of one rain zone together, a few at a time."""
+    found = []
+    for zone in np.unique(rain_zone):
+        plots = np.flatnonzero(rain_zone == zone)
+        found += [plots[first : first + PLOTS_AT_ONCE] for first in range(0, plots.size, PLOTS_AT_ONCE)]
+    return found
 
 
 def _known_area(case: Case) -> FloatArray:
@@ -103,14 +110,13 @@ def known_areas(catchments: Catchments) -> FloatArray:
 def yearly_volumes(case: Case, weather: Weather, catchments: Catchments) -> FloatArray:
     """Return the run-on of each catchment by complete year, m3, under the abstraction ratio in use; NaN unknown."""
     settings = case.settings
-    ratio = settings.runoff.abstraction_ratio
     volume = delivered_m3(
         known_areas(catchments)[WITH_LOSSES],
         settings.terrain.channel_width_m * catchments.bed_length_m,
-        class_runoff_mm(weather.rain.as_dry_mm, case.classes, abstraction_ratio=ratio),
+        daily_runoff_mm(case, weather, settings.runoff.abstraction_ratio),
         channel_wetting_mm=settings.runoff.channel_wetting_mm,
     )
-    return yearly_totals(volume, weather.rain.days, weather.years)
+    return yearly_totals(volume, weather.days, weather.years)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -133,8 +139,8 @@ class _Simulation:
     weather: Weather
     area_m2: FloatArray
 
-    def some_plots(self, runoff_mm: FloatArray, part: slice, *, with_yields: bool) -> _Part:
-        """Simulate a few plots under one abstraction ratio."""
+    def some_plots(self, runoff_mm: FloatArray, part: Integers, *, with_yields: bool) -> _Part:
+        """Simulate a few plots of one rain zone under one abstraction ratio."""
         settings, sites, soil = self.case.settings, self.case.sites, self.case.soil
         volume = delivered_m3(
             self.area_m2[part],
@@ -144,16 +150,16 @@ class _Simulation:
         )
         most_m3 = soil.intake_capacity_mm[part] * sites.plots.area_m2[part] / 1000.0
         yearly, room = (
-            yearly_totals(each, self.weather.rain.days, self.weather.years)
+            yearly_totals(each, self.weather.days, self.weather.years)
             for each in (volume, np.minimum(volume, most_m3[:, None]))
         )
-        record = self.weather.record
-        if record is None:
+        if not self.weather.crops:
             return _Part(yearly, room)
+        record = self.weather.crops[max(int(self.case.own.rain_zone[part[0]]), 0)]
         table = self._seasonal(record, volume, part)
         return _Part(yearly, room, table, *(self._yields(record, volume, part) if with_yields else ()))
 
-    def _seasonal(self, record: CropRecord, volume: FloatArray, part: slice) -> SeasonTable:
+    def _seasonal(self, record: CropRecord, volume: FloatArray, part: Integers) -> SeasonTable:
         crop = record.crop
         return seasonal_supply(
             runon_m3=volume,
@@ -170,16 +176,24 @@ class _Simulation:
         )
 
     def _yields(
-        self, record: CropRecord, volume: FloatArray, part: slice
+        self, record: CropRecord, volume: FloatArray, part: Integers
     ) -> tuple[SeasonYields, SeasonYields, SupportedArea]:
         """Run the daily method with run-on and on rain alone, and find the area that the run-on supports."""
         settings = self.case.settings.crop
         area = self.case.sites.plots.area_m2[part]
-        soil = self.case.soil.soil.take(np.arange(self.case.sites.plots.count)[part])
+        soil = self.case.soil.soil.take(part)
 
         def yields_at(places: npt.NDArray[np.int64], area_m2: FloatArray) -> SeasonYields:
             return daily_balance(record, runon_m3=volume[places], soil=soil.take(places), plot_area_m2=area_m2, threads=1)
 
+        yields = daily_balance(
+            record,
+            runon_m3=volume,
+            soil=soil,
+            plot_area_m2=area,
+            period=_month_of_season_days(record),
+            threads=1,
+        )
         rain_alone = daily_balance(record, runon_m3=None, soil=soil, plot_area_m2=area, threads=1)
         supported = supported_area(
             yields_at,
@@ -189,34 +203,65 @@ class _Simulation:
             target_reliability=settings.target_reliability,
             standing_water_days=settings.standing_water_days,
         )
-        return yields_at(np.arange(area.size), area), rain_alone, supported
+        return yields, rain_alone, supported
 
 
-def _crop_results(used: list[_Part], other: list[_Part], share: float) -> CropResults:
+def _month_of_season_days(record: CropRecord) -> Integers:
+    """Return the month of each day, from 0, and -1 for days that belong to no season."""
+    month = record.days.astype("datetime64[M]").astype(np.int64) % 12
+    within = np.zeros(month.size, dtype=np.bool_)
+    for first, end in zip(record.seasons.first, record.seasons.end, strict=True):
+        within[first:end] = True
+    return np.where(within, month, -1)
+
+
+def storm_volumes_m3(case: Case) -> FloatArray:
+    """Return the run-on of one design storm at each plot, m3, under the abstraction ratio in use; NaN unknown."""
+    settings, catchments = case.settings, case.sites.catchments
+    if case.classes.count == 0:
+        return np.full(case.sites.plots.count, np.nan)
+    ratio = settings.runoff.abstraction_ratio
+    depth = runoff_depth_mm(
+        settings.rain.design_storm_mm, case.classes.retention_mm(abstraction_ratio=ratio), abstraction_ratio=ratio
+    )
+    volume = delivered_m3(
+        known_areas(catchments)[WITH_LOSSES],
+        settings.terrain.channel_width_m * catchments.bed_length_m,
+        depth[:, None],
+        channel_wetting_mm=settings.runoff.channel_wetting_mm,
+    )
+    return np.asarray(volume[:, 0])
+
+
+def _crop_results(used: _Part, other: _Part, share: float) -> CropResults:
     """Take the quantiles of each plot's own seasons."""
-    seasons = _joined([part.seasons for part in used])
-    ratio_other = np.concatenate([part.seasons.supply_ratio for part in other if part.seasons is not None])
+    assert used.seasons is not None and used.yields is not None  # there is a crop
+    assert used.rain_alone is not None and used.supported is not None and other.seasons is not None
+    seasons = used.seasons
     return CropResults(
         seasons,
-        dependable(ratio_other, probability=share),
+        dependable(other.seasons.supply_ratio, probability=share),
         sufficient_ratio(seasons.needed_ratio, lacks_runon=seasons.lacks_runon, share_of_seasons=share),
-        _joined([part.yields for part in used]),
-        _joined([part.rain_alone for part in used]),
-        _joined([part.supported for part in used]),
+        used.yields,
+        used.rain_alone,
+        used.supported,
     )
 
 
-ALIKE = ("label", "balance")
+ALIKE = ("label",)
 """Columns that hold for all plots together."""
 
 
-def _joined(tables: Sequence[Any]) -> Any:
-    """Put the results of several groups of plots, columns by plot, under one another."""
-    first = tables[0]
-    columns = {
-        each.name: getattr(first, each.name)
-        if each.name in ALIKE
-        else np.concatenate([getattr(table, each.name) for table in tables])
-        for each in fields(first)
-    }
+def _in_order(parts: list[Any], plots: Integers) -> Any:
+    """Put the results of several groups of plots together again, in the order of the plots."""
+    first, back = parts[0], np.argsort(plots)
+    columns: dict[str, Any] = {}
+    for each in fields(first):
+        values = [getattr(part, each.name) for part in parts]
+        if each.name in ALIKE or values[0] is None:
+            columns[each.name] = values[0]
+        elif isinstance(values[0], np.ndarray):
+            columns[each.name] = np.concatenate(values)[back]
+        else:
+            columns[each.name] = _in_order(values, plots)
     return type(first)(**columns)

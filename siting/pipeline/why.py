@@ -13,8 +13,9 @@ from siting.layers.codes import POSITIONS, WHY_NOT
 from siting.notes import Notes
 from siting.parallel import usable_threads
 from siting.pipeline.read import Place, read_place
+from siting.pipeline.runoff import runoff_classes
 from siting.pipeline.sites import find_sites, screening_of
-from siting.pipeline.stages import analyse_terrain, runoff_classes
+from siting.pipeline.stages import analyse_terrain
 from siting.plots import Limits, judge
 from siting.plots.screening import (
     CHANNEL_STRIP,
@@ -83,7 +84,7 @@ def why(project: Project, x: float, y: float, *, lonlat: bool, threads: int | No
     place = read_place(project, notes)
     row, col = _cell(place, x, y, lonlat)
     ground = analyse_terrain(place, project, workers, progress, notes)
-    sites = find_sites(place, ground, runoff_classes(place, ground, project, notes), project, notes)
+    sites = find_sites(place, ground, runoff_classes(place, ground, project, notes)[0], project, notes)
     looked_at, limits = screening_of(place, ground, project)
     judged = judge(looked_at, limits, row=row, col=col)
     reason, plot = int(sites.plots.reason[row, col]), int(sites.plots.label[row, col])

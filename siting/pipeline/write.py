@@ -19,10 +19,11 @@ from siting.outputs import azimuth_deg, file_hashes, sha256, write_cog, write_ge
 from siting.outputs.run_record import RUN_RECORD
 from siting.pipeline.case import Case
 from siting.pipeline.clock import Clock
+from siting.pipeline.runoff import daily_runoff_mm
 from siting.pipeline.together import Together, told_set
 from siting.progress import Progress
 from siting.ranking import dependable
-from siting.runoff import class_runoff_mm, yearly_totals
+from siting.runoff import yearly_totals
 from siting.terrain import Terrain
 
 GEOPACKAGE = "siting.gpkg"
@@ -67,8 +68,8 @@ def run_info(case: Case, together: Together | None) -> dict[str, str]:
     if weather is not None:
         labels = weather.years.labels
         found["rain years"] = f"{labels.size} complete, {labels[0]} to {labels[-1]}, from month {weather.years.starts_month}"
-    if weather is not None and weather.record is not None:
-        found["seasons"] = str(weather.record.seasons.label.size)
+    if weather is not None and weather.crops:
+        found["seasons"] = str(weather.seasons.label.size)
     if together is not None:
         found["set"] = told_set(together, case.sites)
     return found
@@ -86,7 +87,7 @@ def write_rasters(folder: Path, case: Case, progress: Progress) -> None:
         "wetness_index": lambda: ground.wetness_index,
         "height_above_channel_m": lambda: ground.height_above_channel_m,
         "position": lambda: np.where(ground.position == 0, 255, ground.position).astype(np.uint8),
-        "curve_number": lambda: np.where(ground.direction == 255, np.nan, case.place.curve_number),
+        "curve_number": lambda: np.where(ground.direction == 255, np.nan, case.cell_curve_number),
         "runoff_median_mm": lambda: _runoff_median_mm(case),
         "why_not": lambda: case.sites.plots.reason,
     }
@@ -100,9 +101,8 @@ def _runoff_median_mm(case: Case) -> npt.NDArray[np.float32]:
     classes, weather = case.classes, case.weather
     by_class = np.full(classes.count + 1, np.nan, dtype=np.float32)
     if weather is not None and classes.count:
-        ratio = case.settings.runoff.abstraction_ratio
-        daily = class_runoff_mm(weather.rain.as_dry_mm, classes, abstraction_ratio=ratio)
-        by_class[:-1] = dependable(yearly_totals(daily, weather.rain.days, weather.years), probability=0.5)
+        daily = daily_runoff_mm(case, weather, case.settings.runoff.abstraction_ratio)
+        by_class[:-1] = dependable(yearly_totals(daily, weather.days, weather.years), probability=0.5)
     return by_class[np.minimum(classes.class_of_cell, classes.count)]
 
 

@@ -71,7 +71,7 @@ def make_plots(
     given_names: Sequence[str] | None = None,
 ) -> PlotLabels:
     """
-    Join cells that passed into patches and divide each into plots near the target area.
+    Join cells that passed and share edges into patches, and divide each into plots near the target area.
 
     A patch is to hold the nearest whole number of target areas, at least one. Its plots grow one after another, each
     from the free cell that most water enters from outside the patch (ties: the cell with most weight, then lowest row,

@@ -6,7 +6,7 @@ import numpy as np
 import numpy.typing as npt
 
 from siting.grid import AREA_UNIT_M2
-from siting.terrain._kernels.depressions import label_patches
+from siting.plots._kernels.patches import label_edge_patches
 
 FloatArray = npt.NDArray[np.float64]
 Mask = npt.NDArray[np.bool_]
@@ -45,9 +45,9 @@ def cell_areas_m2(cell_width_m: FloatArray, cell_height_m: FloatArray) -> FloatA
 
 
 def label_parts(mask: Mask) -> tuple[Labels, int]:
-    """Label the 8-connected patches of a mask from 1, in the order of their first cells; return how many, too."""
+    """Label the patches of cells that share edges from 1, in the order of their first cells; return how many, too."""
     label = np.zeros(mask.shape, dtype=np.int32)
-    count = label_patches(mask, label, np.empty(int(np.count_nonzero(mask)) + 8, dtype=np.int64))
+    count = label_edge_patches(mask, label, np.empty(int(np.count_nonzero(mask)) + 8, dtype=np.int64))
     return label, int(count)
 
 

@@ -8,6 +8,7 @@ from typing import Any
 import geopandas as gpd
 import numpy as np
 import pandas as pd
+import pyogrio
 import pytest
 import rasterio
 from affine import Affine
@@ -244,3 +245,14 @@ def test_a_checksum_is_that_of_the_bytes(tmp_path: Path) -> None:
     path = tmp_path / "abc"
     path.write_bytes(b"abc")
     assert inputs.sha256_of(path).startswith("ba7816bf8f01cfea414140de5dae2223")
+
+
+def test_villages_of_a_spreadsheet_are_those_of_the_same_csv(tmp_path: Path) -> None:
+    table = pd.DataFrame({"name": ["=1+1", "Ünder"], "people": [12, 40], "lon": [35.01, 35.02], "lat": [30.81, 30.82]})
+    table.to_csv(tmp_path / "v.csv", index=False)
+    pyogrio.write_dataframe(table, tmp_path / "v.xlsx", driver="XLSX")
+    grid = metric_grid(100, 100, 100.0, west=690_000.0, north=3_415_000.0)
+    csv, xlsx = (inputs.read_villages(tmp_path / name, grid, name="name", people="people") for name in ("v.csv", "v.xlsx"))
+    one, other = (pd.DataFrame(frame.drop(columns="geometry")) for frame in (csv, xlsx))
+    pd.testing.assert_frame_equal(one, other, check_dtype=False)
+    assert csv.geometry.geom_equals_exact(xlsx.geometry, 1e-6).all()

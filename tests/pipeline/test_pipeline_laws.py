@@ -72,13 +72,11 @@ def test_a_higher_curve_number_never_lowers_a_yield(
     assert (high["yield_wet_m3"] > low["yield_wet_m3"]).any()
 
 
-def test_without_rain_what_needs_years_is_null_and_nothing_is_ranked(
-    tmp_path: Path, write_dem: Write, run_flags: Run, valley: np.ndarray
-) -> None:
+def test_without_rain_what_needs_years_is_null(tmp_path: Path, write_dem: Write, run_flags: Run, valley: np.ndarray) -> None:
     results = run_flags(write_dem(tmp_path / "dem.tif", valley, 10.0), tmp_path / "out", rain__daily=None)
     plots = plots_of(tmp_path / "out")
     assert len(plots) > 3
-    assert plots[["rank", "supply_rank", "yield_dry_m3", "supply_ratio_dry", "crop_demand_mm"]].isna().all(axis=None)
+    assert plots[["supply_rank", "yield_dry_m3", "supply_ratio_dry", "crop_demand_mm"]].isna().all(axis=None)
     assert plots["catchment_area_m2"].notna().all()
     assert "no_rain" in {one.code for one in results.warnings}
     assert len(pyogrio.read_dataframe(tmp_path / "out" / "siting.gpkg", layer="seasons")) == 0

@@ -89,6 +89,8 @@ def _heading(summary: Mapping[str, Any]) -> str:
     if number == 0:
         return "No plot was found; the reasons below tell what stopped the ground."
     shown = min(number, SHOWN_PLOTS, len(summary["plots"]))
+    if summary["plots"][0]["rank"] is None:
+        return f"{number} plot{'s' if number != 1 else ''}, not ranked (see the warnings); the first {shown}:"
     return f"{number} plot{'s' if number != 1 else ''}, the best {shown} first:"
 
 

@@ -12,6 +12,9 @@ Array = npt.NDArray[Any]
 
 LEFT_OVER = -1
 
+ACROSS_EDGES = (1, 3, 5, 7)
+"""Directions to the neighbours that share an edge: cells that touch at a corner alone make no field."""
+
 
 @kernel
 def outside_inflow(cells: Array, group: Array, direction: Array, weight: Array, inflow: Array) -> None:
@@ -28,10 +31,36 @@ def outside_inflow(cells: Array, group: Array, direction: Array, weight: Array, 
 
 
 @kernel
+def label_edge_patches(mask: Array, label: Array, stack: Array) -> int:
+    """Label the patches of a mask whose cells share edges, from 1 in row order; return how many."""
+    rows, cols = mask.shape
+    count = 0
+    for row in range(rows):
+        for col in range(cols):
+            if not mask[row, col] or label[row, col] != 0:
+                continue
+            count += 1
+            label[row, col] = count
+            stack[0], depth = row * cols + col, 1
+            while depth > 0:
+                depth -= 1
+                here_row, here_col = stack[depth] // cols, stack[depth] % cols
+                for code in ACROSS_EDGES:
+                    to_row, to_col = here_row + STEP_ROW[code], here_col + STEP_COL[code]
+                    if to_row < 0 or to_col < 0 or to_row >= rows or to_col >= cols:
+                        continue
+                    if mask[to_row, to_col] and label[to_row, to_col] == 0:
+                        label[to_row, to_col] = count
+                        stack[depth] = to_row * cols + to_col
+                        depth += 1
+    return count
+
+
+@kernel
 def _grow(
     start: int, number: int, goal_m2: float, patch: Array, lengths: Array, area_by_row: Array, label: Array, taken: Array
 ) -> tuple[int, float]:
-    """Give cells to a plot in order of their distance from its start inside the patch; return how many, and their area."""
+    """Give cells to a plot by their distance from its start inside the patch, across edges; return number and area."""
     rows, cols = label.shape
     count, area = 0, 0.0
     heap = [(0.0, start)]
@@ -46,12 +75,12 @@ def _grow(
         taken[count] = node
         count += 1
         area += area_by_row[row]
-        for code in range(1, 9):
+        for code in ACROSS_EDGES:
             to_row, to_col = row + STEP_ROW[code], col + STEP_COL[code]
             if to_row < 0 or to_col < 0 or to_row >= rows or to_col >= cols:
                 continue
             if patch[to_row, to_col] == patch[row, col] and label[to_row, to_col] == 0:
-                kind = 0 if STEP_ROW[code] == 0 else 2 if STEP_COL[code] == 0 else 1
+                kind = 0 if STEP_ROW[code] == 0 else 2
                 heapq.heappush(heap, (far + lengths[row, kind], to_row * cols + to_col))
     return count, area
 
