@@ -71,8 +71,8 @@ def count_donors(heights, pours, direction, state, row0, row1):
 
 @part
 def _fall(fall):
-    """Return a fall where it is one, else 0; NaN, the fall to or from a void, compares false."""
-    return fall if fall > np.float32(0.0) else np.float32(0.0)
+    """Return a fall where it is one, else 0, in 64 bits; NaN, the fall to or from a void, compares false."""
+    return np.float64(fall) if fall > 0 else 0.0
 
 
 @part
