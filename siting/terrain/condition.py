@@ -100,21 +100,18 @@ def end_in_pans(
         Numbers and lowest cells (flat indices) of the depressions in which flow is to end. A bottom may also be a cell
         that was not raised.
     """
-    rows, cols = elevation.shape
-    padded = np.full((rows + 2, cols + 2), np.nan, dtype=np.float32)
-    filled = np.array(plain.filled, order="C")
     ends = np.zeros(elevation.shape, dtype=np.bool_)
     ends.ravel()[bottom_cell] = True
-    if filled.size <= PLACE_MASK:
+    if elevation.size <= PLACE_MASK:
+        padded = with_ring(plain.filled).copy()
         most = np.count_nonzero(label) + 1  # far too many for one pan, but memory never touched costs nothing
+        flat, cols = (elevation.ravel(), padded.ravel(), label.ravel()), elevation.shape[1]
 
         def drain(first: int, last: int) -> None:
             heap = np.empty(most, dtype=np.int64)
-            some = slice(first, last)
-            drain_pans(elevation.ravel(), filled.ravel(), label.ravel(), pan_id[some], bottom_cell[some], cols, heap)
+            drain_pans(*flat, pan_id[first:last], bottom_cell[first:last], cols, heap)
 
         run_all(drain, row_bands(pan_id.size, 64), threads)
-        padded[1:-1, 1:-1] = filled
     else:
         padded = fill(elevation, ends, threads=threads, block=block)
     return _directed(padded, ends, inverse_distances(cell_width_m, cell_height_m), block, threads)

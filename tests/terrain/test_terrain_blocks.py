@@ -7,10 +7,11 @@ import richdem
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from made_ground import RASTERS, Heights, conditioned, fractal, kinds_of_ground
-from plain_reference import Plain
+from plain_reference import STEPS, Plain
 
 from siting.errors import GridError
 from siting.terrain.area import accumulate
+from siting.terrain.condition import with_ring
 
 
 @settings(max_examples=150, deadline=None)
@@ -68,6 +69,16 @@ def test_flats_that_wind_through_many_blocks_equal_the_plain_statement() -> None
     plain = Plain(z, np.zeros(z.shape, dtype=np.bool_), 10.0, 12.0)
     for block in (5, 16, 64):
         np.testing.assert_array_equal(conditioned(z, block=block, threads=2).direction, plain.direction)
+
+
+def test_the_ring_of_a_surface_is_taken_over_only_where_it_is_one() -> None:
+    filled = conditioned(fractal(40, 43)).filled
+    ring = with_ring(filled)
+    assert ring is filled.base
+    other = with_ring(filled.copy())
+    np.testing.assert_array_equal(other, ring)
+    larger = np.zeros((42, 42), dtype=np.float32)
+    assert np.isnan(with_ring(larger[1:-1, 1:-1])[0]).all()  # the inside of something else
 
 
 def test_no_cell_is_left_undrained_and_no_water_is_lost() -> None:
@@ -130,6 +141,20 @@ def test_a_cell_at_the_edge_with_lower_ground_inside_drains_inward() -> None:
 def test_directions_that_lead_nowhere_are_refused(codes: list[int]) -> None:
     with pytest.raises(GridError, match="no code or lead off"):
         accumulate(np.array([codes], dtype=np.uint8), np.ones(1), threads=1)
+
+
+def test_every_direction_that_leads_nowhere_is_counted() -> None:
+    rng = np.random.default_rng(41)
+    codes = rng.choice([0, 1, 2, 3, 4, 5, 6, 7, 8, 9, 10, 11, 200, 255], (9, 150)).astype(np.uint8)
+    around = np.pad(codes, 1, constant_values=255)
+    astray = 0
+    for row, col in np.ndindex(codes.shape):
+        code = int(codes[row, col])
+        step = STEPS[code - 1] if 1 <= code <= 8 else (0, 0)
+        lost = 1 <= code <= 8 and around[row + 1 + step[0], col + 1 + step[1]] == 255
+        astray += lost or code not in {*range(1, 11), 255}
+    with pytest.raises(GridError, match=f"^{astray} cells"):
+        accumulate(codes, np.ones(9), threads=2)
 
 
 def test_a_circle_of_flow_is_refused_not_summed() -> None:

@@ -10,21 +10,36 @@ DONE = 255
 
 
 @kernel
+def _is_astray(direction, row, col):
+    """Tell whether a code is no direction, or leads off the raster or into a void."""
+    code = direction[row, col]
+    if code == 0 or code > 8:
+        return code == 0 or (code > 10 and code != VOID)
+    to_row, to_col = row + STEP_ROW[code], col + STEP_COL[code]
+    inside = 0 <= to_row < direction.shape[0] and 0 <= to_col < direction.shape[1]
+    return not inside or direction[to_row, to_col] == VOID
+
+
+@kernel
 def count_astray(direction, row0, row1):
     """Count in rows `row0` to `row1` the codes that are no direction, or lead off the raster or into a void."""
     rows, cols = direction.shape
     astray = 0
     for row in range(row0, row1):
-        for col in range(cols):
-            code = direction[row, col]
-            if 9 <= code <= 10 or code == 255:
-                continue
-            if code == 0 or code > 10:
-                astray += 1
-                continue
-            to_row, to_col = row + STEP_ROW[code], col + STEP_COL[code]
-            inside = 0 <= to_row < rows and 0 <= to_col < cols
-            astray += 0 if inside and direction[to_row, to_col] != 255 else 1
+        if row == 0 or row == rows - 1 or cols < 3:
+            for col in range(cols):
+                astray += _is_astray(direction, row, col)
+            continue
+        north, middle, south = direction[row - 1], direction[row], direction[row + 1]
+        for col in range(1, cols - 1):  # selects only, so that the loop vectorises
+            code = middle[col]
+            wrong = (code == 0) | ((code > 10) & (code != VOID))
+            wrong |= (code == 1) & (middle[col + 1] == VOID) | (code == 5) & (middle[col - 1] == VOID)
+            wrong |= (code == 2) & (south[col + 1] == VOID) | (code == 6) & (north[col - 1] == VOID)
+            wrong |= (code == 3) & (south[col] == VOID) | (code == 7) & (north[col] == VOID)
+            wrong |= (code == 4) & (south[col - 1] == VOID) | (code == 8) & (north[col + 1] == VOID)
+            astray += wrong
+        astray += _is_astray(direction, row, 0) + _is_astray(direction, row, cols - 1)
     return astray
 
 

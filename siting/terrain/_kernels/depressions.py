@@ -136,22 +136,25 @@ def drain_pans(elevation, filled, label, pan_id, bottom, cols, heap):
     """
     Lower the filled surface in each pan to the level at which its cells drain to its `bottom`, no longer out of it.
 
-    Arrays are flat, `cols` cells to a row, and of fewer than 2^32 cells; `heap` takes the cells of the largest pan. Only
-    raised cells are lowered, and of these the neighbours are always there.
+    Arrays are flat, `cols` cells to a row, and of fewer than 2^32 cells; `filled` is padded by one. `heap` takes the
+    cells of the largest pan. Only raised cells are lowered, and of these the neighbours are always there.
     """
     for pan in range(pan_id.size):
         place, size = bottom[pan], 0
-        if elevation[place] < filled[place]:
-            filled[place] = elevation[place] + np.float32(0.0)
-            heap[0], size = _key(filled[place], place), 1
+        node = place + cols + 3 + 2 * (place // cols)  # of the same cell in the padded array
+        if elevation[place] < filled[node]:
+            filled[node] = elevation[place] + np.float32(0.0)
+            heap[0], size = _key(filled[node], place), 1
         while size > 0:
             place = _take_top(heap, size) & PLACE_MASK
             size -= 1
-            level = at(filled, place)
+            node = place + cols + 3 + 2 * (place // cols)
+            level = at(filled, node)
             for code in range(1, 9):
                 other = place + STEP_ROW[code] * cols + STEP_COL[code]
+                other_node = node + STEP_ROW[code] * (cols + 2) + STEP_COL[code]
                 reached = max(at(elevation, other) + np.float32(0.0), level)
-                if reached < at(filled, other) and at(label, other) == pan_id[pan]:
-                    filled[np.uint64(other)] = reached
+                if reached < at(filled, other_node) and at(label, other) == pan_id[pan]:
+                    filled[np.uint64(other_node)] = reached
                     _sink_in(heap, size, _key(reached, other))
                     size += 1
