@@ -16,6 +16,8 @@ from siting.terrain.condition import condition, end_in_pans
 from siting.terrain.pans import DOUBTFUL, GIVEN, KEPT, find_pans
 
 KINDS = kinds_of_ground(211)
+KINDS["below zero"] = -np.abs(KINDS["pans"] - 520.0)
+KINDS["about zero"] = np.round(KINDS["terraced"] - 500.0) * np.float32(-1.0)  # -0.0 among them
 
 
 def test_a_pan_has_the_area_depth_and_volume_of_its_box() -> None:

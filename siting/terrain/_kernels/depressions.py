@@ -71,7 +71,7 @@ def label_patches(mask, label, parent):
         else:
             parent[run] = parent[parent[run]]
     parent[0] = 0
-    renumber(label, parent, 0, rows)
+    renumber(label, parent, np.int64(0), rows)
     return count
 
 
