@@ -74,10 +74,11 @@ def start_flats(filled, direction, toward, away, limits, local_toward, local_awa
         _first_steps(marks, BESIDE_HIGH, local_away[row - row0 + 1, first - col0 + 1 :])
     _spread_alone(local_toward, queue)
     _spread_alone(local_away, queue)
-    cols = col1 - col0
     for row in range(row0, row1):
-        toward[row, col0:col1] = local_toward[row - row0 + 1, 1 : cols + 1]
-        away[row, col0:col1] = local_away[row - row0 + 1, 1 : cols + 1]
+        from_out, from_high = local_toward[row - row0 + 1], local_away[row - row0 + 1]
+        for col in range(col0, col1):
+            toward[row, col] = from_out[col - col0 + 1]
+            away[row, col] = from_high[col - col0 + 1]
 
 
 @kernel
