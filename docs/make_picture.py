@@ -67,6 +67,7 @@ def draw(demo: Demo) -> Any:
     demo.boundary.boundary.plot(ax=whole, color=INK, linewidth=1.4, linestyle=(0, (7, 2, 1.5, 2)), zorder=6)
     _villages(whole, demo)
     _scale_bar(whole, 1000, "1 km")
+    _north(whole)
     _from_near(near, demo, whole)
     _legend(figure.add_axes((0.63, 0.016, 0.358, 0.485)))
     for axes in (whole, near):
@@ -141,6 +142,9 @@ def _scale_bar(axes: Any, length_m: float, text: str) -> None:
     axes.add_patch(Rectangle((x, y), length_m / 2, high, facecolor=INK, edgecolor=INK, zorder=9))
     axes.add_patch(Rectangle((x + length_m / 2, y), length_m / 2, high, facecolor=PAPER, edgecolor=INK, zorder=9))
     axes.text(x + length_m / 2, y + 1.7 * high, text, ha="center", va="bottom", path_effects=HALO, zorder=9)
+
+
+def _north(axes: Any) -> None:
     axes.annotate(
         "N", (0.95, 0.975), xytext=(0.95, 0.915), xycoords="axes fraction", textcoords="axes fraction", ha="center",
         va="center", fontsize=9, weight="bold", path_effects=HALO, arrowprops={"arrowstyle": "-|>", "facecolor": INK},
