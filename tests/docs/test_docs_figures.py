@@ -22,8 +22,8 @@ def test_figures_of_the_demo_are_those_of_a_run(text: str, tmp_path: Path) -> No
     results = run(load_project(DEMO, ("output.rasters=false",)), out=tmp_path / "results", threads=2)
     best = results.summary["plots"][0]
     told = re.search(
-        r"The best of its (\d+) plots, ([\d.]+) ha below ([\d.]+) ha of catchment, would reach the target yield in (\d+) % of "
-        r"the seasons, and on rain alone in (\d+) %\. Its rank lies between (\d+) and (\d+):",
+        r"The best of its (\d+) plots, ([\d.]+) ha below ([\d.]+) ha of catchment, would reach the target yield in (\d+) "
+        r"% of the seasons, and on rain alone in (\d+) %\. Its rank lies between (\d+) and (\d+):",
         text,
     )
     assert told is not None
