@@ -175,6 +175,20 @@ SAFETY = (
         "Spillway width",
         "width that passes the 25-year peak by the broad-crested weir formula",
     ),
+    Column(
+        "spillway_velocity_m_s",
+        "m/s",
+        "float64",
+        "Velocity over the spillway",
+        "critical flow over the sill in the 25-year peak; faster than the soil stands, it must be lined",
+    ),
+    Column(
+        "permissible_velocity_m_s",
+        "m/s",
+        "float64",
+        "Permissible velocity",
+        "clear water that bare soil of the plot's texture stands in a channel (Fortier & Scobey 1926)",
+    ),
 )
 
 _SCORE_RANGE = "component of the score, 0.01 to 1; NULL for all plots where one of them lacks it"

@@ -10,6 +10,7 @@ from siting.pipeline.sites import GROSS
 from siting.pipeline.weather import Weather
 from siting.runoff import (
     annual_max_mm,
+    critical_velocity_m_s,
     design_rain_mm,
     few_years_for_design,
     lag_h,
@@ -19,6 +20,7 @@ from siting.runoff import (
     spillway_width_m,
     time_of_concentration_h,
 )
+from siting.tables import permissible_velocity
 
 FloatArray = npt.NDArray[np.float64]
 
@@ -27,11 +29,18 @@ PERIODS_YEARS = (10.0, 25.0)
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Floods:
-    """Peak flow at each plot's intake in the 10- and the 25-year storm, m3/s, and spillway width, m; NaN unknown."""
+    """
+    Flood of each plot; NaN unknown.
+
+    Peak flow at the intake in the 10- and the 25-year storm, m3/s, spillway width, m, and the velocity of the flow over
+    it beside the one that bare soil of the plot stands, m/s.
+    """
 
     peak_10y_m3s: FloatArray
     peak_25y_m3s: FloatArray
     spillway_width_m: FloatArray
+    spillway_velocity_m_s: FloatArray
+    permissible_velocity_m_s: FloatArray
 
 
 def plot_floods(case: Case, weather: Weather) -> Floods:
@@ -68,7 +77,15 @@ def plot_floods(case: Case, weather: Weather) -> Floods:
     width = spillway_width_m(
         flow_m3s=peaks[1], head_m=settings.plots.spillway_head_m, coefficient=settings.plots.weir_coefficient
     )
-    return Floods(peaks[0], peaks[1], width)
+    velocity = np.where(width > 0, critical_velocity_m_s(head_m=settings.plots.spillway_head_m), np.nan)
+    return Floods(peaks[0], peaks[1], width, velocity, _permissible_m_s(case))
+
+
+def _permissible_m_s(case: Case) -> FloatArray:
+    """Return the velocity of clear water that bare soil of each plot stands, NaN where its texture is unknown."""
+    textures = [kind.texture for kind in case.place.soil.kinds]
+    by_kind = [np.nan if texture is None else permissible_velocity(texture).clear_water_m_s for texture in textures]
+    return np.array([*by_kind, np.nan])[case.own.soil_kind]
 
 
 def _design_rain(weather: Weather, zone: int) -> FloatArray:

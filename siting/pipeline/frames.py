@@ -103,11 +103,14 @@ def _set_columns(together: Together | None, count: int) -> dict[str, Any]:
 
 def _flood_columns(floods: Floods | None, count: int) -> dict[str, Any]:
     unknown = np.full(count, np.nan)
-    return {
-        "peak_flow_10y_m3s": unknown if floods is None else floods.peak_10y_m3s,
-        "peak_flow_25y_m3s": unknown if floods is None else floods.peak_25y_m3s,
-        "spillway_width_m": unknown if floods is None else floods.spillway_width_m,
+    names = {
+        "peak_flow_10y_m3s": "peak_10y_m3s",
+        "peak_flow_25y_m3s": "peak_25y_m3s",
+        "spillway_width_m": "spillway_width_m",
+        "spillway_velocity_m_s": "spillway_velocity_m_s",
+        "permissible_velocity_m_s": "permissible_velocity_m_s",
     }
+    return {column: unknown if floods is None else getattr(floods, name) for column, name in names.items()}
 
 
 def _terms(code: npt.NDArray[np.int64], terms: tuple[str, ...]) -> list[str | None]:

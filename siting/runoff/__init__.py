@@ -25,6 +25,7 @@ from siting.runoff.event import runoff_depth_mm
 from siting.runoff.generator import RainGenerator, daily_from_monthly
 from siting.runoff.peak import (
     PeakFlowLimits,
+    critical_velocity_m_s,
     lag_h,
     peak_flow_limits,
     peak_flow_m3s,
@@ -55,6 +56,7 @@ __all__ = [
     "class_runoff_mm",
     "classify",
     "composite_curve_number",
+    "critical_velocity_m_s",
     "crusted_group",
     "curve_numbers",
     "daily_from_monthly",

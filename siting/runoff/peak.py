@@ -22,6 +22,8 @@ LEAST_IA_OVER_P, MOST_IA_OVER_P = 0.1, 0.5
 LEAST_CURVE_NUMBER = 40.0
 """The graphical method asks for more; TR-55 (1986) chapter 4."""
 
+GRAVITY_M_S2 = 9.81
+
 LAG_OF_CONCENTRATION = 0.6
 """Lag as a share of the time of concentration; NEH-630 chapter 15."""
 
@@ -178,6 +180,15 @@ def lag_h(*, flow_length_m: ArrayLike, curve_number: ArrayLike, slope_pct: Array
 def time_of_concentration_h(*, lag_h: ArrayLike) -> FloatArray:
     """Time of concentration, h, from the lag: Tc = L / 0.6; NEH-630 chapter 15. NaN stays NaN."""
     return _checked("lag", lag_h, "h", may_be_infinite=True) / LAG_OF_CONCENTRATION
+
+
+def critical_velocity_m_s(*, head_m: ArrayLike) -> FloatArray:
+    """
+    Velocity of the flow over a broad sill, m/s: critical flow at two thirds of the head, v = sqrt(2/3 g h).
+
+    `head_m` is the depth of still water above the sill, at least 0; NaN stays NaN. Chow (1959), Open-channel hydraulics.
+    """
+    return np.asarray(np.sqrt(2.0 / 3.0 * GRAVITY_M_S2 * _checked("head", head_m, "m")))
 
 
 def spillway_width_m(*, flow_m3s: ArrayLike, head_m: ArrayLike, coefficient: ArrayLike) -> FloatArray:

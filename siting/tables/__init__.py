@@ -15,6 +15,7 @@ from siting.tables.soils import (
     soils,
     texture_class,
 )
+from siting.tables.velocity import PermissibleVelocity, permissible_velocity
 
 __all__ = [
     "RAIN_DISTRIBUTIONS",
@@ -22,6 +23,7 @@ __all__ = [
     "AntecedentRain",
     "Crop",
     "CurveNumber",
+    "PermissibleVelocity",
     "Soil",
     "SoilWater",
     "UnitPeak",
@@ -32,6 +34,7 @@ __all__ = [
     "crops",
     "curve_number",
     "nearest_printed_rew_mm",
+    "permissible_velocity",
     "soil",
     "soil_group",
     "soil_water",

@@ -62,6 +62,8 @@ PROMISED_PLOTS = [
     "peak_flow_10y_m3s",
     "peak_flow_25y_m3s",
     "spillway_width_m",
+    "spillway_velocity_m_s",
+    "permissible_velocity_m_s",
     "supply_rank",
     "reliability_low_pct",
     "reliability_high_pct",

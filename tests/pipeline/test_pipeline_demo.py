@@ -286,4 +286,7 @@ def test_flood_peaks_by_the_published_form(demo: Demo) -> None:
     plots = read(demo[0], "plots")
     assert (plots["peak_flow_25y_m3s"] > plots["peak_flow_10y_m3s"]).all()
     np.testing.assert_allclose(plots["spillway_width_m"], plots["peak_flow_25y_m3s"] / (1.5 * 0.3**1.5))
+    # critical flow over a sill 0.3 m below the water: sqrt(2/3 g h)
+    np.testing.assert_allclose(plots["spillway_velocity_m_s"], np.sqrt(2 / 3 * 9.81 * 0.3))
+    assert set(plots["permissible_velocity_m_s"]) <= {0.457, 0.533, 0.61, 0.762, 1.143}  # Fortier & Scobey (1926)
     assert (plots["peak_flow_10y_m3s"] / plots["catchment_area_m2"] * 1e6).between(0.5, 30).all()  # m3/s for each km2
