@@ -1,6 +1,5 @@
 """Files in, values out: read, converted or refused in one sentence."""
 
-from siting.inputs.checksum import sha256_of
 from siting.inputs.climate import read_climate
 from siting.inputs.dem import read_dem
 from siting.inputs.maps import CodeMap, is_raster, read_map, read_meanings, read_raster_on_grid
@@ -42,5 +41,4 @@ __all__ = [
     "read_soil",
     "read_stations",
     "read_villages",
-    "sha256_of",
 ]

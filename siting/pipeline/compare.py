@@ -10,8 +10,8 @@ import pandas as pd
 
 from siting.config import Project, defaults, load_project
 from siting.errors import SitingError
-from siting.inputs import sha256_of
 from siting.inputs.results import EarlierRun, read_results
+from siting.outputs import sha256 as sha256_of
 from siting.pipeline.stages import run
 from siting.progress import Progress
 

@@ -11,10 +11,9 @@ from siting.pipeline.read import Place
 from siting.pipeline.sites import trace
 from siting.pipeline.water import Water, yearly_volumes
 from siting.pipeline.weather import Weather
-from siting.plots import overflow_path, plot_cells
+from siting.plots import distances_m, overflow_path, plot_cells
 from siting.ranking import ChosenSet, PlotForest, Reaches, lost_downstream, lost_share
 from siting.terrain import Terrain
-from siting.terrain.downstream import step_lengths
 
 FloatArray = npt.NDArray[np.float64]
 Integers = npt.NDArray[np.int64]
@@ -49,11 +48,10 @@ def places_below(case: Case, weather: Weather, village_cell: Integers) -> Below:
     found: dict[tuple[str, int, int], int] = {}
     met: dict[tuple[int, int], float] = {}
     ground = case.ground
-    lengths = step_lengths(ground.grid.cell_width_m, ground.grid.cell_height_m)
     nowhere = np.zeros(ground.grid.shape, dtype=np.bool_)
     for plot, exit_cell in enumerate(case.sites.catchments.exit_cell):
         path = overflow_path(int(exit_cell), direction=ground.direction, stop=nowhere)
-        far = _distances(path, ground.grid.cols, lengths)
+        far = _distances(path, ground)
         for key, at in _met_by(path, case.place, village_cell, ground):
             number = found.setdefault(key, len(found))
             met.setdefault((plot, number), float(far[at]))
@@ -69,12 +67,9 @@ def places_below(case: Case, weather: Weather, village_cell: Integers) -> Below:
     return Below([kind for kind, _, _ in found], numbers, cells, came, Reaches(pairs[:, 0], pairs[:, 1], passing))
 
 
-def _distances(path: Integers, cols: int, lengths: FloatArray) -> FloatArray:
-    """Return the length of the path up to each of its cells, m."""
-    row, col = np.divmod(path, cols)
-    across, along = np.diff(row) != 0, np.diff(col) != 0
-    kind = np.where(across & along, 1, np.where(across, 2, 0))
-    return np.concatenate([[0.0], np.cumsum(lengths[row[:-1], kind])])
+def _distances(path: Integers, ground: Terrain) -> FloatArray:
+    grid = ground.grid
+    return distances_m(path, cell_width_m=grid.cell_width_m, cell_height_m=grid.cell_height_m, cols=grid.cols)
 
 
 def _met_by(path: Integers, place: Place, village_cell: Integers, ground: Terrain) -> list[tuple[tuple[str, int, int], int]]:
@@ -110,13 +105,12 @@ def _came(case: Case, weather: Weather, cells: Integers) -> FloatArray:
 
 def village_channels(start_cell: Integers, start: Integers, villages: int, ground: Terrain) -> Integers:
     """Return the first channel cell below each village within 500 m along the flow, -1 where there is none."""
-    lengths = step_lengths(ground.grid.cell_width_m, ground.grid.cell_height_m)
     nearest, far = np.full(villages, -1, dtype=np.int64), np.full(villages, VILLAGE_CHANNEL_M)
     for cell, village in zip(start_cell, start, strict=True):
         path = np.array([cell])
         if not ground.channel.ravel()[cell]:
             path = overflow_path(int(cell), direction=ground.direction, stop=ground.channel)
-        length = _distances(path, ground.grid.cols, lengths)[-1]
+        length = _distances(path, ground)[-1]
         if ground.channel.ravel()[path[-1]] and length <= far[village]:
             nearest[village], far[village] = path[-1], length
     return nearest

@@ -11,9 +11,8 @@ from siting.layers import layer
 from siting.outputs import line_from_cells, point_from_cell, polygon_from_mask, polygons_from_labels
 from siting.pipeline.read import Place
 from siting.pipeline.sites import Sites
-from siting.plots import catchment_cells, overflow_path
+from siting.plots import catchment_cells, distances_m, overflow_path
 from siting.terrain import Terrain, channel_lines
-from siting.terrain.downstream import step_lengths
 from siting.terrain.edges import SIDES
 
 
@@ -68,20 +67,14 @@ def overflow_layer(sites: Sites, ground: Terrain, place: Place) -> gpd.GeoDataFr
     stop = ground.pans.kept_mask()
     if place.inside is not None:
         stop |= ~place.inside
-    lengths = step_lengths(ground.grid.cell_width_m, ground.grid.cell_height_m)
+    grid = ground.grid
     shapes, metres = [], []
     for cell in sites.catchments.exit_cell:
         path = overflow_path(int(cell), direction=ground.direction, stop=stop)
-        shapes.append(line_from_cells(path, ground.grid))
-        metres.append(_path_length_m(path, ground.grid.cols, lengths) if path.size > 1 else np.nan)
+        far = distances_m(path, cell_width_m=grid.cell_width_m, cell_height_m=grid.cell_height_m, cols=grid.cols)
+        shapes.append(line_from_cells(path, grid))
+        metres.append(far[-1] if path.size > 1 else np.nan)
     return gpd.GeoDataFrame({"plot_id": sites.plot_id, "length_m": metres}, geometry=shapes, crs=ground.grid.crs)
-
-
-def _path_length_m(path: npt.NDArray[np.int64], cols: int, lengths: npt.NDArray[np.float64]) -> float:
-    row, col = np.divmod(path, cols)
-    across, along = np.diff(row) != 0, np.diff(col) != 0
-    kind = np.where(across & along, 1, np.where(across, 2, 0))
-    return float(lengths[row[:-1], kind].sum())
 
 
 def channels_layer(ground: Terrain) -> gpd.GeoDataFrame:

@@ -1,6 +1,14 @@
 """From terrain to plots: screening, patches, division, catchments, who lies above whom."""
 
-from siting.plots.catchments import Catchments, PlotCells, catchment_cells, overflow_path, plot_cells, trace_catchments
+from siting.plots.catchments import (
+    Catchments,
+    PlotCells,
+    catchment_cells,
+    distances_m,
+    overflow_path,
+    plot_cells,
+    trace_catchments,
+)
 from siting.plots.division import FOUND, GIVEN, PlotLabels, make_plots
 from siting.plots.patches import PlotSize, plot_size
 from siting.plots.screening import Ground, Limits, Screening, deepest_part, judge, screen, strip_share_left
@@ -20,6 +28,7 @@ __all__ = [
     "catchment_cells",
     "commonest",
     "deepest_part",
+    "distances_m",
     "fit_planes",
     "judge",
     "make_plots",

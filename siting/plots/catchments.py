@@ -219,6 +219,15 @@ def catchment_cells(cells: PlotCells, plot: int, *, label: Labels, direction: Co
     return np.asarray(upslope.cells_above(cells.of(plot), label, direction))
 
 
+def distances_m(path: Integers, *, cell_width_m: FloatArray, cell_height_m: FloatArray, cols: int) -> FloatArray:
+    """Return the length of a flow path (flat cells) up to each of its cells, m, centre to centre."""
+    lengths = step_lengths(cell_width_m, cell_height_m)
+    row, col = np.divmod(path, cols)
+    across, along = np.diff(row) != 0, np.diff(col) != 0
+    kind = np.where(across & along, 1, np.where(across, 2, 0))
+    return np.concatenate([[0.0], np.cumsum(lengths[row[:-1], kind])])
+
+
 def overflow_path(exit_cell: int, *, direction: Codes, stop: Mask) -> Integers:
     """List the cells from a plot's exit to the first marked one (edge of the property, a pan), or the end of the data."""
     return np.asarray(upslope.walk_down(direction, exit_cell, stop))

@@ -240,13 +240,6 @@ def test_weather_that_cannot_be_right_is_refused(tmp_path: Path) -> None:
     assert "the column tmin_c twice" in refused(lambda: inputs.read_climate(same))
 
 
-def test_a_checksum_is_that_of_the_bytes(tmp_path: Path) -> None:
-    # FIPS 180-4: SHA-256 of "abc"
-    path = tmp_path / "abc"
-    path.write_bytes(b"abc")
-    assert inputs.sha256_of(path).startswith("ba7816bf8f01cfea414140de5dae2223")
-
-
 def test_villages_of_a_spreadsheet_are_those_of_the_same_csv(tmp_path: Path) -> None:
     table = pd.DataFrame({"name": ["=1+1", "Ünder"], "people": [12, 40], "lon": [35.01, 35.02], "lat": [30.81, 30.82]})
     table.to_csv(tmp_path / "v.csv", index=False)
