@@ -16,6 +16,7 @@ OWN_CROP_VALUES = ("stage_days", "kc", "root_depth_m", "depletion_fraction", "ky
 NEEDED_CROP_VALUES = ("stage_days", "kc", "root_depth_m", "depletion_fraction")
 
 PAIRS_AT_ODDS = (
+    ("terrain.pans", "terrain.flow_direction", "both say where flow ends: keep one of them"),
     ("soil.texture", "soil.map", "keep one of them"),
     ("cover.cover", "cover.map", "keep one of them"),
     ("soil.column", "soil.table", "a column goes with polygons, a table with a raster: keep one of them"),

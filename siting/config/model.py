@@ -76,6 +76,7 @@ class Ground(_Section):
     channel_width_m: Above0
     pan_min_area_m2: Above0
     pans: Path | None = None
+    flow_direction: Path | None = None
 
 
 class Soil(_Section):

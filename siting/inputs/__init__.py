@@ -2,6 +2,7 @@
 
 from siting.inputs.climate import read_climate
 from siting.inputs.dem import read_dem
+from siting.inputs.directions import read_flow_direction
 from siting.inputs.maps import CodeMap, is_raster, read_map, read_meanings, read_raster_on_grid
 from siting.inputs.rain import read_rain, read_rain_stations
 from siting.inputs.rain_zones import read_rain_zones
@@ -30,6 +31,7 @@ __all__ = [
     "read_climate",
     "read_dem",
     "read_exclusions",
+    "read_flow_direction",
     "read_given_plots",
     "read_map",
     "read_meanings",

@@ -27,6 +27,7 @@ class Place:
     inside: npt.NDArray[np.bool_] | None
     excluded: npt.NDArray[np.bool_] | None
     pan_layer: npt.NDArray[np.int8] | None
+    flow_direction: npt.NDArray[np.uint8] | None
     soil: SoilMap
     curve_number: npt.NDArray[np.float32]
     runs_after_mm: npt.NDArray[np.float32]
@@ -65,6 +66,9 @@ def read_place(project: Project, notes: Notes) -> Place:
         None if outline.boundary is None else inputs.read_boundary(outline.boundary, grid, notes=notes),
         inputs.read_exclusions(outline.exclude, grid, setback_m=outline.setback_m, notes=notes) if outline.exclude else None,
         None if settings.terrain.pans is None else inputs.read_pan_layer(settings.terrain.pans, grid),
+        None
+        if settings.terrain.flow_direction is None
+        else inputs.read_flow_direction(settings.terrain.flow_direction, grid),
         soil,
         number,
         runs_after,

@@ -123,6 +123,7 @@ def analyse_terrain(place: Place, project: Project, threads: int, progress: Prog
         channel_area_m2=settings.terrain.channel_area_m2,
         pan_min_area_m2=settings.terrain.pan_min_area_m2,
         pan_layer=place.pan_layer,
+        flow_direction=place.flow_direction,
         threads=threads,
         progress=lambda stage, done, total: progress.stage(f"terrain: {stage}", 1, 1),
     )

@@ -175,3 +175,19 @@ def test_one_storm_ranks_plots_where_there_is_no_record(plots_with: Runs) -> Non
     assert plots["supply_rank"].isna().all()
     smaller = plots_with(rain__daily=None, rain__design_storm_mm=25.0)
     assert (smaller["storm_yield_m3"] <= plots["storm_yield_m3"]).all()
+
+
+def test_directions_of_ones_own_that_are_those_of_a_run_change_nothing(
+    tmp_path: Path, write_dem: Callable[..., Path], run_flags: Callable[..., Results], valley: np.ndarray
+) -> None:
+    dem = write_dem(tmp_path / "dem.tif", valley, 10.0)
+    run_flags(dem, tmp_path / "first", ranking__draws=0)
+    own = {"terrain__flow_direction": str(tmp_path / "first" / "rasters" / "flow_direction_deg.tif")}
+    run_flags(dem, tmp_path / "second", ranking__draws=0, **own)
+    first, second = (pyogrio.read_dataframe(tmp_path / name / "siting.gpkg", layer="plots") for name in ("first", "second"))
+    assert first["plot_id"].tolist() == second["plot_id"].tolist()
+    np.testing.assert_allclose(first["catchment_area_m2"], second["catchment_area_m2"])
+    np.testing.assert_allclose(first["supply_ratio_dry"], second["supply_ratio_dry"])
+    write_dem(tmp_path / "smaller.tif", valley[1:], 10.0)
+    with pytest.raises(InputError, match="give directions on the DEM's own cells"):
+        run_flags(tmp_path / "smaller.tif", tmp_path / "third", **own)
