@@ -58,6 +58,9 @@ def doubt_ranks(case: Case, water: Water | None, floods: Floods | None, order: O
         )
         case.notes.warn("no_rank_interval", text)
         return None
+    if case.settings.rain.generator:
+        text = "The days of rain were drawn, and rank_low and rank_high do not hold the doubt of that: they are too near."
+        case.notes.warn("rank_interval_of_drawn_days", text)
     model = _model(case, case.weather, crops[0], floods)
     _note(case.notes)
     if order.follows_score:
@@ -88,7 +91,7 @@ def _model(case: Case, weather: Weather, record: CropRecord, floods: Floods) -> 
     return supply_model(
         plots=plots,
         classes=case.classes,
-        cover_of_class=np.arange(case.classes.count),
+        cover_of_class=_covers(case),
         rain_mm=record.rain_mm,
         et0_mm=record.et0_mm,
         seasons=weather.fixed_seasons,
@@ -100,6 +103,18 @@ def _model(case: Case, weather: Weather, record: CropRecord, floods: Floods) -> 
         efficiency=settings.plots.efficiency,
         dependable_share=settings.ranking.dependable,
     )
+
+
+def _covers(case: Case) -> npt.NDArray[np.int64]:
+    """Return a number that classes of one cover and soil group share: classes that the slope alone tells apart do."""
+    classes = case.classes
+    known = classes.class_of_cell < classes.count
+    group = classes.class_of_cell[known]
+    before = np.nan_to_num(case.place.curve_number[known].astype(np.float64))
+    mean = np.bincount(group, weights=before, minlength=classes.count) / np.bincount(group, minlength=classes.count)
+    seen = ~np.isnan(classes.runs_after_mm)
+    shared = np.where(seen, -1.0 - np.arange(classes.count), np.round(mean, 1))
+    return np.unique(shared, return_inverse=True)[1].astype(np.int64)
 
 
 def _basis(case: Case, crop: CropResults, order: Order) -> ScoreBasis:

@@ -139,7 +139,7 @@ def _rain(weather: Weather, project: Project) -> dict[str, Any]:
     share = project.settings.ranking.dependable
     et0 = weather.et0_mm
     return {
-        "stations": ", ".join(record.station) or "one",
+        "stations": ", ".join(record.station) + ("; the figures below are of the first" if len(record.station) > 1 else ""),
         "days": f"{rain.days[0]} to {rain.days[-1]}",
         "days without a reading": int(np.isnan(rain.rain_mm).sum()),
         "complete years": int(years.labels.size),

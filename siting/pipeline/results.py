@@ -24,6 +24,7 @@ SHOWN = (
     "x",
     "y",
     "yield_dry_m3",
+    "storm_yield_m3",
     "crop_demand_m3",
     "supply_ratio_dry",
     "supply_ratio_median",

@@ -14,6 +14,9 @@ from siting.ranking import ChosenSet, Guard, PlotForest, Reaches, choose_set, de
 
 FloatArray = npt.NDArray[np.float64]
 
+LEAST_SHARE = 0.5
+"""A plot that adds less of its worth than this takes most of its water from the others of the set (our assumption)."""
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Together:
@@ -42,7 +45,10 @@ def choose_together(case: Case, water: Water | None, order: Order, below: Below 
         most_area_m2=settings.ranking.set_area_m2,
         most_plots=settings.ranking.set_plots,
         guard=_guard(below, settings.villages.most_lost_pct),
+        least_share=LEAST_SHARE,
     )
+    source, effect = "assumption: less would take from other plots most of what it brings", "the set"
+    case.notes.assume("set.least_share_added", f"{LEAST_SHARE:g}", "of a plot's worth", source, effect)
     return Together(forest, chosen, dependable(chosen.left_m3, probability=0.5))
 
 

@@ -65,7 +65,8 @@ def plot_water(case: Case, weather: Weather) -> Water:
     parts = {}
     for ratio in (used, other):
         some = partial(work.some_plots, daily_runoff_mm(case, weather, ratio), with_yields=ratio == used)
-        parts[ratio] = _in_order(run_all(some, [(plots,) for plots in groups], case.threads), np.concatenate(groups))
+        together = _in_order(run_all(some, [(plots,) for plots in groups], case.threads), np.concatenate(groups))
+        parts[ratio] = _without_rain(together, case.own.rain_zone < 0)
     yearly = parts[used].yearly_m3
     shares = {"dry": share, "median": 0.5, "wet": 1.0 - share}
     return Water(
@@ -97,7 +98,7 @@ def _known_area(case: Case) -> FloatArray:
         case.notes.warn(
             "curve_number_unknown",
             f"For {int(unclassed.sum())} of {unclassed.size} plots more than {100 * MOST_UNCLASSED_SHARE:.0f} % of the "
-            "catchment has no curve number: their run-on is unknown; extend the maps of soil and cover.",
+            "catchment has no curve number or no rain: their run-on is unknown; extend the maps of soil, cover and rain.",
         )
     return np.asarray(known_areas(catchments)[WITH_LOSSES])
 
@@ -204,6 +205,27 @@ class _Simulation:
             standing_water_days=settings.standing_water_days,
         )
         return yields, rain_alone, supported
+
+
+def _without_rain(part: Any, unknown: npt.NDArray[np.bool_]) -> Any:
+    """Forget all but the demand of plots on which no rain is known."""
+    if not unknown.any():
+        return part
+    columns: dict[str, Any] = {}
+    for each in fields(part):
+        values = getattr(part, each.name)
+        if values is None or each.name in (*ALIKE, "demand_mm"):
+            columns[each.name] = values
+        elif isinstance(values, np.ndarray):
+            columns[each.name] = values.copy()
+            columns[each.name][unknown] = _NOTHING[values.dtype.kind]
+        else:
+            columns[each.name] = _without_rain(values, unknown)
+    return type(part)(**columns)
+
+
+_NOTHING: dict[str, Any] = {"f": np.nan, "M": np.datetime64("NaT"), "U": "", "b": False}
+"""What stands for unknown in an array of a kind."""
 
 
 def _month_of_season_days(record: CropRecord) -> Integers:

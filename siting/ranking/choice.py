@@ -207,6 +207,7 @@ def choose_set(
     most_plots: int | None = None,
     guard: Guard | None = None,
     year: Integers | None = None,
+    least_share: float = 0.0,
 ) -> ChosenSet:
     """
     Choose plots one after another, each time the one that adds most as things then stand.
@@ -231,6 +232,9 @@ def choose_set(
         Places that must keep their water. A plot that would take too much is out for good: no later choice gives any back.
     year
         For each step the number of its year from 0, -1 for steps outside complete years; None where steps are years.
+    least_share
+        A plot is left out while it adds less than this share, 0 to 1, of what it would add alone: it would take from
+        others most of what it brings.
 
     Raises
     ------
@@ -256,7 +260,7 @@ def choose_set(
     price = _price(np.minimum(runon_m3, room_m3), steps, np.where(known, worth, 0.0) * cost)
     runon = np.where(np.isnan(runon_m3), np.inf, runon_m3)
     ground = Ground(forest.next_plot, forest.passing, runon, room_m3, price, steps)
-    search = _Search(forest, ground, cost, rank, guard, known)
+    search = _Search(forest, ground, cost, rank, guard, known, least_share)
     search.run(plot_area_m2, np.inf if most_area_m2 is None else most_area_m2, most_plots or worth.size + 1)
     chosen = search.order > 0
     water = set_water(forest, chosen, runon_m3=runon_m3, room_m3=room_m3)
@@ -298,7 +302,14 @@ class _Search:
     """The choice as it stands."""
 
     def __init__(
-        self, forest: PlotForest, ground: Ground, cost: FloatArray, rank: Integers, guard: Guard | None, known: Flags
+        self,
+        forest: PlotForest,
+        ground: Ground,
+        cost: FloatArray,
+        rank: Integers,
+        guard: Guard | None,
+        known: Flags,
+        least_share: float,
     ) -> None:
         self.forest, self.ground, self.cost, self.rank, self.guard = forest, ground, cost, rank, guard
         plots = cost.size
@@ -309,13 +320,14 @@ class _Search:
         self.state = State(np.zeros(plots, dtype=np.bool_), np.zeros(shape), np.zeros(shape))
         self.adds, self.stopped = np.zeros(plots), ""
         add_each(np.flatnonzero(self.open), ground, self.state, self.adds)
+        self.least = least_share * self.adds
 
     def run(self, area_m2: FloatArray, area_left_m2: float, most_plots: int) -> None:
         number = 0
         while number < most_plots:
             # rounded, so that plots that add the same tie whatever the order of sums
             by_cost = np.round(self.adds / self.cost * self.cost.max(initial=0.0), 12)
-            adding = self.open & (by_cost > 0)
+            adding = self.open & (by_cost > 0) & (self.adds >= self.least)
             fitting = np.flatnonzero(adding & (area_m2 <= area_left_m2))
             if fitting.size == 0:
                 self.stopped = "area" if adding.any() else "guard" if self.guarded.any() else "no gain"

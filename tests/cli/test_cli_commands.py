@@ -31,6 +31,7 @@ SUMMARY = {
             "x": 694_321.4,
             "y": 3_416_789.6,
             "yield_dry_m3": np.float64(841.0),
+            "storm_yield_m3": 99.0,
             "crop_demand_m3": 5_200.0,
             "supply_ratio_dry": 0.61234,
             "supply_ratio_median": np.nan,

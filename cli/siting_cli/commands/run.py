@@ -105,13 +105,20 @@ def _plot_row(row: Mapping[str, Any]) -> dict[str, object]:
         "y": _coordinate(row["y"], in_degrees),
         "hectares": row["area_m2"] / 10_000,
         "supported_ha": None if row["supported_area_m2"] is None else row["supported_area_m2"] / 10_000,
-        "dry_year_m3": row["yield_dry_m3"],
+        **_volume(row),
         "need_m3": row["crop_demand_m3"],
         "supply_dry": row["supply_ratio_dry"],
         "good_years_in_10": _in_ten(row["reliability_pct"]),
         "on_rain_alone": _in_ten(row["rain_only_reliability_pct"]),
         "cautions": (row["cautions"] or "").replace(";", "; ") or None,
     }
+
+
+def _volume(row: Mapping[str, Any]) -> dict[str, object]:
+    """Return the run-on of a dry year, or, where no year is known, that of one storm."""
+    if row["yield_dry_m3"] is None and row["storm_yield_m3"] is not None:
+        return {"storm_m3": row["storm_yield_m3"]}
+    return {"dry_year_m3": row["yield_dry_m3"]}
 
 
 def _interval(low: int | None, high: int | None) -> str | None:
