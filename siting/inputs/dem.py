@@ -22,8 +22,15 @@ from siting.units import metres_per_unit, unit_from_text
 LOWEST_M, HIGHEST_M = -500.0, 9000.0
 """Heights beyond are no ground: an undeclared nodata value, usually."""
 
-SUSPECTS = (-9999.0, -99999.0, -32768.0, 32767.0, -32767.0, 65535.0)
+SUSPECTS = (0.0, -9999.0, -99999.0, -32768.0, 32767.0, -32767.0, 65535.0)
 """Stored values that stand for nodata in undeclared files (common practice)."""
+
+LONE_CELLS = 10
+LONE_GAP_M = 50.0
+"""So many cells of one height, so far from all others, look like undeclared nodata (assumption)."""
+
+STEEP_STEP = 0.05
+"""A step of the heights over the width of a cell beyond which slopes mean nothing: the steepest plot (assumption)."""
 
 SUSPECT_ALONE = 0.01
 """A suspect is taken for nodata where no other stored value comes this near to it, as a share of it (assumption)."""
@@ -82,6 +89,7 @@ def read_dem(
     heights = (stored.astype(np.float64) * found.scale + found.offset) * metres_per_unit(unit)
     heights[~valid] = np.nan
     _check_heights(path, heights, stored, valid)
+    _warn_of_lone_value(path, heights, notes)
     if np.nanmin(heights) == np.nanmax(heights):
         notes.warn(
             "flat_dem", f"The DEM {path.name} is level, {np.nanmin(heights):g} m everywhere: no flow can be told from it."
@@ -95,6 +103,7 @@ def read_dem(
         width,
         height,
     )
+    _warn_of_steps(path, heights, found.scale * metres_per_unit(unit), grid, notes)
     return Raster(grid, heights.astype(np.float32))
 
 
@@ -192,6 +201,13 @@ def _unit(path: Path, found: _Band, system: CRS, given: str | None, notes: Notes
     vertical = [axis for axis in system.axis_info if axis.direction == "up"]
     if vertical:
         return unit_from_text(vertical[0].unit_name, "the unit of the DEM's vertical CRS")
+    ground = [axis.unit_name for axis in system.axis_info if not system.is_geographic]
+    if ground and unit_from_text(ground[0], "the unit of the DEM's CRS") != "metre":
+        msg = (
+            f"the DEM {path.name} counts its ground in units of {ground[0]} and does not say in what its heights are; give "
+            "place.elevation_unit, such as metre or us_survey_foot"
+        )
+        raise InputError(msg)
     notes.assume("place.elevation_unit", "metre", "", "the file names no unit", "all heights, slopes and volumes")
     return "metre"
 
@@ -213,7 +229,7 @@ def _check_heights(
         raise InputError(msg)
     with np.errstate(invalid="ignore"):
         wrong = (heights < LOWEST_M) | (heights > HIGHEST_M)
-    nodata_like = wrong | _suspects(stored, valid)
+    nodata_like = wrong | _suspects(heights, stored, valid)
     if nodata_like.any():
         row, col = (int(place) for place in np.argwhere(nodata_like)[0])
         what = f"outside {LOWEST_M:g} to {HIGHEST_M:g} m" if wrong.any() else "that look like nodata"
@@ -225,11 +241,57 @@ def _check_heights(
         raise InputError(msg)
 
 
-def _suspects(stored: npt.NDArray[Any], valid: npt.NDArray[np.bool_]) -> npt.NDArray[np.bool_]:
+def _collar(heights: npt.NDArray[np.float64], valid: npt.NDArray[np.bool_], hit: npt.NDArray[np.bool_]) -> bool:
+    """Tell whether marked cells lie far from all other heights and touch the edge of the raster, as that of a cut DEM."""
+    edge = np.zeros(valid.shape, dtype=np.bool_)
+    edge[[0, -1]], edge[:, [0, -1]] = True, True
+    others = heights[valid & ~hit]
+    if not (hit & edge).any() or others.size == 0:
+        return False
+    return float(np.abs(others - heights[hit][0]).min()) > LONE_GAP_M
+
+
+def _warn_of_lone_value(path: Path, heights: npt.NDArray[np.float64], notes: Notes) -> None:
+    """Warn where many cells share the lowest or highest height, far from all others: undeclared nodata looks like that."""
+    for extreme in (float(np.nanmin(heights)), float(np.nanmax(heights))):
+        alike = heights == extreme
+        others = heights[~alike & ~np.isnan(heights)]
+        number = int(np.count_nonzero(alike))
+        if others.size == 0 or number < LONE_CELLS:
+            continue
+        gap = float(np.abs(others - extreme).min())
+        if gap > LONE_GAP_M:
+            row, col = (int(place) for place in np.argwhere(alike)[0])
+            notes.warn(
+                "lone_height",
+                f"{number} cells of the DEM {path.name} are {extreme:g} m, {gap:.0f} m from all others, the first at row "
+                f"{row}, column {col}, and count as ground; if they are none, declare them with gdal_edit.py -a_nodata.",
+            )
+
+
+def _warn_of_steps(path: Path, heights: npt.NDArray[np.float64], step_m: float, grid: Grid, notes: Notes) -> None:
+    """Warn where heights come in whole units so large that a slope is either none or steep."""
+    if not step_m / grid.typical_cell_m > STEEP_STEP or np.nanmin(heights) == np.nanmax(heights):
+        return
+    with np.errstate(invalid="ignore"):
+        whole = np.abs(heights / step_m - np.round(heights / step_m)) < 1e-6
+    if bool(np.all(whole | np.isnan(heights))):
+        notes.warn(
+            "height_steps",
+            f"The heights of the DEM {path.name} come in steps of {step_m:g} m on cells of {grid.typical_cell_m:.3g} m, so "
+            f"a slope is 0 or {100 * step_m / grid.typical_cell_m:.0f} %: slopes and plots mean little; take finer heights.",
+        )
+
+
+def _suspects(
+    heights: npt.NDArray[np.float64], stored: npt.NDArray[Any], valid: npt.NDArray[np.bool_]
+) -> npt.NDArray[np.bool_]:
     """Mark cells of a value that stands for nodata by custom, where no ground is near that value."""
     marked = np.zeros(valid.shape, dtype=np.bool_)
     for suspect in SUSPECTS:
         hit = valid & (stored == suspect)
+        if suspect == 0.0 and not _collar(heights, valid, hit):
+            continue
         if hit.any():
             near = np.abs(stored.astype(np.float64) - suspect) <= SUSPECT_ALONE * abs(suspect)
             if not (valid & near & ~hit).any():

@@ -353,3 +353,32 @@ def test_another_crs_than_the_declared_one_and_a_level_dem_are_said(tmp_path: Pa
     notes = Notes()
     read_dem(write(tmp_path / "level.tif", np.full((9, 9), 5.0, dtype=np.float32)), crs="EPSG:32637", notes=notes)
     assert [warned.code for warned in notes.warnings] == ["crs_overridden", "flat_dem"]
+
+
+def test_a_collar_of_undeclared_zeros_is_refused_and_a_block_of_them_is_warned_of(tmp_path: Path) -> None:
+    ground = (500.0 + np.add.outer(np.arange(40.0), np.arange(40.0))).astype(np.float32)
+    collar, block = ground.copy(), ground.copy()
+    collar[:5], block[10:20, 10:20] = 0.0, 0.0
+    with pytest.raises(InputError, match=r"look like nodata, the first 0 .* -a_nodata 0 "):
+        read_dem(write(tmp_path / "collar.tif", collar), notes=Notes())
+    notes = Notes()
+    read_dem(write(tmp_path / "block.tif", block), notes=notes)
+    assert "lone_height" in {one.code for one in notes.warnings}
+    # a plain by the sea begins at 0 m
+    notes = Notes()
+    read_dem(write(tmp_path / "sea.tif", ground - 500.0), notes=notes)
+    assert "lone_height" not in {one.code for one in notes.warnings}
+
+
+def test_ground_in_feet_without_a_unit_of_heights_is_refused(tmp_path: Path) -> None:
+    with pytest.raises(InputError, match=r"in units of US survey foot .* place.elevation_unit"):
+        read_dem(write(tmp_path / "feet.tif", slope_south(), crs="EPSG:2229"), notes=Notes())
+
+
+def test_whole_metres_on_small_cells_are_warned_of(tmp_path: Path) -> None:
+    rough = np.random.default_rng(1).normal(500, 5, (30, 30))
+    notes, finer = Notes(), Notes()
+    read_dem(write(tmp_path / "whole.tif", np.round(rough).astype(np.float32)), notes=notes)
+    read_dem(write(tmp_path / "fine.tif", rough.astype(np.float32)), notes=finer)
+    assert "height_steps" in {one.code for one in notes.warnings}
+    assert "height_steps" not in {one.code for one in finer.warnings}
