@@ -14,6 +14,9 @@ DATE_PATTERNS = (
     *("%d/%m/%Y", "%m/%d/%Y", "%d-%m-%Y", "%m-%d-%Y"),
 )
 MONTH_PATTERNS = ("%Y-%m", "%Y/%m")
+MISSING_WORDS = ("", "na", "nan", "-", "m")
+MISSING_NUMBERS = (-99.0, -99.9, -999.0, -9999.0)
+"""Marks of a missing value, with or without decimals (common practice)."""
 
 
 def read_table(path: Path, *, setting: str) -> pd.DataFrame:
@@ -89,18 +92,31 @@ def read_dates(path: Path, table: pd.DataFrame, *, setting: str, months: bool = 
     raise InputError(msg)
 
 
-def read_numbers(path: Path, text: "pd.Series[str]", *, setting: str) -> "pd.Series[float]":
-    """Read a column of numbers with decimal points or commas; empty cells and the usual marks are missing."""
+def read_numbers(
+    path: Path, text: "pd.Series[str]", *, setting: str, dates: pd.DatetimeIndex | None = None
+) -> "pd.Series[float]":
+    """
+    Read a column of numbers with decimal points or commas; empty cells and the usual marks are missing.
+
+    With `dates`, those of the rows, a refusal names the day.
+    """
     grouped = text.str.strip().str.fullmatch(r"\d{1,3}(,\d{3})+(\.\d+)?", na=False)
     if grouped.any():
-        example = text[grouped].iloc[0]
-        msg = f"{setting} {path.name} has {example!r}, a decimal or a thousands comma; write numbers with a point"
+        example = _first(text, grouped, dates)
+        msg = f"{setting} {path.name} has {example}, a decimal or a thousands comma; write numbers with a point"
         raise InputError(msg)
     plain = text.str.strip().str.replace(",", ".", regex=False)
-    missing = plain.isna() | plain.str.lower().isin(["", "na", "nan", "-", "-99", "-999", "-9999", "-99.9", "m"])
+    missing = plain.isna() | plain.str.lower().isin(MISSING_WORDS)
     depth = pd.to_numeric(plain.where(~missing), errors="coerce")
     strange = depth.isna() & ~missing
     if strange.any():
-        msg = f"{setting} {path.name} has {text[strange].iloc[0]!r} for a number; leave missing days empty"
+        msg = f"{setting} {path.name} has {_first(text, strange, dates)}, which is no number; leave missing days empty"
         raise InputError(msg)
-    return depth.astype(float)
+    return depth.astype(float).mask(depth.isin(MISSING_NUMBERS))
+
+
+def _first(text: "pd.Series[str]", wrong: "pd.Series[bool]", dates: pd.DatetimeIndex | None) -> str:
+    """Quote the first wrong cell, with its day where that is known."""
+    place = int(wrong.to_numpy().argmax())
+    day = "" if dates is None else f" on {dates[place].date()}"
+    return f"{text.iloc[place]!r}{day}"

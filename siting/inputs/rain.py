@@ -21,6 +21,7 @@ RAIN_NAMES = (
     *("precipitacion", "precipitacao", "precipitations", "yagis", "mvua"),
 )
 STATION_NAMES = ("station", "gauge", "site", "estacion", "estacao", "poste", "istasyon", "kituo")
+UNIT_SETTING = "rain.unit"
 UNIT_ENDINGS = {"mm": "mm", "in": "inch", "inch": "inch", "inches": "inch"}
 MOST_IN_A_DAY_MM = 1825.0
 """The most measured in 24 hours: Foc-Foc, La Reunion, 7-8 January 1966 (WMO Archive of Weather and Climate Extremes)."""
@@ -30,8 +31,11 @@ RARE_IN_A_DAY_MM = 500.0
 """A day above this is rare anywhere, and in dry country mostly a wrong unit or a sum of days (assumption)."""
 LEAST_YEAR_MM = 15.0
 """A mean year below this looks like inches or metres (common practice)."""
+WET_YEAR_MM, WET_YEAR_UNSURE_MM = 1500.0, 1000.0
+"""A mean year above this, or above the second where the unit is assumed, is no dry country's (assumption)."""
 SPARSE_DAYS = 5
 """Rows this many days apart are totals, not days."""
+DAYS_A_YEAR, MONTHS_A_YEAR = 365.25, 12.0
 MONTH_DAYS = (28, 31)
 """Days from one monthly total to the next."""
 
@@ -64,7 +68,7 @@ def read_rain(path: Path, *, unit: str | None = None, generator: RainGenerator |
     table = read_table(path, setting="rain.daily")
     dates = read_dates(path, table, setting="rain.daily", months=True)
     name = column_named(path, table, RAIN_NAMES, "rain", "rain.daily")
-    depth = _depths(path, table[name], _millimetres(name, unit, notes))
+    depth = _depths(path, table[name], dates, _millimetres(name, unit, notes))
     what = f"rain.daily {path.name}"
     monthly = _monthly(dates)
     _check(what, dates, depth, most_mm=MOST_IN_A_MONTH_MM if monthly else MOST_IN_A_DAY_MM)
@@ -73,14 +77,14 @@ def read_rain(path: Path, *, unit: str | None = None, generator: RainGenerator |
             msg = f"rain.generator is true, but {what} holds no monthly totals; take rain.generator out"
             raise InputError(msg)
         if unit is None:
-            _refuse_odd_years(what, depth, rows_a_year=12.0)
+            _refuse_odd_years(what, depth, MONTHS_A_YEAR)
+        _note_wet_years(depth, "The rain record", notes, MONTHS_A_YEAR)
         return _drawn(dates, depth, generator, notes)
-    _refuse_totals(what, dates, monthly)
+    _refuse_totals(what, dates, depth, monthly)
     if unit is None:
         _refuse_odd_years(what, depth)
     whole = _whole(dates, depth)
-    _note_rare_days(whole, "The rain record", notes)
-    _note_gaps(whole, "The rain record", notes)
+    _note_doubts(whole, "The rain record", notes)
     return Rain(whole.index.to_numpy().astype("datetime64[D]"), np.asarray(whole, dtype=np.float64))
 
 
@@ -155,7 +159,7 @@ def _by_row(
 ) -> dict[str, Readings]:
     """Return dates and depths of each station of a table with a station column."""
     name = column_named(path, table, RAIN_NAMES, "rain", "rain.daily")
-    depth = _depths(path, table[name], _millimetres(name, unit, notes))
+    depth = _depths(path, table[name], dates, _millimetres(name, unit, notes))
     names = table[station].str.strip()
     return {
         str(one): (dates[rows], depth[rows]) for one in dict.fromkeys(names) if (rows := (names == one).to_numpy()).any()
@@ -174,7 +178,7 @@ def _by_column(
         start, _, ending = plain.rpartition("_")
         key = plain if plain in wanted or ending not in UNIT_ENDINGS else start
         if key in wanted:
-            found[wanted[key]] = (dates, _depths(path, table[column], _millimetres(column, unit, notes)))
+            found[wanted[key]] = (dates, _depths(path, table[column], dates, _millimetres(column, unit, notes)))
         elif plain.split("_")[0] not in DATE_NAMES:
             unplaced.append(column)
     _note_unplaced(path, unplaced, notes)
@@ -187,15 +191,14 @@ def _one_calendar(path: Path, found: dict[str, Readings], unit: str | None, note
     for name, (dates, depth) in found.items():
         what = f"rain.daily {path.name} at {name!r}"
         _check(what, dates, depth, most_mm=MOST_IN_A_DAY_MM)
-        _refuse_totals(what, dates, _monthly(dates))
+        _refuse_totals(what, dates, depth, _monthly(dates))
         if unit is None:
             _refuse_odd_years(what, depth)
         series[name] = pd.Series(depth, index=dates)
     first, last = min(dates.min() for dates, _ in found.values()), max(dates.max() for dates, _ in found.values())
     frame = pd.DataFrame(series).reindex(pd.date_range(first, last, freq="D"))
     for name in found:
-        _note_rare_days(frame[name], f"The rain record of {name!r}", notes)
-        _note_gaps(frame[name], f"The rain record of {name!r}", notes)
+        _note_doubts(frame[name], f"The rain record of {name!r}", notes)
     days = frame.index.to_numpy().astype("datetime64[D]")
     return StationRain(days, frame.to_numpy(dtype=np.float64).T.copy(), tuple(found))
 
@@ -208,15 +211,15 @@ def _note_unplaced(path: Path, names: Sequence[str], notes: Notes) -> None:
         )
 
 
-def _depths(path: Path, text: "pd.Series[str]", millimetres: float) -> FloatArray:
-    return np.asarray(read_numbers(path, text, setting="rain.daily"), dtype=np.float64) * millimetres
+def _depths(path: Path, text: "pd.Series[str]", dates: pd.DatetimeIndex, millimetres: float) -> FloatArray:
+    return np.asarray(read_numbers(path, text, setting="rain.daily", dates=dates), dtype=np.float64) * millimetres
 
 
 def _millimetres(name: str, unit: str | None, notes: Notes) -> float:
     ending = plain_name(name).rsplit("_", maxsplit=1)[-1]
     known = unit or UNIT_ENDINGS.get(ending)
     if known is None:
-        notes.assume("rain.unit", "mm", "", "the file names no unit", "all water")
+        notes.assume(UNIT_SETTING, "mm", "", "the file names no unit", "all water")
         known = "mm"
     if known not in ("mm", "inch"):
         msg = f"rain.unit is {known!r}; it must be 'mm' or 'inch'"
@@ -246,7 +249,8 @@ def _check(what: str, dates: pd.DatetimeIndex, depth: FloatArray, *, most_mm: fl
         msg = f"{what} holds no depth at all; give a file with readings"
         raise InputError(msg)
     if np.nanmin(depth) < 0:
-        msg = f"{what} has a depth of {np.nanmin(depth):g} mm; leave missing days empty"
+        day = dates[int(np.nanargmin(depth))].date()
+        msg = f"{what} has a depth of {np.nanmin(depth):g} mm on {day}; leave missing days empty"
         raise InputError(msg)
     if np.nanmax(depth) > most_mm:
         msg = (
@@ -256,7 +260,8 @@ def _check(what: str, dates: pd.DatetimeIndex, depth: FloatArray, *, most_mm: fl
         raise InputError(msg)
 
 
-def _refuse_totals(what: str, dates: pd.DatetimeIndex, monthly: bool) -> None:
+def _refuse_totals(what: str, dates: pd.DatetimeIndex, depth: FloatArray, monthly: bool) -> None:
+    _refuse_wet_days_alone(what, dates, depth)
     step = _usual_step(dates)
     if step >= SPARSE_DAYS:
         way_out = ", or let days be drawn from the totals with rain.generator = true" if monthly else ""
@@ -264,7 +269,18 @@ def _refuse_totals(what: str, dates: pd.DatetimeIndex, monthly: bool) -> None:
         raise InputError(msg)
 
 
-def _refuse_odd_years(what: str, depth: FloatArray, rows_a_year: float = 365.25) -> None:
+def _refuse_wet_days_alone(what: str, dates: pd.DatetimeIndex, depth: FloatArray) -> None:
+    """Refuse rain on fewer than half of the days and no dry one: rain of following days, which totals do not have."""
+    read = dates[~np.isnan(depth)].sort_values()
+    span = (read[-1] - read[0]).days + 1
+    neighbours = read.size > 1 and np.diff(read).min() == np.timedelta64(1, "D")
+    if neighbours and 2 * read.size < span and np.nanmin(depth) > 0:
+        msg = f"{what} holds {read.size} of {_days(span)} and no dry one: it seems to list wet days alone; "
+        msg += "write dry days as 0, and leave out only those not measured"
+        raise InputError(msg)
+
+
+def _refuse_odd_years(what: str, depth: FloatArray, rows_a_year: float = DAYS_A_YEAR) -> None:
     mean = np.nanmean(depth) * rows_a_year
     if mean < LEAST_YEAR_MM and depth.size > rows_a_year:
         msg = (
@@ -290,12 +306,31 @@ def _drawn(dates: pd.DatetimeIndex, total_mm: FloatArray, generator: RainGenerat
     return daily_from_monthly(months, totals, generator=generator, notes=notes)
 
 
+def _note_doubts(series: "pd.Series[float]", what: str, notes: Notes) -> None:
+    """Say what in a record of days should be looked at."""
+    _note_wet_years(np.asarray(series, dtype=np.float64), what, notes)
+    _note_rare_days(series, what, notes)
+    _note_gaps(series, what, notes)
+
+
+def _note_wet_years(depth: FloatArray, what: str, notes: Notes, rows_a_year: float = DAYS_A_YEAR) -> None:
+    """Say that a mean year is more than dry country has; sooner where nobody told the unit."""
+    mean = float(np.nanmean(depth)) * rows_a_year
+    assumed = any(one.id == UNIT_SETTING for one in notes.assumptions)
+    if depth.size > rows_a_year and mean > (WET_YEAR_UNSURE_MM if assumed else WET_YEAR_MM):
+        notes.warn(
+            "rain_wet",
+            f"{what} sums to {mean:.0f} mm in a mean year, much for dry country: divide depths in tenths of a millimetre by "
+            f"10; {'if it is right' if assumed else 'if it is in another unit'}, say the unit in rain.unit.",
+        )
+
+
 def _note_rare_days(series: "pd.Series[float]", what: str, notes: Notes) -> None:
     rare = int((series > RARE_IN_A_DAY_MM).sum())
     if rare:
         notes.warn(
             "rain_rare_days",
-            f"{what} has {rare} days above {RARE_IN_A_DAY_MM:g} mm, the largest {series.max():g} mm on "
+            f"{what} has {_days(rare)} above {RARE_IN_A_DAY_MM:g} mm, the largest {series.max():g} mm on "
             f"{series.index[int(series.argmax())].date()}: check the unit, and that it is the rain of one day.",
         )
 
@@ -305,7 +340,16 @@ def _note_gaps(series: "pd.Series[float]", what: str, notes: Notes) -> None:
     if not missing.any():
         return
     after = int(np.count_nonzero(missing[:-1] & ~missing[1:] & (series.to_numpy()[1:] > 0)))
-    notes.warn(
-        "rain_gaps",
-        f"{what} lacks {int(missing.sum())} days; {after} readings right after a gap may be sums of several days.",
-    )
+    text = f"{what} lacks {_days(int(missing.sum()))}, the first {series.index[int(missing.argmax())].date()}"
+    if 2 * missing.sum() > missing.size:
+        text += "; where those were dry, write them as 0"
+    if after:
+        sums = (
+            "1 reading right after a gap may be a sum" if after == 1 else f"{after} readings right after a gap may be sums"
+        )
+        text += f"; {sums} of several days"
+    notes.warn("rain_gaps", f"{text}.")
+
+
+def _days(count: int) -> str:
+    return "1 day" if count == 1 else f"{count} days"

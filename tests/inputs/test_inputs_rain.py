@@ -48,7 +48,10 @@ def test_gaps_are_missing_and_said(tmp_path: Path) -> None:
     lines = days(20)
     rain = read_rain(rain_file(tmp_path, "date,rain_mm\n" + "\n".join(lines[:8] + lines[11:])), notes=notes)
     assert np.isnan(rain.rain_mm).sum() == 3
-    assert "lacks 3 days; 1 readings right after a gap" in notes.warnings[0].text
+    assert (
+        "lacks 3 days, the first 2001-01-09; 1 reading right after a gap may be a sum of several days."
+        in notes.warnings[0].text
+    )
 
 
 @pytest.mark.parametrize(
@@ -59,8 +62,8 @@ def test_gaps_are_missing_and_said(tmp_path: Path) -> None:
             "give daily rain",
         ),
         ("date,rain_mm\n2001-01-01,1\n2001-01-01,2", "more than once"),
-        ("date,rain_mm\n2001-01-01,-3\n2001-01-02,0", "leave missing days empty"),
-        ("date,rain_mm\n2001-01-01,wet\n2001-01-02,0", "'wet' for a number"),
+        ("date,rain_mm\n2001-01-01,-3\n2001-01-02,0", "-3 mm on 2001-01-01; leave missing days empty"),
+        ("date,rain_mm\n2001-01-01,wet\n2001-01-02,0", "'wet' on 2001-01-01, which is no number"),
         ("date,rain_mm\n02/03/2001,1\n03/03/2001,2", "could be day or month first"),
         ("date,rain\n" + "\n".join(days(800, "0.01")), r"if it is in inches, say rain\.unit = 'inch'"),
         ("date,rain_mm\n2001-01-01,0\n2001-01-02,1830", "1830 mm on 2001-01-02, beyond the most ever measured, 1825 mm"),
@@ -134,7 +137,7 @@ def test_a_day_that_is_rare_anywhere_is_said(tmp_path: Path) -> None:
     text = "date,rain_mm\n2001-01-01,500\n2001-01-02,620\n2001-01-03,0"
     assert read_rain(rain_file(tmp_path, text), notes=notes).rain_mm.max() == 620.0
     assert [warned.code for warned in notes.warnings] == ["rain_rare_days"]
-    assert "has 1 days above 500 mm, the largest 620 mm on 2001-01-02: check the unit" in notes.warnings[0].text
+    assert "has 1 day above 500 mm, the largest 620 mm on 2001-01-02: check the unit" in notes.warnings[0].text
 
 
 def test_the_greatest_day_ever_measured_is_taken(tmp_path: Path) -> None:
@@ -143,3 +146,51 @@ def test_the_greatest_day_ever_measured_is_taken(tmp_path: Path) -> None:
     text = "date,rain_mm\n1966-01-07,1825\n1966-01-08,0"
     assert read_rain(rain_file(tmp_path, text), notes=notes).rain_mm.max() == 1825.0
     assert [warned.code for warned in notes.warnings] == ["rain_rare_days"]
+
+
+def test_a_dry_reading_after_a_gap_is_no_sum(tmp_path: Path) -> None:
+    notes = Notes()
+    read_rain(rain_file(tmp_path, "date,rain_mm\n2001-01-01,4\n2001-01-03,0\n2001-01-04,0\n"), notes=notes)
+    assert [warned.text for warned in notes.warnings] == ["The rain record lacks 1 day, the first 2001-01-02."]
+
+
+def test_rain_that_lists_wet_days_alone_is_refused(tmp_path: Path) -> None:
+    text = "date,rain_mm\n2001-01-01,4\n2001-01-02,3\n2001-01-12,5\n2001-01-22,0.2\n"
+    message = "holds 4 of 22 days and no dry one: it seems to list wet days alone; write dry days as 0"
+    with pytest.raises(InputError, match=message):
+        read_rain(rain_file(tmp_path, text), notes=Notes())
+
+
+def test_a_record_with_dry_days_may_lack_most_of_its_days(tmp_path: Path) -> None:
+    notes = Notes()
+    lines = days(10, "0") + days(10, "2.0", start="2001-03-01")
+    rain = read_rain(rain_file(tmp_path, "date,rain_mm\n" + "\n".join(lines)), notes=notes)
+    assert np.isnan(rain.rain_mm).sum() == 49
+    assert "lacks 49 days, the first 2001-01-11; where those were dry, write them as 0; 1 reading" in notes.warnings[0].text
+
+
+@pytest.mark.parametrize(
+    ("column", "unit", "depth", "told"),
+    [
+        ("rain", None, "2.8", "1023 mm in a mean year"),  # the unit is assumed
+        ("rain_mm", None, "2.8", None),
+        ("rain", "mm", "4.2", "1534 mm in a mean year"),
+        ("rain_mm", None, "4.2", "1534 mm in a mean year"),
+        ("rain", None, "2.7", None),
+    ],
+)
+def test_a_year_wetter_than_dry_country_has_is_said(
+    tmp_path: Path, column: str, unit: str | None, depth: str, told: str | None
+) -> None:
+    notes = Notes()
+    read_rain(rain_file(tmp_path, f"date,{column}\n" + "\n".join(days(400, depth))), unit=unit, notes=notes)
+    texts = [warned.text for warned in notes.warnings if warned.code == "rain_wet"]
+    assert len(texts) == (told is not None)
+    assert told is None or (told in texts[0] and "tenths of a millimetre" in texts[0])
+
+
+def test_marks_of_a_missing_day_may_have_decimals(tmp_path: Path) -> None:
+    marks = ("-9999", "-9999.0", "-99.90", "-999,0", "NaN")
+    text = "date;rain_mm\n2001-01-06;2\n" + "\n".join(f"2001-01-0{day};{mark}" for day, mark in enumerate(marks, 1))
+    rain = read_rain(rain_file(tmp_path, text), notes=Notes())
+    np.testing.assert_array_equal(rain.rain_mm, [np.nan] * 5 + [2.0])

@@ -83,8 +83,9 @@ def test_stations_are_laid_on_one_calendar(tmp_path: Path, text: str) -> None:
     np.testing.assert_array_equal(got.rain_mm, [[5, 0, np.nan, np.nan], [2, np.nan, 1, 4]])
     said = [warned.text for warned in notes.warnings]
     assert said == [
-        "The rain record of 'Qesh' lacks 2 days; 0 readings right after a gap may be sums of several days.",
-        "The rain record of 'Rehm' lacks 1 days; 1 readings right after a gap may be sums of several days.",
+        "The rain record of 'Qesh' lacks 2 days, the first 2001-01-03.",
+        "The rain record of 'Rehm' lacks 1 day, the first 2001-01-02; "
+        "1 reading right after a gap may be a sum of several days.",
     ]
 
 
