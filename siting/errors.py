@@ -23,3 +23,13 @@ class CapacityError(SitingError):
 
 class OutputError(SitingError):
     """A result cannot be written."""
+
+
+LONGEST_CLAUSE = 160
+
+
+def one_line(error: BaseException) -> str:
+    """Return what a library says in one short line: the last clause, for the first ones may repeat all that it was given."""
+    lines = [line.strip() for line in str(error).splitlines() if line.strip()]
+    text = lines[-1] if lines else type(error).__name__
+    return text if len(text) <= LONGEST_CLAUSE else text.rpartition(": ")[2][-LONGEST_CLAUSE:]

@@ -8,11 +8,12 @@ import numpy as np
 import numpy.typing as npt
 import rasterio
 from affine import Affine
+from rasterio._err import CPLE_BaseError  # what a full disk raises, and no public error holds
 from rasterio.enums import ColorInterp
 from rasterio.io import DatasetWriter
 from rasterio.shutil import copy as copy_raster
 
-from siting.errors import OutputError
+from siting.errors import OutputError, one_line
 from siting.grid import Grid
 from siting.layers.model import RasterDefinition
 from siting.layers.rasters import END_OF_FLOW_DEG, NO_DIRECTION
@@ -78,9 +79,9 @@ def write_cog(
         with tempfile.TemporaryDirectory(prefix=".cog.", dir=path.parent) as folder:
             source = _source(Path(folder), stored, grid, definition)
             copy_raster(source, path, driver="COG", **_options(definition, threads, compression))
-    except (rasterio.errors.RasterioError, OSError) as error:
+    except (rasterio.errors.RasterioError, CPLE_BaseError, OSError) as error:
         path.unlink(missing_ok=True)
-        msg = f"{path.name} cannot be written: {error}; is there room on the disk, and may you write there?"
+        msg = f"{path.name} cannot be written: {one_line(error)}; is there room on the disk, and may you write there?"
         raise OutputError(msg) from error
 
 

@@ -15,7 +15,7 @@ import pyogrio.errors
 import pyogrio.raw
 import shapely
 
-from siting.errors import OutputError
+from siting.errors import OutputError, one_line
 from siting.layers.model import Column, Layer
 from siting.layers.vectors import LAYERS
 from siting.outputs.columns import Stored, empty_column, given_columns, given_values, stored_column
@@ -71,7 +71,7 @@ def write_geopackage(path: Path, tables: Mapping[str, Table | None], crs: str) -
             written = [_write_layer(path, layer, tables.get(layer.name), crs) for layer in LAYERS if _wanted(layer, tables)]
         _finish(path, written)
     except (pyogrio.errors.DataSourceError, sqlite3.Error, OSError) as error:
-        msg = f"{path.name} cannot be written: {error}; is there room on the disk, and may you write there?"
+        msg = f"{path.name} cannot be written: {one_line(error)}; is there room on the disk, and may you write there?"
         raise OutputError(msg) from error
 
 

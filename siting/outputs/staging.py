@@ -1,13 +1,19 @@
 """The results folder: written beside its place and put there whole, or not at all."""
 
+import glob
 import json
+import os
+import re
 import shutil
+import socket
 import tempfile
 from pathlib import Path
 from types import TracebackType
 
 from siting.errors import OutputError
 from siting.outputs.run_record import MARK, RUN_RECORD
+
+PARTIAL = ".partial"
 
 
 class StagedFolder:
@@ -39,7 +45,7 @@ class StagedFolder:
         self._check()
         try:
             self.target.parent.mkdir(parents=True, exist_ok=True)
-            name = tempfile.mkdtemp(prefix=f".{self.target.name}.", suffix=".partial", dir=self.target.parent)
+            name = tempfile.mkdtemp(prefix=f"{self._mark}{os.getpid()}.", suffix=PARTIAL, dir=self.target.parent)
         except OSError as error:
             msg = f"{self.target.name} cannot be written: {error.strerror}; choose another folder with --out"
             raise OutputError(msg) from error
@@ -59,8 +65,17 @@ class StagedFolder:
                 shutil.rmtree(staged, ignore_errors=True)
             self._staged = None
 
+    @property
+    def _mark(self) -> str:
+        """How temporary folders of this target begin that were made on this machine."""
+        return f".{self.target.name}.{re.sub(r'[^A-Za-z0-9-]', '-', socket.gethostname())}."
+
     def _mend(self) -> None:
-        """Finish or undo what a killed run began to put in place."""
+        """Finish or undo what a killed run began to put in place, and take away what it left half written."""
+        for left in self.target.parent.glob(f"{glob.escape(self._mark)}*{PARTIAL}"):
+            number = left.name.removeprefix(self._mark).partition(".")[0]
+            if number.isdecimal() and not _runs(int(number)):
+                shutil.rmtree(left, ignore_errors=True)
         if not is_ours(self._aside):
             return
         if self.target.exists():
@@ -99,6 +114,17 @@ class StagedFolder:
             msg = f"{self.target.name} cannot be put in place: {error.strerror}; is it open in another program?"
             raise OutputError(msg) from error
         _remove(self._aside)
+
+
+def _runs(process: int) -> bool:
+    """Tell whether a process of this machine is alive."""
+    try:
+        os.kill(process, 0)
+    except ProcessLookupError:
+        return False
+    except OSError:
+        return True
+    return True
 
 
 def is_ours(folder: Path) -> bool:

@@ -16,6 +16,9 @@ BYTES_PER_CELL = 110
 DISK_BYTES_PER_CELL = 45
 """Results and what is written on the way, for each cell, at worst: ten rasters that do not compress."""
 
+BASE_DISK_BYTES = 20e6
+"""Layers, tables and styles of a run with some hundred plots."""
+
 BASE_BYTES = 700e6
 """Memory of the libraries themselves and of a rain record."""
 
@@ -45,7 +48,7 @@ def forecast(dem: Path, out: Path) -> Forecast | None:
     return Forecast(
         cells,
         BASE_BYTES + BYTES_PER_CELL * cells,
-        DISK_BYTES_PER_CELL * cells,
+        BASE_DISK_BYTES + DISK_BYTES_PER_CELL * cells,
         10.0 + SECONDS_PER_MILLION_CELLS * cells / 1e6,
         _free_memory_bytes(),
         _free_disk_bytes(out),
@@ -62,8 +65,13 @@ def refuse_what_does_not_fit(dem: Path, out: Path) -> None:
         ("disk", found.disk_bytes, found.free_disk_bytes, "free some, or name another folder with --out"),
     ):
         if free is not None and needed > free:
-            msg = f"{found.cells} cells need {needed / 1e9:.1f} GB of {what} and {free / 1e9:.1f} GB are free; {way_out}"
+            msg = f"{found.cells} cells need {_size(needed)} of {what} and {_size(free)} are free; {way_out}"
             raise CapacityError(msg)
+
+
+def _size(number: float) -> str:
+    """Write bytes in GB, or in MB where they are few."""
+    return f"{number / 1e9:.1f} GB" if number >= 1e9 else f"{number / 1e6:.0f} MB"
 
 
 def _free_memory_bytes() -> float | None:

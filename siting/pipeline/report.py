@@ -8,7 +8,7 @@ from pyproj import CRS
 from siting.config import Project, default_vertical_error_m, note_defaults
 from siting.notes import Notes
 from siting.pipeline.crop import CropChoice, choose_crop
-from siting.pipeline.forecast import forecast
+from siting.pipeline.forecast import forecast, refuse_what_does_not_fit
 from siting.pipeline.read import Place, read_place
 from siting.pipeline.weather import Weather, weather_of
 from siting.ranking import dependable
@@ -19,6 +19,7 @@ GIGABYTE = 1e9
 
 def check(project: Project) -> dict[str, Any]:
     """Read everything and tell what it is; see `siting.pipeline.check`."""
+    refuse_what_does_not_fit(project.settings.place.dem, project.folder / "results")
     notes = Notes()
     place = read_place(project, notes)
     note_defaults(project, notes)

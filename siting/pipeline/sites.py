@@ -11,6 +11,7 @@ from siting.layers.codes import WHY_NOT
 from siting.notes import Notes
 from siting.pipeline.read import Place
 from siting.plots import (
+    FOUND,
     Catchments,
     Ground,
     Limits,
@@ -21,7 +22,9 @@ from siting.plots import (
     plot_cells,
     screen,
     trace_catchments,
+    without_plots,
 )
+from siting.plots.screening import TOO_LITTLE_ABOVE
 from siting.runoff import RunoffClasses
 from siting.terrain import Terrain
 
@@ -67,12 +70,24 @@ def find_sites(place: Place, ground: Terrain, classes: RunoffClasses, project: P
         given_names=place.given_names or None,
         **size,
     )
-    _tell(plots, place, notes)
-    cells = plot_cells(plots.label, plots.count)
     losses = (settings.runoff.conveyance_loss_per_km, 0.0, *DRAWN_LOSSES)
+    cells = plot_cells(plots.label, plots.count)
     catchments = trace(cells, plots.label, place, ground, classes, losses)
+    unfed = _unfed(plots, catchments, settings.plots.min_catchment_ratio)
+    if unfed.any():
+        # cells were fed by ground that belongs to the plot itself
+        plots = without_plots(plots, unfed, reason=TOO_LITTLE_ABOVE)
+        cells = plot_cells(plots.label, plots.count)
+        catchments = trace(cells, plots.label, place, ground, classes, losses)
+    _tell(plots, place, notes)
     in_plot = np.bincount(cells.plot, weights=ground.channel.ravel()[cells.cell], minlength=plots.count)
     return Sites(plots, cells, catchments, in_plot > 0, np.array(losses))
+
+
+def _unfed(plots: PlotLabels, catchments: Catchments, least_ratio: float) -> npt.NDArray[np.bool_]:
+    """Tell which found plots have less ground above them than the least multiple of their own area."""
+    found = np.array([origin == FOUND for origin in plots.origin], dtype=np.bool_)
+    return found & (catchments.area_m2 < least_ratio * plots.area_m2)
 
 
 def trace(

@@ -9,7 +9,7 @@ from siting.plots.catchments import (
     plot_cells,
     trace_catchments,
 )
-from siting.plots.division import FOUND, GIVEN, PlotLabels, make_plots
+from siting.plots.division import FOUND, GIVEN, PlotLabels, make_plots, without_plots
 from siting.plots.patches import PlotSize, plot_size
 from siting.plots.screening import Ground, Limits, Screening, deepest_part, judge, screen, strip_share_left
 from siting.plots.surface import PlotPlane, commonest, fit_planes, plot_means, slope_margin
@@ -40,4 +40,5 @@ __all__ = [
     "slope_margin",
     "strip_share_left",
     "trace_catchments",
+    "without_plots",
 ]

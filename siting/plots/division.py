@@ -124,6 +124,30 @@ def make_plots(
     return PlotLabels(label, area, cells, origin, given_label, reason, slivers, size.coarse_cells)
 
 
+def without_plots(plots: PlotLabels, dropped: Mask, *, reason: int) -> PlotLabels:
+    """
+    Take plots out again (marked by number from 0), their cells given a reason code; the others keep their order.
+
+    Raises IndexError where the marks are of another number of plots.
+    """
+    number = np.zeros(plots.count + 1, dtype=np.int32)
+    kept = np.flatnonzero(~dropped)
+    number[1 + kept] = np.arange(1, kept.size + 1)
+    label = number[plots.label]
+    codes = plots.reason.copy()
+    codes[(plots.label > 0) & (label == 0)] = reason
+    return PlotLabels(
+        label,
+        plots.area_m2[kept],
+        plots.cells[kept],
+        tuple(plots.origin[place] for place in kept),
+        plots.given_label[kept],
+        codes,
+        plots.slivers,
+        plots.coarse_cells,
+    )
+
+
 def _given_plots(given: Labels | None, ground: _Ground, names: Sequence[str] | None) -> tuple[Labels, Integers]:
     """Label the given plots from 1; refuse those without ground."""
     label = np.zeros(ground.direction.shape, dtype=np.int32)

@@ -1,6 +1,7 @@
 import datetime
 import hashlib
 import json
+import shutil
 import subprocess
 import sys
 from dataclasses import dataclass
@@ -211,3 +212,21 @@ def test_hashes_cover_every_file_but_the_record(tmp_path: Path) -> None:
     assert sha256(tmp_path / "rasters" / "b.tif") == published
     assert list(file_hashes(tmp_path)) == ["a.gpkg", "rasters/b.tif"]
     assert file_hashes(tmp_path)["a.gpkg"] == hashlib.sha256(b"").hexdigest()
+
+
+def test_what_a_killed_run_left_half_written_is_taken_away_and_that_of_a_living_one_stays(tmp_path: Path) -> None:
+    script = (
+        "import os, sys; from pathlib import Path; from siting.outputs import StagedFolder\n"
+        "with StagedFolder(Path(sys.argv[1])) as folder:\n"
+        "    (folder / 'half').write_text('x'); os.kill(os.getpid(), 9)\n"
+    )
+    subprocess.run([sys.executable, "-c", script, str(tmp_path / "results")], check=False)
+    assert len(list(tmp_path.glob(".results.*.partial"))) == 1
+    with StagedFolder(tmp_path / "results") as alive:
+        with StagedFolder(tmp_path / "results") as folder:
+            assert sorted(tmp_path.glob(".results.*.partial")) == sorted([alive, folder])
+            (folder / "run.json").write_text('{"siting_run_record": 1}')
+        with pytest.raises(OutputError):
+            StagedFolder(tmp_path / "results").__enter__()
+        shutil.rmtree(tmp_path / "results")
+    assert not list(tmp_path.glob(".results.*.partial"))

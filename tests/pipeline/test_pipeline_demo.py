@@ -76,6 +76,7 @@ def test_plots_lie_inside_the_boundary_and_off_the_road(demo: Demo) -> None:
     assert (plots.distance(road) >= 20 - 7.1).all()
     assert (plots["slope_pct"] < 6).all()
     assert (plots["area_m2"] >= 1000).all()
+    assert (plots["catchment_ratio"] >= 1).all()  # plots.min_catchment_ratio
 
 
 def test_outlines_have_the_areas_of_the_columns(demo: Demo) -> None:

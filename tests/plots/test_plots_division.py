@@ -8,7 +8,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from siting.errors import InputError
-from siting.plots import PlotLabels, fit_planes, make_plots, plot_cells, plot_means, plot_size
+from siting.plots import PlotLabels, fit_planes, make_plots, plot_cells, plot_means, plot_size, without_plots
 from siting.plots.surface import commonest, slope_margin
 
 SOUTH = 3
@@ -168,3 +168,18 @@ def test_no_plots_at_all() -> None:
     size = np.full(4, 10.0)
     assert fit_planes(cells, np.zeros((4, 4), np.float32), cell_width_m=size, cell_height_m=size).slope.size == 0
     assert plots_of(np.zeros((4, 4), dtype=np.bool_)).count == 0
+
+
+def test_plots_taken_out_again_leave_the_others_in_order_and_say_why() -> None:
+    passed = np.zeros((12, 60), dtype=np.bool_)
+    for left in (1, 21, 41):
+        passed[3:8, left : left + 5] = True
+    plots = plots_of(passed)
+    assert plots.count == 3
+    found = without_plots(plots, np.array([False, True, False]), reason=9)
+    assert found.count == 2
+    assert found.area_m2.tolist() == [2500.0, 2500.0]
+    assert (found.label[3:8, 1:6] == 1).all()
+    assert (found.label[3:8, 41:46] == 2).all()
+    assert (found.label[3:8, 21:26] == 0).all()
+    assert (found.reason[3:8, 21:26] == 9).all()
