@@ -222,6 +222,8 @@ class Ranking(_Section):
     seed: Annotated[int, Field(ge=0)]
     set_area_m2: Above0 | None = None
     set_plots: Annotated[int, Field(ge=1)] | None = None
+    set_people: Annotated[int, Field(ge=1)] | None = None
+    area_per_person_m2: Above0
     weight_water: AtLeast0
     weight_gain: AtLeast0
     weight_soil: AtLeast0

@@ -13,8 +13,9 @@ from siting.pipeline.case import Case
 from siting.pipeline.downstream import Ledger
 from siting.pipeline.order import Order
 from siting.pipeline.read import Place
-from siting.pipeline.water import CropResults, Water
-from siting.ranking import ChosenSet, VillageRanks, dependable, rank_villages
+from siting.pipeline.together import supported_dry_m2
+from siting.pipeline.water import Water
+from siting.ranking import ChosenSet, VillageRanks, rank_villages
 from siting.terrain import Terrain
 from siting.terrain.walking import WALKING_CELL_M, walks
 
@@ -65,7 +66,7 @@ def villages_layer(
     if water is None or water.crop is None or chosen is None or lost is None:
         return found.assign(status="unknown", reason=NOT_RANKED)
     _warn_of_losses(case, villages, lost)
-    supported = _supported_dry_m2(case, water, water.crop, chosen)
+    supported = supported_dry_m2(case, water, water.crop, chosen)
     ranks = _ranks(case, cells, order, chosen, _people(case, villages), supported)
     per_person = ranks.supported_dry_m2_per_person if case.settings.villages.people else np.full(cells.count, np.nan)
     return found.assign(
@@ -151,15 +152,3 @@ def _ranks(
         plot_area_m2=sites.plots.area_m2,
         plot_rank=np.where(order.rank > 0, order.rank, order.rank.size + 1),
     )
-
-
-def _supported_dry_m2(case: Case, water: Water, crop: CropResults, chosen: ChosenSet) -> FloatArray:
-    """Return the area that each plot supports in the dependable year on the water that the set leaves it; NaN unknown."""
-    source = "assumption: its area x the supply ratio (at most 1) x the share of its water that the set leaves, dry year"
-    case.notes.assume("villages.supported_area", "of each plot of the set", "m2", source, "the order of villages")
-    share = case.settings.ranking.dependable
-    ratio = np.minimum(dependable(crop.seasons.supply_ratio, probability=share), 1.0)
-    alone = dependable(np.minimum(water.yearly_m3, water.room_m3), probability=share)
-    taken = dependable(chosen.taken_m3, probability=share)
-    left = np.divide(taken, alone, out=np.zeros_like(alone), where=alone > 0)
-    return np.where(np.isnan(ratio) | np.isnan(alone), np.nan, case.sites.plots.area_m2 * ratio * left)

@@ -191,3 +191,15 @@ def test_directions_of_ones_own_that_are_those_of_a_run_change_nothing(
     write_dem(tmp_path / "smaller.tif", valley[1:], 10.0)
     with pytest.raises(InputError, match="give directions on the DEM's own cells"):
         run_flags(tmp_path / "smaller.tif", tmp_path / "third", **own)
+
+
+def test_the_set_ends_with_the_plot_that_feeds_the_people_asked_for(plots_with: Runs) -> None:
+    every = plots_with()
+    few = plots_with(ranking__set_people=2)
+    members = few[few["set_order"].notna()].sort_values("set_order")
+    supported = members["area_m2"] * members["supply_ratio_dry"].clip(upper=1)
+    assert 0 < len(members) < every["set_order"].notna().sum()
+    # what the set leaves a plot may be less than all of its water: never fewer plots than without losses
+    assert supported.iloc[:-1].sum() < 2 * 1500 * 2
+    assert supported.sum() >= 2 * 1500
+    assert "set_too_small" in plots_with(warnings=True, ranking__set_people=100_000)
