@@ -1,4 +1,4 @@
-"""Daily tables in CSV as people write them: separators, column names, dates and numbers."""
+"""Tables in CSV as people write them: separators, column names, dates and numbers."""
 
 import csv
 import io
@@ -26,18 +26,28 @@ def read_table(path: Path, *, setting: str) -> pd.DataFrame:
         raise InputError(msg)
     try:
         text = path.read_text(encoding="utf-8-sig", errors="strict")
-        separator = max(";\t,", key=text.partition("\n")[0].count)
+        separator = separator_of(text)
         reader = csv.reader(io.StringIO(text, newline=""), delimiter=separator, skipinitialspace=True)
         lines = [(reader.line_num, fields) for fields in reader if any(field.strip() for field in fields)]
     except (UnicodeDecodeError, csv.Error) as error:
-        msg = f"{setting} {path.name} cannot be read as a table; save it as CSV (UTF-8) with a date column"
+        msg = f"{setting} {path.name} cannot be read as a table; save it as CSV (UTF-8) with a line of names"
         raise InputError(msg) from error
     names = _names(path, lines[0][1] if lines else [], setting)
     rows = [_row(path, fields, number, len(names), separator, setting) for number, fields in lines[1:]]
     if not rows or len(names) < 2:
-        msg = f"{setting} {path.name} has {len(rows)} rows and {len(names)} columns; it needs dates and values"
+        msg = f"{setting} {path.name} holds {_count(len(rows), 'row')} of {_count(len(names), 'column')}; "
+        msg += "it needs a line of names, and rows of two columns at least"
         raise InputError(msg)
     return pd.DataFrame(rows, columns=names, dtype=str)
+
+
+def separator_of(text: str) -> str:
+    """Tell what separates the columns of a table: semicolon, tab or comma, whichever its first line holds most of."""
+    return max(";\t,", key=text.partition("\n")[0].count)
+
+
+def _count(number: int, what: str) -> str:
+    return f"{number} {what}{'' if number == 1 else 's'}"
 
 
 def _names(path: Path, header: list[str], setting: str) -> list[str]:

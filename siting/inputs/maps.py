@@ -3,10 +3,10 @@
 from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
-import pandas as pd
 import rasterio
 from affine import Affine
 from rasterio.enums import ColorInterp
@@ -17,7 +17,8 @@ from rasterio.windows import Window
 
 from siting.errors import InputError
 from siting.grid import Grid
-from siting.inputs.vectors import NO_VALUE, burn, read_vector
+from siting.inputs.daily_csv import read_table
+from siting.inputs.vectors import NO_VALUE, burn, overlap_share, read_vector
 from siting.notes import Notes
 
 RASTER_ENDINGS = (".tif", ".tiff", ".vrt", ".img", ".asc", ".bil", ".hgt")
@@ -58,7 +59,7 @@ def read_map(path: Path, grid: Grid, *, column: str | None, setting: str, notes:
     if is_raster(path):
         found = _codes_of_raster(read_raster_on_grid(path, grid, setting=setting))
     else:
-        found = _codes_of_polygons(path, grid, column, setting)
+        found = _codes_of_polygons(path, grid, column, setting, notes)
     tell_covered(path, float(np.mean(found.code >= 0)), setting=setting, notes=notes)
     return found
 
@@ -72,6 +73,17 @@ def tell_covered(path: Path, covered: float, *, setting: str, notes: Notes) -> N
         notes.warn(
             f"{setting}_partial",
             f"{setting} {path.name} leaves {100 * (1 - covered):.1f} % of the DEM's cells without a value: unknown.",
+        )
+
+
+def tell_overlap(path: Path, shapes: list[tuple[Any, int]], grid: Grid, *, setting: str, notes: Notes) -> None:
+    """Say on what share of the cells polygons of different values lie on top of each other, and which of them counts."""
+    share = overlap_share(shapes, grid)
+    if share:
+        notes.warn(
+            f"{setting}_overlap",
+            f"{setting} {path.name} has polygons of different values over each other on {100 * share:.3g} % of the DEM's "
+            "cells: the last of them in the file counts.",
         )
 
 
@@ -121,8 +133,8 @@ def _codes_of_raster(values: npt.NDArray[np.float64]) -> CodeMap:
     return CodeMap(code, tuple(f"{value:g}" for value in found))
 
 
-def _codes_of_polygons(path: Path, grid: Grid, column: str | None, setting: str) -> CodeMap:
-    frame = read_vector(path, grid, setting=setting)
+def _codes_of_polygons(path: Path, grid: Grid, column: str | None, setting: str, notes: Notes) -> CodeMap:
+    frame = read_vector(path, grid, setting=setting, areas=True)
     names = ", ".join(repr(str(name)) for name in frame.columns if name != frame.geometry.name)
     if column is None or column not in frame.columns:
         msg = f"{setting} {path.name} needs the name of a column, not {column!r}; it has {names}"
@@ -134,6 +146,7 @@ def _codes_of_polygons(path: Path, grid: Grid, column: str | None, setting: str)
         for shape, value in zip(frame.geometry, text, strict=True)
         if value and shape is not None and not shape.is_empty
     ]
+    tell_overlap(path, shapes, grid, setting=setting, notes=notes)
     return CodeMap(burn(shapes, grid), values)
 
 
@@ -148,16 +161,11 @@ def plain_text(value: object) -> str:
 
 def read_meanings(path: Path, *, needed: tuple[str, ...], setting: str) -> dict[str, dict[str, str]]:
     """
-    Read a CSV that says what map values mean: rows by `map_value`, as text; empty cells are empty.
+    Read a CSV (comma, semicolon or tab) that says what map values mean: rows by `map_value`, as text; empty cells are empty.
 
     Raises InputError where the file or a column is missing or a value stands twice.
     """
-    try:
-        table = pd.read_csv(path, dtype=str, keep_default_na=False, encoding="utf-8-sig", skipinitialspace=True)
-    except (OSError, UnicodeDecodeError, ValueError) as error:
-        columns = ", ".join(("map_value", *needed))
-        msg = f"{setting} {path.name} cannot be read as a table; give a CSV with the columns {columns}"
-        raise InputError(msg) from error
+    table = read_table(path, setting=setting)
     missing = [name for name in ("map_value", *needed) if name not in table.columns]
     if missing:
         msg = f"{setting} {path.name} lacks the column {missing[0]!r}; it has {', '.join(map(repr, table.columns))}"

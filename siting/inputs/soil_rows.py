@@ -1,13 +1,14 @@
 """A soil map as a list of soils: its columns, or those of the table that goes with it, understood or refused."""
 
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 
 from siting.errors import CapacityError, ConfigError, InputError
 from siting.grid import Grid
-from siting.inputs.maps import is_raster, plain_text, read_map, read_meanings, tell_covered
+from siting.inputs.maps import is_raster, plain_text, read_map, read_meanings, tell_covered, tell_overlap
 from siting.inputs.soil_kinds import SoilFacts
 from siting.inputs.vectors import NO_VALUE, burn, read_vector
 from siting.notes import Notes
@@ -46,8 +47,10 @@ def read_soil_facts(
     """
     if is_raster(path):
         code, rows = _raster_rows(path, table, grid, notes)
+        shapes: list[tuple[Any, int]] = []
     else:
-        code, rows = _polygon_rows(path, table, grid)
+        shapes, rows = _polygon_rows(path, table, grid)
+        code = burn(shapes, grid)
     what = f"soil.map {path.name}" if table is None else f"soil.table {table.name}"
     facts = [_facts(row, what) for row in _soil_columns(rows, column, depth_column, what)]
     different = {one: place for place, one in enumerate(dict.fromkeys(one for one in facts if one is not None))}
@@ -55,6 +58,7 @@ def read_soil_facts(
         msg = f"{what} holds {len(different)} kinds of soil: at most {MOST_KINDS}; round their values"
         raise CapacityError(msg)
     places = [NO_VALUE if one is None else different[one] for one in facts]
+    tell_overlap(path, [(shape, places[row]) for shape, row in shapes], grid, setting="soil.map", notes=notes)
     found = np.array([*places, NO_VALUE], dtype=np.int16)[code]
     tell_covered(path, float(np.mean(found >= 0)), setting="soil.map", notes=notes)
     return found, list(different)
@@ -69,21 +73,22 @@ def _raster_rows(path: Path, table: Path | None, grid: Grid, notes: Notes) -> tu
     found = read_map(path, grid, column=None, setting="soil.map", notes=notes)
     for value in found.values:
         if value not in meanings:
-            msg = f"the map has the value {value}, which soil.table does not explain; add a row for it"
+            msg = f"soil.map {path.name} has the value {value}, which soil.table {table.name} does not explain; add its row"
             raise ConfigError(msg)
     rows = [meanings[value] for value in found.values]
     return found.code, rows
 
 
-def _polygon_rows(path: Path, table: Path | None, grid: Grid) -> tuple[npt.NDArray[np.int32], list[Row]]:
+def _polygon_rows(path: Path, table: Path | None, grid: Grid) -> tuple[list[tuple[Any, int]], list[Row]]:
+    """Return the shapes, each with the place of its row, and the rows."""
     if table is not None:
         msg = f"soil.table goes with a raster, and soil.map {path.name} holds polygons; name a column in soil.column instead"
         raise ConfigError(msg)
-    frame = read_vector(path, grid, setting="soil.map")
+    frame = read_vector(path, grid, setting="soil.map", areas=True)
     records = frame.drop(columns=frame.geometry.name).to_dict("records")
     rows = [{str(name): plain_text(cell) for name, cell in record.items()} for record in records]
     shapes = [(shape, place) for place, shape in enumerate(frame.geometry) if shape is not None and not shape.is_empty]
-    return burn(shapes, grid), rows
+    return shapes, rows
 
 
 def _soil_columns(rows: list[Row], column: str | None, depth_column: str | None, what: str) -> list[Row]:
@@ -113,6 +118,9 @@ def _facts(row: Row, what: str) -> SoilFacts | None:
     if (sand is None) != (clay is None):
         msg = f"{what} has sand_pct without clay_pct, or the other way round, in a row; give both or neither"
         raise InputError(msg)
+    if sand is not None and clay is not None and sand + clay > 100.0:
+        msg = f"{what} has sand of {sand:g} % and clay of {clay:g} %, which together exceed 100 %; correct them"
+        raise InputError(msg)
     if sand is not None and clay is not None and silt is not None and abs(sand + silt + clay - 100.0) > SLACK_PCT:
         msg = f"{what} has sand, silt and clay of {sand:g}, {silt:g} and {clay:g} %; they must sum to 100"
         raise InputError(msg)
@@ -141,6 +149,6 @@ def _number(text: str, name: str, what: str) -> float | None:
     except ValueError:
         value = np.nan
     if not np.isfinite(value) or value < 0:
-        msg = f"{what} has {name} = {text!r}; write a number of at least 0, or leave it empty"
+        msg = f"{what} has {name} = {text!r}; write a number of at least 0 with a point, or leave it empty"
         raise InputError(msg)
     return value

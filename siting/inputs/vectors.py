@@ -1,5 +1,6 @@
 """Outlines on the DEM: boundary, exclusions, plots of the user's own, pans, villages."""
 
+import io
 from pathlib import Path
 from typing import Any
 
@@ -16,18 +17,28 @@ from rasterio.features import rasterize
 
 from siting.errors import InputError
 from siting.grid import Grid
+from siting.inputs.daily_csv import separator_of
 from siting.notes import Notes
 
 Mask = npt.NDArray[np.bool_]
 
 TABLE_ENDINGS = (".csv", ".xlsx")
 
+AREAS = ("Polygon", "MultiPolygon")
+
+LEAST_BEYOND = 0.001
+"""A share of an area beyond the DEM below this comes of rounding (assumption)."""
+
 NO_VALUE = -1
 """Code of a cell that a map says nothing of."""
 
 
-def read_vector(path: Path, grid: Grid, *, setting: str) -> gpd.GeoDataFrame:
-    """Read a vector file into the grid's CRS, its geometry repaired; refuse one without features or CRS."""
+def read_vector(path: Path, grid: Grid, *, setting: str, areas: bool = False) -> gpd.GeoDataFrame:
+    """
+    Read a vector file into the grid's CRS, its geometry repaired; refuse one without features or CRS.
+
+    With `areas`, shapes that are no polygons are refused too.
+    """
     if not path.exists():
         msg = f"{setting} {path.name} does not exist; correct the path"
         raise InputError(msg)
@@ -42,6 +53,12 @@ def read_vector(path: Path, grid: Grid, *, setting: str) -> gpd.GeoDataFrame:
     if frame.crs is None:
         msg = f"{setting} {path.name} declares no CRS; save it with one"
         raise InputError(msg)
+    if areas:
+        kinds = frame.geometry.geom_type.dropna()
+        others = kinds[~kinds.isin(AREAS)]
+        if len(others):
+            msg = f"{setting} {path.name} holds {others.iloc[0]} shapes, and needs areas; draw them as polygons"
+            raise InputError(msg)
     frame = frame.to_crs(grid.crs)
     frame.geometry = shapely.make_valid(frame.geometry.to_numpy())
     return frame
@@ -58,6 +75,14 @@ def burn(shapes: list[tuple[Any, int]], grid: Grid, *, fill: int = NO_VALUE) -> 
     return burnt
 
 
+def overlap_share(shapes: list[tuple[Any, int]], grid: Grid) -> float:
+    """Return the share (0 to 1) of cells whose centre lies under shapes of more than one value."""
+    if len({value for _, value in shapes}) < 2:
+        return 0.0
+    rising = sorted(shapes, key=lambda one: one[1])
+    return float(np.mean(burn(rising, grid) != burn(rising[::-1], grid)))  # the greatest value against the least
+
+
 def _burnt(shapes: list[object], grid: Grid) -> Mask:
     return np.asarray(burn([(shape, 1) for shape in shapes], grid, fill=0) == 1)
 
@@ -65,19 +90,26 @@ def _burnt(shapes: list[object], grid: Grid) -> Mask:
 def read_boundary(path: Path, grid: Grid, *, notes: Notes) -> Mask:
     """Mark the cells whose centre lies inside the boundary; refuse one that meets no cell of the DEM."""
     frame = read_vector(path, grid, setting="place.boundary")
-    areas = frame[frame.geometry.geom_type.isin(["Polygon", "MultiPolygon", "GeometryCollection"])]
+    areas = frame[frame.geometry.geom_type.isin([*AREAS, "GeometryCollection"])]
     if areas.empty:
         msg = f"place.boundary {path.name} holds no polygon; draw the outline as one"
         raise InputError(msg)
     inside = _burnt(list(areas.geometry), grid)
+    beyond = _share_beyond(shapely.union_all(areas.geometry.to_numpy()), grid)
     if not inside.any():
         msg = f"place.boundary {path.name} does not meet the DEM; check the CRS of both"
+        if beyond < 1.0:
+            msg = f"place.boundary {path.name} is smaller than a cell and holds no cell's centre; draw it larger"
         raise InputError(msg)
-    outline = shapely.box(*_extent(grid))
-    beyond = 1.0 - shapely.union_all(areas.geometry.to_numpy()).intersection(outline).area / max(areas.area.sum(), 1e-12)
-    if beyond > 0.001:
+    if beyond > LEAST_BEYOND:
         notes.warn("boundary_beyond_dem", f"{100 * beyond:.1f} % of the boundary lies beyond the DEM and is not searched.")
     return inside
+
+
+def _share_beyond(area: Any, grid: Grid) -> float:
+    """Return the share (0 to 1) of an area that lies beyond the DEM."""
+    inside = float(area.intersection(shapely.box(*_extent(grid))).area)
+    return 1.0 - inside / area.area if inside else 1.0
 
 
 def _extent(grid: Grid) -> tuple[float, float, float, float]:
@@ -109,22 +141,19 @@ def _set_back(frame: gpd.GeoDataFrame, grid: Grid, setback_m: float) -> gpd.GeoS
     middle = gpd.GeoSeries.from_xy([x], [y], crs=grid.crs).to_crs("EPSG:4326")
     local = CRS.from_proj4(f"+proj=aeqd +lat_0={middle.y[0]} +lon_0={middle.x[0]} +datum=WGS84 +units=m")
     there = frame.geometry.to_crs(local)
-    solid = there.geom_type.isin(["Polygon", "MultiPolygon"]).to_numpy()
+    solid = there.geom_type.isin(AREAS).to_numpy()
     distance = np.where(solid, setback_m, reach)
     return gpd.GeoSeries(shapely.buffer(there.to_numpy(), distance), crs=local).to_crs(grid.crs)
 
 
-def read_given_plots(path: Path, grid: Grid) -> tuple[npt.NDArray[np.int32], list[str]]:
+def read_given_plots(path: Path, grid: Grid, *, notes: Notes | None = None) -> tuple[npt.NDArray[np.int32], list[str]]:
     """
     Read plots of the user's own: a label for each cell (1, 2, … in file order, else 0) and their names.
 
     A cell belongs to the plot that covers its centre. Refused: plots that overlap, and plots that cover no cell's centre.
+    `notes` are told of plots that the edge of the DEM cuts.
     """
-    frame = read_vector(path, grid, setting="plots.given")
-    wanted = frame.geometry.geom_type.isin(["Polygon", "MultiPolygon"])
-    if not wanted.all():
-        msg = f"plots.given {path.name} holds {frame.geometry.geom_type[~wanted].iloc[0]} shapes; draw plots as polygons"
-        raise InputError(msg)
+    frame = read_vector(path, grid, setting="plots.given", areas=True)
     names = _names(frame)
     label = burn([(shape, place + 1) for place, shape in enumerate(frame.geometry)], grid, fill=0)
     for place, shape in enumerate(frame.geometry):
@@ -136,6 +165,10 @@ def read_given_plots(path: Path, grid: Grid) -> tuple[npt.NDArray[np.int32], lis
         if other.size:
             msg = f"the given plots {names[place]!r} and {names[int(other[0]) - 1]!r} overlap; draw them apart or as one"
             raise InputError(msg)
+        beyond = _share_beyond(shape, grid)
+        if notes is not None and beyond > LEAST_BEYOND:
+            text = f"{100 * beyond:.1f} % of the given plot {names[place]!r} lies beyond the DEM and is cut off"
+            notes.warn("given_plot_cut", f"{text}; give a larger DEM to judge it whole.")
     return label, names
 
 
@@ -202,13 +235,12 @@ def _covered(shape: Any, grid: Grid) -> npt.NDArray[np.int64]:
     return ((row + top) * grid.cols + col + left).astype(np.int64)
 
 
-def read_villages(path: Path, grid: Grid, *, name: str, people: str | None) -> gpd.GeoDataFrame:
+def read_villages(path: Path, grid: Grid, *, name: str, people: str | None, notes: Notes | None = None) -> gpd.GeoDataFrame:
     """
     Read villages: any vector file, or a CSV or XLSX table with the columns lon and lat in degrees.
 
-    All their columns are kept as they are.
-
-    The columns `name` and `people` must exist where they are named; a number of people that is none stays unknown.
+    All their columns are kept as they are. The columns `name` and `people` must exist where they are named. `notes` are
+    told of villages outside the DEM, and of numbers of people that are none.
     """
     if path.suffix.lower() in TABLE_ENDINGS:
         frame = _villages_of_table(path, grid)
@@ -219,13 +251,42 @@ def read_villages(path: Path, grid: Grid, *, name: str, people: str | None) -> g
             known = ", ".join(repr(str(one)) for one in frame.columns if one != frame.geometry.name)
             msg = f"villages.file {path.name} has no column {column!r}; it has {known}"
             raise InputError(msg)
+    if notes is not None:
+        _note_villages_elsewhere(frame, grid, notes)
+        if people is not None:
+            _note_wrong_people(frame[people], notes)
     return frame
+
+
+def _note_villages_elsewhere(frame: gpd.GeoDataFrame, grid: Grid, notes: Notes) -> None:
+    west, south, east, north = _extent(grid)
+    middles = frame.geometry.representative_point()
+    degrees = middles.to_crs("EPSG:4326")
+    exchanged = gpd.GeoSeries.from_xy(degrees.y, degrees.x, crs="EPSG:4326").to_crs(grid.crs)
+    inside, would = ((one.x.between(west, east) & one.y.between(south, north)).to_numpy() for one in (middles, exchanged))
+    outside = int(np.count_nonzero(~inside))
+    if outside:
+        hint = "they would lie inside if lon and lat were exchanged: look at their order" if (would & ~inside).any() else ""
+        text = f"{outside} of {len(frame)} villages {'lies' if outside == 1 else 'lie'} outside the DEM"
+        notes.warn("villages_elsewhere", f"{text}: {hint or 'check their places, or that lon and lat are not exchanged'}.")
+
+
+def _note_wrong_people(people: "pd.Series[Any]", notes: Notes) -> None:
+    given = people.notna() & (people.astype(str).str.strip() != "")
+    wrong = given & ~(pd.to_numeric(people, errors="coerce") >= 0)
+    if wrong.any():
+        notes.warn(
+            "villages_people",
+            f"The number of people is none or below 0 in {int(wrong.sum())} of {len(people)} villages, like "
+            f"{str(people[wrong].iloc[0])!r}, and counts as unknown: write plain numbers.",
+        )
 
 
 def _villages_of_table(path: Path, grid: Grid) -> gpd.GeoDataFrame:
     try:
         if path.suffix.lower() == ".csv":
-            table = pd.read_csv(path, encoding="utf-8-sig", skipinitialspace=True)
+            text = path.read_text(encoding="utf-8-sig")
+            table = pd.read_csv(io.StringIO(text), sep=separator_of(text), skipinitialspace=True)
         else:
             table = pyogrio.read_dataframe(path, read_geometry=False)
     except (OSError, UnicodeDecodeError, ValueError, pyogrio.errors.DataSourceError) as error:
@@ -238,7 +299,8 @@ def _villages_of_table(path: Path, grid: Grid) -> gpd.GeoDataFrame:
     wrong = ~((lon.abs() <= 180) & (lat.abs() <= 90))
     if wrong.any():
         row = int(np.flatnonzero(wrong.to_numpy())[0])
-        msg = f"villages.file {path.name} row {row + 2} has lon {table['lon'][row]!r}, lat {table['lat'][row]!r}: no degrees"
+        msg = f"villages.file {path.name} row {row + 2} has lon {table['lon'][row]}, lat {table['lat'][row]}, which are no "
+        msg += "degrees; write decimal degrees (WGS 84) with a point, or give a vector file with its CRS"
         raise InputError(msg)
     points = gpd.points_from_xy(lon, lat)
     return gpd.GeoDataFrame(table, geometry=points, crs="EPSG:4326").to_crs(grid.crs)

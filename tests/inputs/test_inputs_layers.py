@@ -163,6 +163,28 @@ def test_given_plots_keep_their_names_and_may_not_overlap(grid: Grid, tmp_path: 
     assert "'speck' covers no cell's centre" in refused(lambda: inputs.read_given_plots(path, grid))
 
 
+def test_a_given_plot_that_the_edge_cuts_is_said(grid: Grid, tmp_path: Path) -> None:
+    path = save(tmp_path / "g.gpkg", [square(-60, 0, 80, 30), square(100, 100, 20, 20)], name=["west", "inner"])
+    notes = Notes()
+    label, _ = inputs.read_given_plots(path, grid, notes=notes)
+    assert np.count_nonzero(label == 1) == 2 * 3
+    assert [warned.code for warned in notes.warnings] == ["given_plot_cut"]
+    assert "75.0 % of the given plot 'west' lies beyond the DEM" in notes.warnings[0].text
+
+
+def test_given_plots_are_areas(grid: Grid, tmp_path: Path) -> None:
+    path = save(tmp_path / "points.gpkg", [Point(WEST + 15, NORTH - 25)])
+    assert "holds Point shapes, and needs areas" in refused(lambda: inputs.read_given_plots(path, grid))
+
+
+def test_a_boundary_between_the_cells_centres_is_smaller_than_a_cell(grid: Grid, tmp_path: Path) -> None:
+    path = save(tmp_path / "b.gpkg", [square(101, 101, 3, 3)])
+    text = refused(lambda: inputs.read_boundary(path, grid, notes=Notes()))
+    assert "is smaller than a cell and holds no cell's centre" in text
+    path = save(tmp_path / "away.gpkg", [square(9_000, 0, 30, 30)])
+    assert "does not meet the DEM" in refused(lambda: inputs.read_boundary(path, grid, notes=Notes()))
+
+
 def test_known_pans_say_keep_or_not(grid: Grid, tmp_path: Path) -> None:
     path = save(tmp_path / "p.gpkg", [square(0, 0, 20, 20), square(100, 0, 20, 20)], keep=[True, False])
     got = inputs.read_pan_layer(path, grid)
@@ -181,6 +203,44 @@ def test_villages_of_a_table_keep_their_text_untouched(grid: Grid, tmp_path: Pat
     assert np.isnan(got["people"][1])  # unknown stays unknown
     text = refused(lambda: inputs.read_villages(path, grid, name="village", people=None))
     assert "has no column 'village'; it has 'name', 'people'" in text
+
+
+def village_table(path: Path, text: str) -> Path:
+    path.write_text(text, encoding="utf-8")
+    return path
+
+
+def villages_said(grid: Grid, path: Path) -> list[tuple[str, str]]:
+    notes = Notes()
+    inputs.read_villages(path, grid, name="name", people="people", notes=notes)
+    return [(warned.code, warned.text) for warned in notes.warnings]
+
+
+def test_villages_outside_the_dem_are_said(grid: Grid, tmp_path: Path) -> None:
+    middle = gpd.GeoSeries.from_xy([WEST + 150], [NORTH - 100], crs="EPSG:32636").to_crs("EPSG:4326")
+    lon, lat = middle.x[0], middle.y[0]
+    header = "name,people,lon,lat\n"
+    assert villages_said(grid, village_table(tmp_path / "in.csv", f"{header}a,5,{lon},{lat}\n")) == []
+    ((code, text),) = villages_said(grid, village_table(tmp_path / "x.csv", f"{header}a,5,{lat},{lon}\nb,5,{lon},{lat}\n"))
+    assert code == "villages_elsewhere"
+    assert text.startswith("1 of 2 villages lies outside the DEM: they would lie inside if lon and lat were exchanged")
+    ((_, text),) = villages_said(grid, village_table(tmp_path / "o.csv", f"{header}a,5,40,31\nb,5,41,31\n"))
+    assert text.startswith("2 of 2 villages lie outside the DEM: check their places")
+
+
+def test_people_that_are_no_number_are_said(grid: Grid, tmp_path: Path) -> None:
+    middle = gpd.GeoSeries.from_xy([WEST + 150], [NORTH - 100], crs="EPSG:32636").to_crs("EPSG:4326")
+    place = f"{middle.x[0]};{middle.y[0]}"
+    rows = "".join(f"v;{people};{place}\n" for people in ("~50", "-5", "", "0", "7"))
+    ((code, text),) = villages_said(grid, village_table(tmp_path / "v.csv", f"name;people;lon;lat\n{rows}"))
+    assert code == "villages_people"
+    assert "is none or below 0 in 2 of 5 villages, like '~50'" in text
+
+
+def test_villages_in_metres_are_refused_in_plain_numbers(grid: Grid, tmp_path: Path) -> None:
+    path = village_table(tmp_path / "v.csv", "name,people,lon,lat\na,5,694315,3416000\n")
+    text = refused(lambda: inputs.read_villages(path, grid, name="name", people="people"))
+    assert "row 2 has lon 694315, lat 3416000, which are no degrees; write decimal degrees" in text
 
 
 def test_meanings_of_map_values(tmp_path: Path) -> None:

@@ -72,7 +72,7 @@ def test_gaps_are_missing_and_said(tmp_path: Path) -> None:
         ("date,rain_mm\n2001-01-01,1\n2001-02-30,0", "such as '2001-02-30' cannot be read"),
         ("date,rain_mm\n2001-01-01\n2001-01-02", "holds no depth at all"),
         ("date,rain_mm,rain_mm\n2001-01-01,1,2", "has the column rain_mm twice"),
-        ("date\n2001-01-01", "has 1 rows and 1 columns"),
+        ("date\n2001-01-01", "holds 1 row of 1 column; it needs a line of names"),
         ("when,what\n2001-01-01,5\n2001-01-02,0", "no date column among 'when', 'what'"),
         ("", "rain.daily rain.csv"),
     ],

@@ -12,7 +12,7 @@ import rasterio
 from affine import Affine
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from shapely.geometry import box
+from shapely.geometry import LineString, box
 
 from siting import inputs, tables
 from siting.demand import total_evaporable_water_mm
@@ -333,7 +333,7 @@ def test_many_kinds_are_listed_in_one_line(grid: Grid, tmp_path: Path) -> None:
         ({"texture": ["loam"] * 3}, {"column": "kind"}, "soil.column is 'kind', which soil.map soil.gpkg does not have"),
         ({"texture": ["loam"] * 3}, {"depth_column": "z"}, "soil.depth_column is 'z', which"),
         ({"sand_pct": ["70"] * 3, "clay_pct": ["x"] * 3}, {}, "has clay_pct = 'x'; write a number"),
-        ({"sand_pct": [70] * 3, "clay_pct": [40] * 3}, {}, "they must sum to 100"),
+        ({"sand_pct": [70] * 3, "clay_pct": [40] * 3}, {}, "sand of 70 % and clay of 40 %, which together exceed"),
         ({"sand_pct": [70] * 3, "clay_pct": [20] * 3, "silt_pct": [20] * 3}, {}, "of 70, 20 and 20 %; they must sum to 100"),
         ({"sand_pct": [70, None, 70], "clay_pct": [20] * 3}, {}, "sand_pct without clay_pct"),
         ({"texture": ["loam"] * 3, "depth_m": [120] * 3}, {}, "a soil depth of 120 m; it must be 0 to 20"),
@@ -351,7 +351,9 @@ def test_a_soil_map_that_cannot_be_right_is_refused(
 def test_tables_and_maps_that_do_not_go_together_are_refused(grid: Grid, tmp_path: Path) -> None:
     table = tmp_path / "soil.csv"
     table.write_text("map_value,texture\n1,loam\n", encoding="utf-8")
-    with pytest.raises(ConfigError, match=r"has the value 2, which soil\.table does not explain"):
+    with pytest.raises(
+        ConfigError, match=r"soil\.map soil\.tif has the value 2, which soil\.table soil\.csv does not explain"
+    ):
         read(grid, map=raster(tmp_path / "soil.tif", [1, 2, 1]), table=table)
     with pytest.raises(ConfigError, match=r"soil\.tif holds map values; say what they mean in soil\.table"):
         read(grid, map=tmp_path / "soil.tif")
@@ -363,3 +365,37 @@ def test_a_depth_map_in_centimetres_is_refused(grid: Grid, tmp_path: Path) -> No
     path = raster(tmp_path / "depth.tif", [30, 80, 120])
     with pytest.raises(InputError, match=r"depth\.tif has a depth of 30; it must be 0 to 20 m, so convert it"):
         read(grid, texture="loam", depth_map=path)
+
+
+def test_soils_drawn_over_each_other_are_said(grid: Grid, tmp_path: Path) -> None:
+    # three stripes of 100 m, and over the first 50 m of each pair a polygon of another, or of the same, soil
+    path = tmp_path / "over.gpkg"
+    stripes = [box(WEST + 100 * place, NORTH - 200, WEST + 100 * place + 100, NORTH) for place in range(3)]
+    over = [box(WEST, NORTH - 200, WEST + 50, NORTH), box(WEST + 100, NORTH - 200, WEST + 150, NORTH)]
+    with warnings.catch_warnings():
+        warnings.filterwarnings("ignore", "'crs' was not provided")
+        frame = {"texture": ["loam", "loam", "sand", "sand", "loam"], "id": [1, 2, 3, 4, 5]}
+        gpd.GeoDataFrame(frame, geometry=stripes + over, crs="EPSG:32636").to_file(path, driver="GPKG")
+    notes = Notes()
+    got = inputs.read_soil(SoilInputs(map=path, column="texture"), grid, notes=notes)
+    said = [warned.text for warned in notes.warnings if warned.code == "soil.map_overlap"]
+    assert len(said) == 1 and "over each other on 16.7 % of the DEM's cells: the last of them" in said[0]
+    textures = [got.kinds[code].name for code in got.code[0, [0, 7, 12, 17, 27]]]
+    assert textures == ["sand", "loam", "loam", "loam", "sand"]
+
+
+def test_a_table_may_be_separated_by_semicolons_or_tabs(grid: Grid, tmp_path: Path) -> None:
+    path, table = raster(tmp_path / "soil.tif", [1, 2, 1]), tmp_path / "soil.csv"
+    for separator in ";\t":
+        table.write_text(f"map_value{separator}texture\n1{separator}loam\n2{separator}sand\n", encoding="utf-8")
+        assert {kind.name for kind in read(grid, map=path, table=table).kinds} == {"loam", "sand"}
+
+
+def test_a_soil_map_of_lines_is_refused(grid: Grid, tmp_path: Path) -> None:
+    path = tmp_path / "lines.gpkg"
+    lines = [LineString([(WEST, NORTH), (WEST + 300, NORTH - 200)])]
+    with warnings.catch_warnings():
+        warnings.filterwarnings("ignore", "'crs' was not provided")
+        gpd.GeoDataFrame({"texture": ["loam"]}, geometry=lines, crs="EPSG:32636").to_file(path, driver="GPKG")
+    with pytest.raises(InputError, match=r"lines\.gpkg holds LineString shapes, and needs areas; draw them as polygons"):
+        read(grid, map=path, column="texture")
