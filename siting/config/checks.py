@@ -15,6 +15,8 @@ LONGEST_SEASON_DAYS = 365
 OWN_CROP_VALUES = ("stage_days", "kc", "root_depth_m", "depletion_fraction", "ky", "height_m")
 NEEDED_CROP_VALUES = ("stage_days", "kc", "root_depth_m", "depletion_fraction")
 
+DECIDE_COVER = {"cover.condition", "cover.treatment"}
+
 PAIRS_AT_ODDS = (
     ("terrain.pans", "terrain.flow_direction", "both say where flow ends: keep one of them"),
     ("soil.texture", "soil.map", "keep one of them"),
@@ -110,12 +112,16 @@ def _water_and_plots(settings: "Settings") -> Iterator[str]:
         yield "plots.search is false and plots.given is not set; give polygons of your own, or let it search"
 
 
-def mistakes_against_tables(settings: "Settings") -> Iterator[str]:
-    """Name what is in no table: texture, cover, crop; and what a crop still lacks."""
+def mistakes_against_tables(settings: "Settings", refused: Collection[str] = ()) -> Iterator[str]:
+    """
+    Name what is in no table: texture, cover, crop; and what a crop still lacks.
+
+    `refused` holds the keys whose values were refused: the cover is not looked up without what decides its row.
+    """
     texture, cover = settings.soil.texture, settings.cover
     if texture is not None:
         yield from _complaint("soil.texture", lambda: soil(texture))
-    if cover.cover is not None:
+    if cover.cover is not None and not DECIDE_COVER & set(refused):
         name = cover.cover
         # every printed row holds a value for group D, so this asks for the row alone
         yield from _complaint(

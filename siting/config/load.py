@@ -193,7 +193,7 @@ def _validated(given: _Given) -> "Settings":
     given.mistakes.extend(missing_files(merged, given.values))
     wrong = _wrong_values(merged, given)
     settings = Settings.model_validate(merged)
-    further = [*mistakes_across(settings, frozenset(given.values)), *mistakes_against_tables(settings)]
+    further = [*mistakes_across(settings, frozenset(given.values)), *mistakes_against_tables(settings, frozenset(wrong))]
     # a value that was refused counts as unset from here on: what that entails is no mistake of its own
     given.mistakes.extend(mistake for mistake in further if not any(key in mistake for key in wrong))
     return settings

@@ -3,7 +3,7 @@
 from pathlib import Path
 from typing import Annotated, Literal
 
-from pydantic import AfterValidator, BaseModel, ConfigDict, Field, Strict, StringConstraints
+from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field, Strict, StringConstraints
 
 from siting.units import METRES
 
@@ -19,7 +19,13 @@ Kc = Annotated[tuple[Above0, Above0, Above0], Strict(False)]
 _Et = Annotated[float, Field(ge=0, le=25)]
 Months = Annotated[tuple[_Et, _Et, _Et, _Et, _Et, _Et, _Et, _Et, _Et, _Et, _Et, _Et], Strict(False)]
 SoilGroup = Literal["A", "B", "C", "D", "A/D", "B/D", "C/D"]
-Condition = Literal["poor", "fair", "good"]
+
+
+def _small_letters(value: object) -> object:
+    return value.strip().lower() if isinstance(value, str) else value
+
+
+Condition = Annotated[Literal["poor", "fair", "good"], BeforeValidator(_small_letters)]
 DAYS_OF_MONTH = (31, 28, 31, 30, 31, 30, 31, 31, 30, 31, 30, 31)
 PUBLISHED_RATIOS = (0.2, 0.05)
 

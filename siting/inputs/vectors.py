@@ -158,6 +158,10 @@ def read_given_plots(path: Path, grid: Grid, *, notes: Notes | None = None) -> t
     label = burn([(shape, place + 1) for place, shape in enumerate(frame.geometry)], grid, fill=0)
     for place, shape in enumerate(frame.geometry):
         cells = burn([(shape, 1)], grid, fill=0) == 1
+        beyond = _share_beyond(shape, grid)
+        if beyond == 1.0:
+            msg = f"the given plot {names[place]!r} lies beyond the DEM; check the CRS of {path.name}, or give a larger DEM"
+            raise InputError(msg)
         if not cells.any():
             msg = f"the given plot {names[place]!r} covers no cell's centre of the DEM; draw it larger or give a finer DEM"
             raise InputError(msg)
@@ -165,7 +169,6 @@ def read_given_plots(path: Path, grid: Grid, *, notes: Notes | None = None) -> t
         if other.size:
             msg = f"the given plots {names[place]!r} and {names[int(other[0]) - 1]!r} overlap; draw them apart or as one"
             raise InputError(msg)
-        beyond = _share_beyond(shape, grid)
         if notes is not None and beyond > LEAST_BEYOND:
             text = f"{100 * beyond:.1f} % of the given plot {names[place]!r} lies beyond the DEM and is cut off"
             notes.warn("given_plot_cut", f"{text}; give a larger DEM to judge it whole.")

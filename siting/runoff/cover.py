@@ -10,6 +10,7 @@ from siting.errors import ConfigError
 from siting.notes import Notes
 from siting.runoff.curve_number import crusted_group
 from siting.tables import curve_number
+from siting.tables.covers import LEAST_CURVE_NUMBER
 
 GROUPS = "ABCD"
 
@@ -79,7 +80,20 @@ def curve_numbers(
         for group in sorted(present):
             number[place, group] = _from_table(cover, group, crusted, notes)
     known = np.where((cover_index >= 0) & (cover_index < len(covers)), cover_index, len(covers))
-    return number[known, soil_group], threshold[known]
+    found = number[known, soil_group]
+    note_low_curve_numbers(found, notes)
+    return found, threshold[known]
+
+
+def note_low_curve_numbers(curve_number: npt.NDArray[np.floating], notes: Notes) -> None:
+    """Warn of curve numbers lower than any in print: classes of a map taken for them are. NaN is passed over."""
+    low = curve_number < LEAST_CURVE_NUMBER
+    if low.any():
+        notes.warn(
+            "curve_number_low",
+            f"{100 * np.mean(low):.3g} % of the cells have a curve number below {LEAST_CURVE_NUMBER:g}, the lowest in print, "
+            f"and the least is {np.nanmin(curve_number):g}: check that these are curve numbers, not classes of a map.",
+        )
 
 
 def _from_table(cover: CoverClass, group: int, crusted: bool, notes: Notes) -> float:

@@ -324,3 +324,14 @@ def _settings_with(key: str, value: object, folder: Path) -> dict[str, dict[str,
             merged[default.section][default.name] = chosen
     merged["place"].setdefault("dem", folder / "dem.tif")
     return merged
+
+
+@pytest.mark.parametrize("condition", ["Poor", "POOR", " poor "])
+def test_a_condition_may_be_written_in_any_case(project_file: Path, condition: str) -> None:
+    project = load_project(project_file, [], {"cover.cover": "desert shrub", "cover.condition": condition})
+    assert project.value("cover.condition") == "poor"
+
+
+def test_a_wrong_condition_is_one_mistake(project_file: Path) -> None:
+    (complaint,) = complaints(project_file, "cover.cover=desert shrub", "cover.condition=bare")
+    assert complaint.startswith("cover.condition is \"bare\"; it must be 'poor', 'fair' or 'good'")

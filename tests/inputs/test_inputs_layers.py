@@ -172,6 +172,11 @@ def test_a_given_plot_that_the_edge_cuts_is_said(grid: Grid, tmp_path: Path) -> 
     assert "75.0 % of the given plot 'west' lies beyond the DEM" in notes.warnings[0].text
 
 
+def test_a_given_plot_beyond_the_dem_is_refused(grid: Grid, tmp_path: Path) -> None:
+    path = save(tmp_path / "g.gpkg", [square(900, 0, 80, 30)], name=["east"])
+    assert "'east' lies beyond the DEM" in refused(lambda: inputs.read_given_plots(path, grid))
+
+
 def test_given_plots_are_areas(grid: Grid, tmp_path: Path) -> None:
     path = save(tmp_path / "points.gpkg", [Point(WEST + 15, NORTH - 25)])
     assert "holds Point shapes, and needs areas" in refused(lambda: inputs.read_given_plots(path, grid))

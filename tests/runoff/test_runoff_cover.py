@@ -6,6 +6,7 @@ import pytest
 from siting import runoff
 from siting.errors import ConfigError
 from siting.notes import Notes
+from siting.runoff.cover import note_low_curve_numbers
 
 SHRUB = runoff.CoverClass("desert shrub", condition="poor")
 RANGE = runoff.CoverClass("herbaceous range", condition="poor")
@@ -48,6 +49,26 @@ def test_an_observed_threshold_follows_its_cover_into_the_classes() -> None:
     classes = runoff.classify(curve_number=number, runs_after_mm=seen, valid=np.ones((1, 2), dtype=np.bool_))
     assert classes.label == ["runs after 12 mm", "CN 77"]
     np.testing.assert_array_equal(classes.class_of_cell, [[1, 0]])
+
+
+def test_numbers_below_any_in_print_are_said() -> None:
+    # TR-55 (1986) tables 2-2: the lowest printed is 30
+    notes = Notes()
+    note_low_curve_numbers(np.array([[1.0, 2.0, 30.0, np.nan]]), notes)
+    assert [warned.code for warned in notes.warnings] == ["curve_number_low"]
+    assert "50 % of the cells have a curve number below 30" in notes.warnings[0].text
+    assert "the least is 1:" in notes.warnings[0].text
+    notes = Notes()
+    runoff.curve_numbers(np.array([[0, 0]]), [SHRUB], groups(1, 2), crusted=False, notes=notes)
+    note_low_curve_numbers(np.array([[np.nan]]), notes)
+    assert notes.warnings == []
+
+
+def test_a_low_number_of_the_users_own_is_said() -> None:
+    notes = Notes()
+    low = runoff.CoverClass("sand sheet", curve_number=3.0)
+    runoff.curve_numbers(np.array([[0, 1, 1, 1]]), [low, OWN], groups(1, 1, 1, 1), crusted=False, notes=notes)
+    assert "25 % of the cells" in notes.warnings[0].text and "the least is 3:" in notes.warnings[0].text
 
 
 def test_one_threshold_for_all_ground_needs_no_curve_number() -> None:
