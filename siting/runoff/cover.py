@@ -91,8 +91,8 @@ def note_low_curve_numbers(curve_number: npt.NDArray[np.floating], notes: Notes)
     if low.any():
         notes.warn(
             "curve_number_low",
-            f"{100 * np.mean(low):.3g} % of the cells have a curve number below {LEAST_CURVE_NUMBER:g}, the lowest in print, "
-            f"and the least is {np.nanmin(curve_number):g}: check that these are curve numbers, not classes of a map.",
+            f"{100 * np.mean(low):.3g} % of the cells have a curve number below {LEAST_CURVE_NUMBER:g}, the least in print; "
+            f"the lowest is {np.nanmin(curve_number):g}: check that these are curve numbers, not classes of a map.",
         )
 
 

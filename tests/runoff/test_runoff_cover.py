@@ -57,7 +57,7 @@ def test_numbers_below_any_in_print_are_said() -> None:
     note_low_curve_numbers(np.array([[1.0, 2.0, 30.0, np.nan]]), notes)
     assert [warned.code for warned in notes.warnings] == ["curve_number_low"]
     assert "50 % of the cells have a curve number below 30" in notes.warnings[0].text
-    assert "the least is 1:" in notes.warnings[0].text
+    assert "the lowest is 1:" in notes.warnings[0].text
     notes = Notes()
     runoff.curve_numbers(np.array([[0, 0]]), [SHRUB], groups(1, 2), crusted=False, notes=notes)
     note_low_curve_numbers(np.array([[np.nan]]), notes)
@@ -68,7 +68,7 @@ def test_a_low_number_of_the_users_own_is_said() -> None:
     notes = Notes()
     low = runoff.CoverClass("sand sheet", curve_number=3.0)
     runoff.curve_numbers(np.array([[0, 1, 1, 1]]), [low, OWN], groups(1, 1, 1, 1), crusted=False, notes=notes)
-    assert "25 % of the cells" in notes.warnings[0].text and "the least is 3:" in notes.warnings[0].text
+    assert "25 % of the cells" in notes.warnings[0].text and "the lowest is 3:" in notes.warnings[0].text
 
 
 def test_one_threshold_for_all_ground_needs_no_curve_number() -> None:
