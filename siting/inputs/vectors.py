@@ -269,9 +269,11 @@ def _note_villages_elsewhere(frame: gpd.GeoDataFrame, grid: Grid, notes: Notes) 
     inside, would = ((one.x.between(west, east) & one.y.between(south, north)).to_numpy() for one in (middles, exchanged))
     outside = int(np.count_nonzero(~inside))
     if outside:
-        hint = "they would lie inside if lon and lat were exchanged: look at their order" if (would & ~inside).any() else ""
+        hint = "check their places, and that lon and lat are not exchanged"
+        if (would & ~inside).any():
+            hint = "with lon and lat exchanged they would lie inside, so look at their order"
         text = f"{outside} of {len(frame)} villages {'lies' if outside == 1 else 'lie'} outside the DEM"
-        notes.warn("villages_elsewhere", f"{text}: {hint or 'check their places, or that lon and lat are not exchanged'}.")
+        notes.warn("villages_elsewhere", f"{text}: {hint}.")
 
 
 def _note_wrong_people(people: "pd.Series[Any]", notes: Notes) -> None:

@@ -228,7 +228,7 @@ def test_villages_outside_the_dem_are_said(grid: Grid, tmp_path: Path) -> None:
     assert villages_said(grid, village_table(tmp_path / "in.csv", f"{header}a,5,{lon},{lat}\n")) == []
     ((code, text),) = villages_said(grid, village_table(tmp_path / "x.csv", f"{header}a,5,{lat},{lon}\nb,5,{lon},{lat}\n"))
     assert code == "villages_elsewhere"
-    assert text.startswith("1 of 2 villages lies outside the DEM: they would lie inside if lon and lat were exchanged")
+    assert text.startswith("1 of 2 villages lies outside the DEM: with lon and lat exchanged they would lie inside")
     ((_, text),) = villages_said(grid, village_table(tmp_path / "o.csv", f"{header}a,5,40,31\nb,5,41,31\n"))
     assert text.startswith("2 of 2 villages lie outside the DEM: check their places")
 
