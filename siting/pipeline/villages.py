@@ -25,6 +25,8 @@ Integers = npt.NDArray[np.int64]
 MUCH_LOST_PCT = 20.0
 """A village that would lose more of its water is named in a warning (our assumption)."""
 
+NAMED_VILLAGES = 5
+
 NOT_RANKED = "no plot could be ranked: rain, crop or cover is missing"
 
 
@@ -91,9 +93,10 @@ def _warn_of_losses(case: Case, villages: gpd.GeoDataFrame, lost: Ledger) -> Non
     hit = np.flatnonzero(np.nan_to_num(most) > MUCH_LOST_PCT)
     if hit.size:
         names = villages[case.settings.villages.name].astype(str).to_numpy()
-        told = ", ".join(
-            f"{names[village]} ({most[village]:.0f} %)" for village in hit[np.argsort(-most[hit], kind="stable")]
-        )
+        worst = hit[np.argsort(-most[hit], kind="stable")]
+        told = ", ".join(f"{names[village]} ({most[village]:.0f} %)" for village in worst[:NAMED_VILLAGES])
+        if worst.size > NAMED_VILLAGES:
+            told += f" and {worst.size - NAMED_VILLAGES} more"
         case.notes.warn(
             "village_loses",
             f"The set would take more than {MUCH_LOST_PCT:g} % of the dry year's water in the nearest channel from: {told}. "
