@@ -106,6 +106,16 @@ def test_a_raster_of_another_cell_size_and_crs_is_read_by_its_nearest_cell(grid:
     assert "leaves 16.7 % of the DEM's cells" in notes.warnings[0].text
 
 
+def test_classes_drawn_over_each_other_are_said(grid: Grid, tmp_path: Path) -> None:
+    # 20 of 30 columns under "a" and, of these, five under "b" too and five under another "a"
+    shapes = [square(0, 0, 200, 200), square(50, 0, 50, 200), square(100, 0, 50, 200), square(200, 0, 100, 200)]
+    path, notes = save(tmp_path / "c.gpkg", shapes, kind=["a", "b", "a", "b"]), Notes()
+    got = inputs.read_map(path, grid, column="kind", setting="cover.map", notes=notes)
+    np.testing.assert_array_equal(got.code[0], np.isin(np.arange(30), [*range(5, 10), *range(20, 30)]))
+    assert [warned.code for warned in notes.warnings] == ["cover.map_overlap"]
+    assert "over each other on 16.7 % of the DEM's cells: the last of them" in notes.warnings[0].text
+
+
 def test_a_map_of_another_place_or_without_its_column_is_refused(grid: Grid, tmp_path: Path) -> None:
     away = save(tmp_path / "away.gpkg", [square(90_000, 0, 100, 100)], texture=["loam"])
     text = refused(lambda: inputs.read_map(away, grid, column="texture", setting="soil.map", notes=Notes()))
@@ -258,6 +268,14 @@ def test_meanings_of_map_values(tmp_path: Path) -> None:
     assert "says twice what '1' means" in text
     text = refused(lambda: inputs.read_meanings(path, needed=("texture",), setting="soil.table"))
     assert "lacks the column 'texture'" in text
+
+
+@pytest.mark.parametrize("separator", [";", "\t"])
+def test_meanings_may_be_separated_by_semicolons_or_tabs(tmp_path: Path, separator: str) -> None:
+    path = tmp_path / "table.csv"
+    path.write_text("map_value,cover\n1,desert shrub\n2,\n".replace(",", separator), encoding="utf-8")
+    got = inputs.read_meanings(path, needed=("cover",), setting="cover.table")
+    assert [got[value]["cover"] for value in ("1", "2")] == ["desert shrub", ""]
 
 
 DAYS = np.arange(np.datetime64("2001-01-01"), np.datetime64("2001-01-11"))

@@ -384,13 +384,6 @@ def test_soils_drawn_over_each_other_are_said(grid: Grid, tmp_path: Path) -> Non
     assert textures == ["sand", "loam", "loam", "loam", "sand"]
 
 
-def test_a_table_may_be_separated_by_semicolons_or_tabs(grid: Grid, tmp_path: Path) -> None:
-    path, table = raster(tmp_path / "soil.tif", [1, 2, 1]), tmp_path / "soil.csv"
-    for separator in ";\t":
-        table.write_text(f"map_value{separator}texture\n1{separator}loam\n2{separator}sand\n", encoding="utf-8")
-        assert {kind.name for kind in read(grid, map=path, table=table).kinds} == {"loam", "sand"}
-
-
 def test_a_soil_map_of_lines_is_refused(grid: Grid, tmp_path: Path) -> None:
     path = tmp_path / "lines.gpkg"
     lines = [LineString([(WEST, NORTH), (WEST + 300, NORTH - 200)])]
