@@ -126,7 +126,7 @@ def _read(path: Path, band: int) -> _Band:
 
 def _band(path: Path, file: Any, band: int) -> _Band:
     if not 1 <= band <= file.count:
-        msg = f"the DEM {path.name} has {file.count} bands, not {band}; give one of them"
+        msg = f"the DEM {path.name} has no band {band}, only 1 to {file.count}; give place.dem_band"
         raise InputError(msg)
     if file.colorinterp[band - 1] in PICTURE:
         msg = f"the DEM {path.name} holds colours ({file.colorinterp[band - 1].name}) in band {band}; give a file of heights"

@@ -17,6 +17,7 @@ from siting.grid import Grid, Raster
 from siting.inputs import SoilMap
 from siting.notes import Notes
 from siting.runoff import CoverClass, RainField, RainGenerator, curve_numbers
+from siting.runoff.cover import note_low_curve_numbers
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -59,7 +60,10 @@ def read_place(project: Project, notes: Notes) -> Place:
     grid, outline = dem.grid, settings.place
     soil = inputs.read_soil(inputs.SoilInputs(**settings.soil.model_dump(exclude={"crusted"})), grid, notes=notes)
     number, runs_after = _curve_number(settings, grid, soil.soil_group, notes)
-    label, names = (None, []) if settings.plots.given is None else inputs.read_given_plots(settings.plots.given, grid)
+    label: npt.NDArray[np.int32] | None = None
+    names: list[str] = []
+    if settings.plots.given is not None:
+        label, names = inputs.read_given_plots(settings.plots.given, grid, notes=notes)
     villages = settings.villages
     return Place(
         dem,
@@ -78,7 +82,7 @@ def read_place(project: Project, notes: Notes) -> Place:
         None if settings.climate.daily is None else inputs.read_climate(settings.climate.daily),
         None
         if villages.file is None
-        else inputs.read_villages(villages.file, grid, name=villages.name, people=villages.people),
+        else inputs.read_villages(villages.file, grid, name=villages.name, people=villages.people, notes=notes),
     )
 
 
@@ -103,9 +107,9 @@ def _meanings(table: Path | None, needed: tuple[str, ...], setting: str, of: Pat
     return inputs.read_meanings(table, needed=needed, setting=setting)
 
 
-def _meaning(meanings: dict[str, dict[str, str]], value: str, setting: str) -> dict[str, str]:
+def _meaning(meanings: dict[str, dict[str, str]], value: str, of: Path, table: Path) -> dict[str, str]:
     if value not in meanings:
-        msg = f"the map has the value {value}, which {setting} does not explain; add a row for it"
+        msg = f"cover.map {of.name} has the value {value}, which cover.table {table.name} does not explain; add its row"
         raise ConfigError(msg)
     return meanings[value]
 
@@ -118,8 +122,10 @@ def _curve_number(
     runs_after = _everywhere(np.float32(np.nan if cover.runs_after_mm is None else cover.runs_after_mm), grid)
     if isinstance(cover.curve_number, Path):
         own = inputs.read_raster_on_grid(cover.curve_number, grid, setting="cover.curve_number")
+        note_low_curve_numbers(own, notes)
         return own.astype(np.float32), runs_after
     if cover.curve_number is not None:
+        note_low_curve_numbers(np.array([cover.curve_number]), notes)
         return _everywhere(np.float32(cover.curve_number), grid), runs_after
     index, classes = _covers(cover, grid, notes)
     if not classes:
@@ -135,7 +141,7 @@ def _covers(cover: Any, grid: Grid, notes: Notes) -> tuple[npt.NDArray[np.int32]
         return _everywhere(np.int32(0), grid), [CoverClass(cover.cover, cover.condition, cover.treatment)]
     found = inputs.read_map(cover.map, grid, column=cover.column, setting="cover.map", notes=notes)
     meanings = _meanings(cover.table, ("cover", "condition"), "cover.table", cover.map)
-    rows = [_meaning(meanings, value, "cover.table") for value in found.values]
+    rows = [_meaning(meanings, value, cover.map, cover.table) for value in found.values]
     return found.code, [_cover_class(row) for row in rows]
 
 

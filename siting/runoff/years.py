@@ -116,9 +116,10 @@ def _tell(kept: list[int], dropped: list[int], missing: int, notes: Notes) -> No
     if missing:
         notes.assume("rain.missing_days", str(missing), "days", "missing days in kept years", "count as dry")
     if len(kept) < SHORT_RECORD_YEARS:
+        years = "1 complete year" if len(kept) == 1 else f"{len(kept)} complete years"
         notes.warn(
             "short_record",
-            f"The rain record holds {len(kept)} complete years; dry and wet years are uncertain under {SHORT_RECORD_YEARS}.",
+            f"The rain record holds {years}; dry and wet years are uncertain under {SHORT_RECORD_YEARS}.",
         )
 
 

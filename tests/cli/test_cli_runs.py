@@ -178,7 +178,7 @@ def _rain(change: Callable[[pd.DataFrame], pd.DataFrame]) -> Spoil:
         (_boundary_elsewhere, "does not meet the DEM"),
         (_rain(lambda r: r.head(200)), "no complete year"),
         (_rain(lambda r: r.assign(rain_mm=-1.0)), "-1"),
-        (_rain(lambda r: r.drop(columns="date")), "date"),
+        (_rain(lambda r: r.drop(columns="date")), "two columns at least"),
     ],
 )
 def test_wrong_inputs_end_with_one_sentence_and_code_3(place: Path, tmp_path: Path, spoil: Spoil, words: str) -> None:

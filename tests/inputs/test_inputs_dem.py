@@ -294,7 +294,7 @@ def test_a_picture_is_refused(tmp_path: Path) -> None:
     with rasterio.open(path, "w", driver="GTiff", count=3, height=4, width=5, dtype="uint8", **place) as file:
         file.write(np.arange(60, dtype=np.uint8).reshape(3, 4, 5))
     assert "shaded.tif holds colours (green) in band 2; give a file of heights" in refused(path, band=2)
-    assert "has 3 bands, not 4" in refused(path, band=4)
+    assert "has no band 4, only 1 to 3" in refused(path, band=4)
 
 
 def test_bad_files_are_refused(tmp_path: Path) -> None:
