@@ -203,6 +203,19 @@ DOUBT = (
     Column(
         "behind_pan_pct", "%", "float64", "Behind doubtful pans", "share of the catchment that drains through a doubtful pan"
     ),
+    Column(
+        "top_5_pct", "%", "float64", "Among the best five", "share of the draws in which the plot is among the best five"
+    ),
+    Column(
+        "rank_low_weights",
+        "",
+        "int64",
+        "Rank, best under other weights",
+        "best rank where each weight of the score is drawn between half and twice itself; no error in the data is in it",
+    ),
+    Column(
+        "rank_high_weights", "", "int64", "Rank, worst under other weights", "worst rank under the same draws of weights"
+    ),
     Column("score", "1", "float64", "Score", "weighted geometric mean of the components below, 0.01 to 1"),
     Column("score_water", "1", "float64", "Score: water", f"reliability; {_SCORE_RANGE}"),
     Column("score_gain", "1", "float64", "Score: gain", f"what run-on adds to rain alone; {_SCORE_RANGE}"),

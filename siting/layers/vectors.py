@@ -199,6 +199,18 @@ MONTHS = Layer(
     ),
 )
 
+AREA_CURVES = Layer(
+    "area_curves",
+    "none",
+    "Reliability by area",
+    "reliability of each plot if its run-on were spread over a part of it",
+    (
+        PLOT_ID,
+        Column("area_m2", "m2", "float64", "Area", "area over which the same run-on is spread"),
+        Column("reliability_pct", "%", "float64", "Reliability", "share of seasons in which the yield reaches the target"),
+    ),
+)
+
 DOWNSTREAM = Layer(
     "downstream",
     "none",
@@ -237,7 +249,7 @@ RUN_INFO = Layer(
 
 LAYERS = (
     *(PLOTS, CATCHMENTS, INTAKES, OVERFLOW_PATHS, CHANNELS, PANS, VILLAGES),
-    *(SEASONS, MONTHS, DOWNSTREAM, ASSUMPTIONS, RUN_INFO),
+    *(SEASONS, MONTHS, AREA_CURVES, DOWNSTREAM, ASSUMPTIONS, RUN_INFO),
 )
 """All layers and tables in the order of the file; `villages` is written only when villages were given."""
 

@@ -25,6 +25,7 @@ from siting.ranking import (
     reliability,
     score_doubt,
     supply_model,
+    weight_doubt,
 )
 from siting.ranking.score_doubt import ScoreBasis
 
@@ -38,10 +39,11 @@ SPREAD = Spread()
 
 @dataclass(frozen=True, slots=True, eq=False)
 class RankDoubt:
-    """Interval of each rank, share of draws in which a plot is among the best five, and what swaps the best neighbours."""
+    """Ranks in all draws, what swaps the best neighbours, and apart from them the ranks under other weights of the score."""
 
     ranks: Doubt
     swaps: Swaps
+    weights: Doubt | None
 
 
 def doubt_ranks(case: Case, water: Water | None, floods: Floods | None, order: Order) -> RankDoubt | None:
@@ -66,9 +68,21 @@ def doubt_ranks(case: Case, water: Water | None, floods: Floods | None, order: O
     if order.follows_score:
         basis = _basis(case, water.crop, order)
         ranks = score_doubt(model, SPREAD, basis, draws=draws, seed=seed, threads=case.threads)
+        weights = _other_weights(case, basis, draws, seed)
     else:
         ranks = rank_doubt(model, SPREAD, draws=draws, seed=seed, threads=case.threads)
-    return RankDoubt(ranks, neighbour_swaps(model, SPREAD, pairs=TOLD_PAIRS, threads=case.threads))
+        weights = None
+    return RankDoubt(ranks, neighbour_swaps(model, SPREAD, pairs=TOLD_PAIRS, threads=case.threads), weights)
+
+
+def _other_weights(case: Case, basis: ScoreBasis, draws: int, seed: int) -> Doubt:
+    """Rank the plots that have a score under other weights; those without keep none."""
+    known = ~np.isnan(basis.reliability)
+    some = Components(**{name: getattr(basis.components, name)[known] for name in COMPONENTS})
+    found = weight_doubt(some, basis.weights, draws=draws, seed=seed, threads=case.threads)
+    low, high = (np.full(known.size, np.nan) for _ in range(2))
+    low[known], high[known] = found.rank_low, found.rank_high
+    return Doubt(low, high, found.best, found.worst)
 
 
 def _model(case: Case, weather: Weather, record: CropRecord, floods: Floods) -> SupplyModel:

@@ -78,6 +78,7 @@ def plots_frame(case: Case, found: Findings) -> pd.DataFrame:
         "supply_rank": _or_null(order.supply_rank, order.supply_rank > UNRANKED),
         "rank_low": _rank_of_draws(None if doubt is None else doubt.ranks.rank_low, plots.count),
         "rank_high": _rank_of_draws(None if doubt is None else doubt.ranks.rank_high, plots.count),
+        **_draw_columns(doubt, plots.count),
         "score": order.score,
         **{f"score_{name}": values for name, values in order.components.items()},
         **_set_columns(found.together, plots.count),
@@ -88,6 +89,16 @@ def plots_frame(case: Case, found: Findings) -> pd.DataFrame:
     frame = pd.DataFrame(columns)
     frame["cautions"] = _cautions(case, frame)
     return frame.assign(x=x, y=y, open_bits=own.open_sides)
+
+
+def _draw_columns(doubt: RankDoubt | None, count: int) -> dict[str, Any]:
+    """Return what else the draws say: how often among the best, and what other weights would do."""
+    weights = None if doubt is None else doubt.weights
+    return {
+        "top_5_pct": np.full(count, np.nan) if doubt is None else 100.0 * doubt.ranks.share_in_top(5),
+        "rank_low_weights": _rank_of_draws(None if weights is None else weights.rank_low, count),
+        "rank_high_weights": _rank_of_draws(None if weights is None else weights.rank_high, count),
+    }
 
 
 def _rank_of_draws(rank: FloatArray | None, count: int) -> "pd.Series[Any]":
@@ -235,6 +246,18 @@ def seasons_frame(sites: Sites, crop: CropResults) -> pd.DataFrame:
             "rain_only_relative_yield": crop.rain_alone.relative_yield.ravel(),
             "standing_water_days": _or_null(np.nan_to_num(standing).astype(np.int64), ~np.isnan(standing)),
             "failure": [failure or None for failure in yields.failure.ravel()],
+        }
+    )
+
+
+def area_curves_frame(sites: Sites, crop: CropResults) -> pd.DataFrame:
+    """Give the scanned areas of each plot with their reliability."""
+    areas, shares = crop.supported.curve_area_m2, crop.supported.curve_reliability
+    return pd.DataFrame(
+        {
+            "plot_id": np.repeat(sites.plot_id, areas.shape[1]),
+            "area_m2": areas.ravel(),
+            "reliability_pct": 100.0 * shares.ravel(),
         }
     )
 

@@ -12,7 +12,7 @@ from siting.pipeline.forecast import forecast, refuse_what_does_not_fit
 from siting.pipeline.read import Place, read_place
 from siting.pipeline.weather import Weather, weather_of
 from siting.ranking import dependable
-from siting.runoff import RunoffClasses, classify, yearly_totals
+from siting.runoff import RunoffClasses, antecedent_bounds_mm, classify, yearly_totals
 
 GIGABYTE = 1e9
 
@@ -124,11 +124,23 @@ def _cover(place: Place, project: Project) -> list[dict[str, Any]]:
     valid = ~np.isnan(place.dem.values)
     classes: RunoffClasses = classify(curve_number=place.curve_number, runs_after_mm=place.runs_after_mm, valid=valid)
     ratio = project.settings.runoff.abstraction_ratio
+    storm = project.settings.rain.design_storm_mm
+    bounds = antecedent_bounds_mm(storm, classes, abstraction_ratio=ratio)
+    runoff = [np.append(depths, np.nan) for depths in (bounds.dry_mm, bounds.average_mm, bounds.wet_mm)]
     counts = np.bincount(np.minimum(classes.class_of_cell[valid], classes.count), minlength=classes.count + 1)
     starts = [*classes.starts_at_mm(abstraction_ratio=ratio), np.nan]
     return [
-        {"ground": label, "share_pct": 100.0 * int(number) / int(valid.sum()), "runs_after_mm": start}
-        for label, number, start in zip([*classes.label, "no curve number"], counts, starts, strict=True)
+        {
+            "ground": label,
+            "share_pct": 100.0 * int(number) / int(valid.sum()),
+            "runs_after_mm": start,
+            f"runoff_of_{storm:g}_mm_when_dry": dry,
+            "average": average,
+            "wet": wet,
+        }
+        for label, number, start, dry, average, wet in zip(
+            [*classes.label, "no curve number"], counts, starts, *runoff, strict=True
+        )
         if number
     ]
 

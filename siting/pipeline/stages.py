@@ -165,5 +165,6 @@ def _tables(frame: pd.DataFrame, case: Case, water: Water | None) -> dict[str, A
     }
     if water is not None and water.crop is not None:
         tables["seasons"] = frames.seasons_frame(case.sites, water.crop)
+        tables["area_curves"] = frames.area_curves_frame(case.sites, water.crop)
         tables["months"] = frames.months_frame(case.sites, water.crop, _years_of_seasons(case))
     return tables

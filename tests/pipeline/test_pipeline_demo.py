@@ -263,6 +263,22 @@ def test_yields_and_reliability_follow_from_the_seasons(demo: Demo) -> None:
     assert plots["reliability_pct"].iloc[:20].min() > 1.5 * plots["rain_only_reliability_pct"].iloc[:20].max()
 
 
+def test_the_curve_of_areas_ends_with_the_whole_plot(demo: Demo) -> None:
+    plots, curves = read(demo[0], "plots").set_index("plot_id"), read(demo[0], "area_curves")
+    assert len(curves) == 24 * len(plots)
+    whole = curves.groupby("plot_id").last()
+    np.testing.assert_allclose(whole["area_m2"], plots["area_m2"].sort_index())
+    np.testing.assert_allclose(whole["reliability_pct"], plots["reliability_pct"].sort_index())
+
+
+def test_shares_among_the_best_and_other_weights_agree_with_the_ranks(demo: Demo) -> None:
+    plots = read(demo[0], "plots")
+    assert plots["top_5_pct"].sum() == pytest.approx(500, abs=1e-6)
+    assert (plots.loc[plots["rank_low"] > 5, "top_5_pct"] <= 5.0 + 1e-9).all()
+    assert (plots["rank_low_weights"] <= plots["rank"]).mean() > 0.95
+    assert (plots["rank"] <= plots["rank_high_weights"]).mean() > 0.95
+
+
 def test_supported_areas_lie_within_the_plots_and_hold_the_target(demo: Demo) -> None:
     plots = read(demo[0], "plots")
     assert (plots["supported_area_m2"] <= plots["area_m2"] + 1e-6).all()
