@@ -9,13 +9,22 @@ from siting.demand.reference_et import (
     reference_et_hargreaves_mm,
     reference_et_penman_monteith_mm,
 )
-from siting.demand.root_zone import CropRecord, DailyTrace, SeasonYields, WaterBalance, daily_balance, daily_trace
+from siting.demand.root_zone import (
+    LEAST_FITTED_ET_RATIO,
+    CropRecord,
+    DailyTrace,
+    SeasonYields,
+    WaterBalance,
+    daily_balance,
+    daily_trace,
+)
 from siting.demand.seasonal import SeasonTable, seasonal_supply
 from siting.demand.seasons import Seasons, complete_seasons, season_days
 from siting.demand.soil_water import available_water_mm, depletion_fraction, stress_coefficient
 from siting.demand.weather import Climate
 
 __all__ = [
+    "LEAST_FITTED_ET_RATIO",
     "Climate",
     "CropRecord",
     "CropWater",

@@ -21,6 +21,9 @@ Flags = npt.NDArray[np.bool_]
 FAILURES = np.array(["", "no_onset", "stand_lost"])
 """Why a season failed, by the code of the kernel."""
 
+LEAST_FITTED_ET_RATIO = 0.5
+"""The yield line was fitted for ETa/ETc of this and more (FAO-33)."""
+
 PLOTS_AT_ONCE = 32
 """Plots of one piece of work: small, so that threads end together."""
 
@@ -145,8 +148,13 @@ class SeasonYields:
 
     @property
     def beyond_fit(self) -> Flags:
-        """Where ETa/ETc is below 0.5, for which the yield line was not fitted (FAO-33)."""
-        return np.asarray(self.et_ratio < 0.5)
+        """Where ETa/ETc is below the least for which the yield line was fitted (FAO-33)."""
+        return np.asarray(self.et_ratio < LEAST_FITTED_ET_RATIO)
+
+    @property
+    def worst_standing_water_days(self) -> FloatArray:
+        """Days under water in each plot's worst season; NaN unknown."""
+        return np.asarray(self.standing_water_days.max(axis=1))
 
 
 @dataclass(frozen=True, slots=True, eq=False)

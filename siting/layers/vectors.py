@@ -170,7 +170,13 @@ SEASONS = Layer(
         Column("rain_mm", "mm", "float64", "Rain", "rain on the plot from sowing to harvest"),
         Column("runon_mm", "mm", "float64", "Run-on", "run-on spread over the plot since the last harvest"),
         Column("supply_ratio", "1", "float64", "Supply ratio", "(rain on the plot + usable run-on) / crop demand"),
-        Column("et_ratio", "1", "float64", "ET ratio", "water that the crop took up / water that it needed"),
+        Column(
+            "et_ratio",
+            "1",
+            "float64",
+            "ET ratio",
+            "water that the crop took up / needed; below 0.5 the yield line was not fitted",
+        ),
         Column("relative_yield", "1", "float64", "Relative yield", "yield relative to a crop short of nothing, 0 to 1"),
         Column(
             "rain_only_relative_yield",

@@ -102,8 +102,7 @@ def _draw_columns(doubt: RankDoubt | None, count: int) -> dict[str, Any]:
 
 
 def _rank_of_draws(rank: FloatArray | None, count: int) -> "pd.Series[Any]":
-    known = np.zeros(count) if rank is None else np.nan_to_num(rank)
-    return _or_null(known.astype(np.int64), known > 0)
+    return _whole(np.full(count, np.nan) if rank is None else np.where(rank > UNRANKED, rank, np.nan))
 
 
 def _set_columns(together: Together | None, count: int) -> dict[str, Any]:
@@ -131,6 +130,12 @@ def _terms(code: npt.NDArray[np.int64], terms: tuple[str, ...]) -> list[str | No
 
 def _or_null(values: npt.NDArray[np.int64], known: npt.NDArray[np.bool_]) -> "pd.Series[Any]":
     return pd.Series(values, dtype="Int64").where(pd.Series(known))
+
+
+def _whole(values: FloatArray) -> "pd.Series[Any]":
+    """Return whole numbers, NULL where they are unknown (NaN)."""
+    known = ~np.isnan(values)
+    return _or_null(np.where(known, values, 0.0).astype(np.int64), known)
 
 
 def _middles(sites: Sites, ground: Terrain) -> tuple[FloatArray, FloatArray]:
@@ -180,8 +185,6 @@ def _yield_columns(crop: CropResults, target_yield: float) -> dict[str, Any]:
     with_runon, alone = (
         reliability(yields.relative_yield, target_yield=target_yield) for yields in (crop.yields, crop.rain_alone)
     )
-    standing = crop.yields.standing_water_days
-    worst = np.where(np.isnan(standing).all(axis=1), -1.0, np.nan_to_num(standing, nan=-1.0).max(axis=1))
     return {
         "reliability_pct": 100.0 * with_runon.share,
         "reliability_low_pct": 100.0 * with_runon.low,
@@ -190,7 +193,7 @@ def _yield_columns(crop: CropResults, target_yield: float) -> dict[str, Any]:
         "supported_area_m2": crop.supported.area_m2,
         "limit": [limit or None for limit in crop.supported.limit],
         "mean_yield_pct": 100.0 * crop.yields.relative_yield.mean(axis=1),
-        "standing_water_days": _or_null(worst.astype(np.int64), worst >= 0),
+        "standing_water_days": _whole(crop.yields.worst_standing_water_days),
     }
 
 
@@ -210,7 +213,7 @@ def _cautions(case: Case, frame: pd.DataFrame) -> list[str | None]:
         "outside_boundary": frame["catchment_outside_pct"] > 0,
         "large_catchment": frame["catchment_area_m2"] > LARGE_CATCHMENT_M2,
         "flood": frame["peak_flow_10y_m3s"] > FLOOD_M3S,
-        "standing_water": _standing(frame) > case.settings.crop.standing_water_days,
+        "standing_water": _stands_too_long(frame, case.settings.crop.standing_water_days),
         "steep_drop": frame["drop_m"] > STEEP_DROP_M,
         "no_exclusions": everywhere & (case.place.excluded is None),
         "no_runon_in_dry_year": frame["yield_dry_m3"] == 0,
@@ -221,18 +224,17 @@ def _cautions(case: Case, frame: pd.DataFrame) -> list[str | None]:
     return [";".join(codes[row]) or None for row in table]
 
 
-def _standing(frame: pd.DataFrame) -> npt.NDArray[np.int64]:
-    """Return the days of standing water in the worst season, 0 where unknown."""
+def _stands_too_long(frame: pd.DataFrame, days: int) -> "pd.Series[Any]":
+    """Tell where water stands longer than the crop bears in the worst season; no caution where that is unknown."""
     if "standing_water_days" not in frame:
-        return np.zeros(len(frame), dtype=np.int64)
-    return frame["standing_water_days"].fillna(0).to_numpy(dtype=np.int64)
+        return pd.Series(False, index=frame.index)
+    return (frame["standing_water_days"] > days).fillna(False)
 
 
 def seasons_frame(sites: Sites, crop: CropResults) -> pd.DataFrame:
     """Give one row for each plot and season."""
     table, yields = crop.seasons, crop.yields
     count, years = table.supply_ratio.shape
-    standing = yields.standing_water_days.ravel()
     return pd.DataFrame(
         {
             "plot_id": np.repeat(sites.plot_id, years),
@@ -244,7 +246,7 @@ def seasons_frame(sites: Sites, crop: CropResults) -> pd.DataFrame:
             "et_ratio": yields.et_ratio.ravel(),
             "relative_yield": yields.relative_yield.ravel(),
             "rain_only_relative_yield": crop.rain_alone.relative_yield.ravel(),
-            "standing_water_days": _or_null(np.nan_to_num(standing).astype(np.int64), ~np.isnan(standing)),
+            "standing_water_days": _whole(yields.standing_water_days.ravel()),
             "failure": [failure or None for failure in yields.failure.ravel()],
         }
     )

@@ -87,8 +87,6 @@ def _components(case: Case, weather: Weather, crop: CropResults, floods: Floods)
     settings, catchments, ground = case.settings, case.sites.catchments, case.ground
     height = plot_means(case.sites.cells, ground.elevation, ground.grid.cell_area_m2)
     relief = np.where(catchments.area_m2 > 0, np.maximum(catchments.highest_m - height, 0.0), 0.0)
-    standing = crop.yields.standing_water_days
-    worst = np.where(np.isnan(standing).any(axis=1), np.nan, np.nan_to_num(standing).max(axis=1))
     return score_components(
         reliability=reliability(crop.yields.relative_yield, target_yield=settings.crop.target_yield).share,
         mean_yield=crop.yields.relative_yield.mean(axis=1),
@@ -97,7 +95,7 @@ def _components(case: Case, weather: Weather, crop: CropResults, floods: Floods)
         slope=100.0 * case.own.slope,
         max_slope=settings.plots.max_slope_pct,
         peak_flow_10y_m3s=floods.peak_10y_m3s,
-        standing_water_days=worst,
+        standing_water_days=crop.yields.worst_standing_water_days,
         open_catchment=case.own.open_sides != 0,
         rain_years=int(weather.years.labels.size),
         catchment_relief_m=relief,

@@ -58,12 +58,13 @@ def run(project: Project, *, out: Path, overwrite: bool, threads: int | None, pr
         summary = summarise(frame, case, doubt, str(out))
         with clock.stage("layers"):
             tables |= _tables(frame, case, water)
-            tables |= write.notes_tables(notes, write.run_info(case, together))
+            inputs = write.input_files(project)
+            tables |= write.notes_tables(notes, write.run_info(case, together, inputs))
             write.write_layers(folder, tables, case.ground)
         if project.settings.output.rasters:
             with clock.stage("rasters"):
                 write.write_rasters(folder / "rasters", case, progress)
-        write.write_record(folder, case, clock, summary)
+        write.write_record(folder, case, clock, summary, inputs)
     return Results(summary | {"seconds": clock.total_seconds}, tuple(notes.warnings))
 
 

@@ -7,7 +7,8 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 
-from siting.demand import CropRecord, SeasonTable, SeasonYields, daily_balance, seasonal_supply
+from siting.demand import LEAST_FITTED_ET_RATIO, CropRecord, SeasonTable, SeasonYields, daily_balance, seasonal_supply
+from siting.notes import Notes
 from siting.parallel import run_all
 from siting.pipeline.case import Case
 from siting.pipeline.runoff import daily_runoff_mm
@@ -67,6 +68,7 @@ def plot_water(case: Case, weather: Weather) -> Water:
         some = partial(work.some_plots, daily_runoff_mm(case, weather, ratio), with_yields=ratio == used)
         together = _in_order(run_all(some, [(plots,) for plots in groups], case.threads), np.concatenate(groups))
         parts[ratio] = _without_rain(together, case.own.rain_zone < 0)
+    _note_yield_line(parts[used].yields, case.notes)
     yearly = parts[used].yearly_m3
     shares = {"dry": share, "median": 0.5, "wet": 1.0 - share}
     return Water(
@@ -76,6 +78,16 @@ def plot_water(case: Case, weather: Weather) -> Water:
         dependable(parts[other].yearly_m3, probability=share),
         _crop_results(parts[used], parts[other], share) if weather.crops else None,
     )
+
+
+def _note_yield_line(yields: SeasonYields | None, notes: Notes) -> None:
+    """List that low yields lie beyond what the yield line was fitted to, and how many do."""
+    if yields is None:
+        return
+    grown = ~np.isnan(yields.et_ratio)
+    source = f"FAO-33, fitted for ETa/ETc of {LEAST_FITTED_ET_RATIO:g} and more; below, et_ratio in seasons tells which"
+    value = f"extended in {int(yields.beyond_fit.sum())} of {int(grown.sum())} harvests of all plots"
+    notes.assume("crop.yield_line", value, "", source, "yields of seasons short of water")
 
 
 def _groups(rain_zone: Integers) -> list[Integers]:

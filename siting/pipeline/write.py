@@ -27,6 +27,8 @@ from siting.runoff import yearly_totals
 from siting.terrain import Terrain
 
 GEOPACKAGE = "siting.gpkg"
+InputFiles = Mapping[str, Mapping[str, str]]
+
 LIBRARIES = ("numpy", "numba", "pandas", "geopandas", "pyogrio", "rasterio", "pyproj", "shapely", "pydantic")
 
 
@@ -51,14 +53,14 @@ def notes_tables(notes: Notes, info: dict[str, str]) -> dict[str, pd.DataFrame]:
     }
 
 
-def run_info(case: Case, together: Together | None) -> dict[str, str]:
+def run_info(case: Case, together: Together | None, inputs: InputFiles) -> dict[str, str]:
     """Say what was run on what; nothing of when, or on which machine."""
     settings, grid, weather = case.settings, case.place.dem.grid, case.weather
     found = {
         "title": settings.place.title,
         "siting version": version("siting"),
         "elevation model": settings.place.dem.name,
-        "elevation model sha256": sha256(settings.place.dem),
+        "elevation model sha256": inputs["place.dem"]["sha256"],
         "cells": f"{grid.rows} rows x {grid.cols} columns, {grid.typical_cell_m:.4g} m",
         "plots": str(case.sites.plots.count),
         "order": f"by {settings.ranking.order}",
@@ -106,12 +108,12 @@ def _runoff_median_mm(case: Case) -> npt.NDArray[np.float32]:
     return by_class[np.minimum(classes.class_of_cell, classes.count)]
 
 
-def write_record(folder: Path, case: Case, clock: Clock, summary: Mapping[str, Any]) -> None:
+def write_record(folder: Path, case: Case, clock: Clock, summary: Mapping[str, Any], inputs: InputFiles) -> None:
     """Write the run record last: its outputs are those that stand in the folder."""
     record = {
         "title": case.settings.place.title,
         "settings": case.project.record(),
-        "inputs": {key: {"file": path.name, "sha256": sha256(path)} for key, path in _input_files(case.project)},
+        "inputs": inputs,
         "versions": {"siting": version("siting"), "python": platform.python_version()}
         | {name: version(name) for name in LIBRARIES},
         "assumptions": case.notes.assumptions,
@@ -126,7 +128,12 @@ def write_record(folder: Path, case: Case, clock: Clock, summary: Mapping[str, A
     write_run_record(folder / RUN_RECORD, record)
 
 
-def _input_files(project: Project) -> list[tuple[str, Path]]:
+def input_files(project: Project) -> InputFiles:
+    """Return the name and the SHA-256 of every input: read whole once, and told in two places."""
+    return {key: {"file": path.name, "sha256": sha256(path)} for key, path in _input_paths(project)}
+
+
+def _input_paths(project: Project) -> list[tuple[str, Path]]:
     """Return every file that a setting names, by its key; one of a list by its place, from 1."""
     found: list[tuple[str, Path]] = []
     for key in project.origin:

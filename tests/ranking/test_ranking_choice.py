@@ -354,12 +354,7 @@ def test_without_plots_the_set_is_empty() -> None:
     forest = ranking.PlotForest(np.empty(0, dtype=np.int64), np.empty(0))
     empty = np.empty((0, 3))
     got = ranking.choose_set(
-        forest,
-        runon_m3=empty,
-        room_m3=empty,
-        worth=np.empty(0),
-        rank=np.empty(0, dtype=np.int64),
-        plot_area_m2=np.empty(0),
+        forest, runon_m3=empty, room_m3=empty, worth=np.empty(0), rank=np.empty(0, dtype=np.int64), plot_area_m2=np.empty(0)
     )
     assert got.order.size == 0
     assert got.left_m3.shape == (0, 3)
