@@ -102,7 +102,7 @@ def _draw_columns(doubt: RankDoubt | None, count: int) -> dict[str, Any]:
 
 
 def _rank_of_draws(rank: FloatArray | None, count: int) -> "pd.Series[Any]":
-    return _whole(np.full(count, np.nan) if rank is None else np.where(rank > UNRANKED, rank, np.nan))
+    return whole_or_null(np.full(count, np.nan) if rank is None else np.where(rank > UNRANKED, rank, np.nan))
 
 
 def _set_columns(together: Together | None, count: int) -> dict[str, Any]:
@@ -132,7 +132,7 @@ def _or_null(values: npt.NDArray[np.int64], known: npt.NDArray[np.bool_]) -> "pd
     return pd.Series(values, dtype="Int64").where(pd.Series(known))
 
 
-def _whole(values: FloatArray) -> "pd.Series[Any]":
+def whole_or_null(values: FloatArray) -> "pd.Series[Any]":
     """Return whole numbers, NULL where they are unknown (NaN)."""
     known = ~np.isnan(values)
     return _or_null(np.where(known, values, 0.0).astype(np.int64), known)
@@ -193,7 +193,7 @@ def _yield_columns(crop: CropResults, target_yield: float) -> dict[str, Any]:
         "supported_area_m2": crop.supported.area_m2,
         "limit": [limit or None for limit in crop.supported.limit],
         "mean_yield_pct": 100.0 * crop.yields.relative_yield.mean(axis=1),
-        "standing_water_days": _whole(crop.yields.worst_standing_water_days),
+        "standing_water_days": whole_or_null(crop.yields.worst_standing_water_days),
     }
 
 
@@ -246,7 +246,7 @@ def seasons_frame(sites: Sites, crop: CropResults) -> pd.DataFrame:
             "et_ratio": yields.et_ratio.ravel(),
             "relative_yield": yields.relative_yield.ravel(),
             "rain_only_relative_yield": crop.rain_alone.relative_yield.ravel(),
-            "standing_water_days": _whole(yields.standing_water_days.ravel()),
+            "standing_water_days": whole_or_null(yields.standing_water_days.ravel()),
             "failure": [failure or None for failure in yields.failure.ravel()],
         }
     )

@@ -11,6 +11,7 @@ from siting.inputs import cells_of_shapes
 from siting.layers import layer
 from siting.pipeline.case import Case
 from siting.pipeline.downstream import Ledger
+from siting.pipeline.frames import whole_or_null
 from siting.pipeline.order import Order
 from siting.pipeline.read import Place
 from siting.pipeline.together import supported_dry_m2
@@ -72,14 +73,14 @@ def villages_layer(
     ranks = _ranks(case, cells, order, chosen, _people(case, villages), supported)
     per_person = ranks.supported_dry_m2_per_person if case.settings.villages.people else np.full(cells.count, np.nan)
     return found.assign(
-        rank=_whole(ranks.rank),
+        rank=whole_or_null(ranks.rank),
         rank_low=ranks.rank_low,
         rank_high=ranks.rank_high,
-        plots_in_reach=_whole(ranks.plots_in_reach),
-        plots_shared=_whole(ranks.plots_shared),
+        plots_in_reach=whole_or_null(ranks.plots_in_reach),
+        plots_shared=whole_or_null(ranks.plots_shared),
         supported_dry_m2=ranks.supported_dry_m2,
         supported_dry_m2_per_person=per_person,
-        best_plot_id=_whole(np.where(ranks.best_plot < 0, np.nan, ranks.best_plot + 1.0)),
+        best_plot_id=whole_or_null(np.where(ranks.best_plot < 0, np.nan, ranks.best_plot + 1.0)),
         runoff_lost_dry_pct=lost.village_dry_pct,
         runoff_lost_median_pct=lost.village_median_pct,
         status=list(ranks.status),
@@ -102,12 +103,6 @@ def _warn_of_losses(case: Case, villages: gpd.GeoDataFrame, lost: Ledger) -> Non
             f"The set would take more than {MUCH_LOST_PCT:g} % of the dry year's water in the nearest channel from: {told}. "
             "Ask first; villages.most_lost_pct sets a limit.",
         )
-
-
-def _whole(values: FloatArray) -> "pd.Series[int]":
-    known = ~np.isnan(values)
-    numbers = pd.Series(np.where(known, values, 0).astype(np.int64), dtype="Int64")
-    return numbers.where(pd.Series(known))
 
 
 def _people(case: Case, villages: gpd.GeoDataFrame) -> FloatArray:
